@@ -1,0 +1,1 @@
+//! Takes draws and coding; gives rate ratios and the answer in words.

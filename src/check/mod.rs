@@ -1,0 +1,1 @@
+//! Takes draws and design; gives the predictive check of each unit.

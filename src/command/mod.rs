@@ -1,0 +1,1 @@
+//! Takes a checked spec; one file per command; no statistics here.

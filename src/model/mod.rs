@@ -1,0 +1,1 @@
+//! Takes a design; gives the log posterior: value, gradient, Hessian.

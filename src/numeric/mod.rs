@@ -1,0 +1,5 @@
+//! Takes floats; gives special functions, random streams, fixed-order sums and kernels.
+
+mod elementary;
+
+pub use elementary::{exp, ln, ln_1p};

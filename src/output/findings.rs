@@ -1,0 +1,270 @@
+//! Everything that a fit concluded, in one value: every writer reads it, none computes a statistic.
+
+use crate::design::Audit;
+use schemars::JsonSchema;
+use serde::{Deserialize, Serialize};
+
+/// All findings of one fit: the content of `findings.json`.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
+#[serde(deny_unknown_fields)]
+pub struct Findings {
+    /// Version of this layout.
+    pub layout: u32,
+    /// Version of the program.
+    pub ratewright: String,
+    /// Always `not for publication`: small counts stand here in full.
+    pub audience: String,
+    /// The study in words.
+    pub study: StudyFacts,
+    /// What happened to the rows.
+    pub data: Audit,
+    /// The answer, told first.
+    pub answer: AnswerFinding,
+    /// One entry for each parameter, `baseline` first.
+    pub coefficients: Vec<CoefficientFinding>,
+    /// One entry for each term but the baseline.
+    pub rate_ratios: Vec<RateRatioFinding>,
+    /// The rate at the baseline, per `study.per`.
+    pub baseline_rate: BaselineRate,
+    /// Predictive check of each unit.
+    pub units: UnitsFinding,
+    /// How sampling went and why it stopped.
+    pub sampling: SamplingFinding,
+    /// The mode, and how far the draws moved from its Laplace approximation.
+    pub mode: ModeFinding,
+    /// What has to be said beside the numbers, most important first.
+    pub notes: Vec<Note>,
+}
+
+/// The study in words.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
+#[serde(deny_unknown_fields)]
+pub struct StudyFacts {
+    /// `[study] title`
+    pub title: String,
+    /// `[study] question`
+    pub question: String,
+    /// Name of the term that answers it.
+    pub answer_term: String,
+    /// `poisson` or `negative-binomial`.
+    pub family: String,
+    /// Column of the incident counts.
+    pub incidents_column: String,
+    /// Column of the unit.
+    pub unit_column: String,
+    /// Column of the exposure, where there is one.
+    pub exposure_column: Option<String>,
+    /// Rates are told per this many units of exposure.
+    pub per: f64,
+    /// Level of every interval, equal-tailed.
+    pub interval: f64,
+    /// Seed of every random stream.
+    pub seed: u64,
+    /// Counts below this are hidden from people.
+    pub hide_counts_below: u64,
+    /// Whether a count of 0 is shown.
+    pub show_zero: bool,
+}
+
+/// The answer to the study's question.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
+#[serde(deny_unknown_fields)]
+pub struct AnswerFinding {
+    /// In words, with its uncertainty.
+    pub sentence: String,
+    /// The term.
+    pub term: String,
+    /// Rate ratio, or the rate per `study.per` where the answer is the baseline: posterior median.
+    pub estimate: f64,
+    /// Lower end of its interval.
+    pub lower: f64,
+    /// Upper end of its interval.
+    pub upper: f64,
+    /// Posterior probability that the rate ratio is below 1; absent for the baseline.
+    pub prob_below_one: Option<f64>,
+}
+
+/// One parameter: log scale for the baseline (per unit of raw exposure) and the terms, `scatter` as itself.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
+#[serde(deny_unknown_fields)]
+pub struct CoefficientFinding {
+    /// Its name.
+    pub term: String,
+    /// Posterior median.
+    pub median: f64,
+    /// Lower end of the interval.
+    pub lower: f64,
+    /// Upper end of the interval.
+    pub upper: f64,
+    /// Posterior mean.
+    pub mean: f64,
+    /// Posterior standard deviation.
+    pub sd: f64,
+    /// Monte Carlo standard error of the mean.
+    pub error_of_mean: f64,
+    /// Monte Carlo standard error of the lower end.
+    pub error_of_lower: f64,
+    /// Monte Carlo standard error of the upper end.
+    pub error_of_upper: f64,
+    /// Bulk effective draws.
+    pub effective_draws: f64,
+    /// Tail effective draws.
+    pub effective_tail_draws: f64,
+    /// Rank-normalised split R-hat; absent where it cannot be computed.
+    pub split_r_hat: Option<f64>,
+    /// Mean under the Laplace approximation.
+    pub laplace_mean: f64,
+    /// Standard deviation under the Laplace approximation.
+    pub laplace_sd: f64,
+}
+
+/// One rate ratio.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
+#[serde(deny_unknown_fields)]
+pub struct RateRatioFinding {
+    /// The term.
+    pub term: String,
+    /// The change that the ratio stands for, in words.
+    pub change: String,
+    /// Posterior median of exp(coefficient).
+    pub rate_ratio: f64,
+    /// Lower end of the interval.
+    pub lower: f64,
+    /// Upper end of the interval.
+    pub upper: f64,
+    /// Posterior probability that the ratio is below 1.
+    pub prob_below_one: f64,
+}
+
+/// The rate where numbers are at their centre and categories at their reference.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
+#[serde(deny_unknown_fields)]
+pub struct BaselineRate {
+    /// Posterior median, per `study.per` units of exposure.
+    pub rate: f64,
+    /// Lower end of the interval.
+    pub lower: f64,
+    /// Upper end of the interval.
+    pub upper: f64,
+}
+
+/// The predictive check of every unit.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
+#[serde(deny_unknown_fields)]
+pub struct UnitsFinding {
+    /// One entry for each unit, in order of first appearance.
+    pub units: Vec<UnitFinding>,
+    /// Units whose count lies outside its predictive interval.
+    pub outside: usize,
+    /// How many would, by chance, if the model were right.
+    pub outside_by_chance: f64,
+    /// Posterior draws that the check used.
+    pub draws_used: usize,
+}
+
+/// The predictive check of one unit.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
+#[serde(deny_unknown_fields)]
+pub struct UnitFinding {
+    /// The unit.
+    pub unit: String,
+    /// Its rows (each counted as often as it stands for others).
+    pub rows: f64,
+    /// Its exposure.
+    pub exposure: f64,
+    /// Its count.
+    pub observed: f64,
+    /// Posterior mean of its expected count.
+    pub expected: f64,
+    /// Lower end of the predictive interval.
+    pub lower: f64,
+    /// Upper end of the predictive interval.
+    pub upper: f64,
+    /// Predictive probability of a smaller count plus half that of the same count (mid-p):
+    /// near 0 the count is unusually low, near 1 unusually high.
+    pub tail_probability: f64,
+    /// Where the count lies.
+    pub state: UnitState,
+}
+
+/// Where a unit's count lies in its predictive interval.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
+#[serde(rename_all = "kebab-case")]
+pub enum UnitState {
+    /// Within it, ends included.
+    Inside,
+    /// Below its lower end.
+    Below,
+    /// Above its upper end.
+    Above,
+}
+
+/// How sampling went.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
+#[serde(deny_unknown_fields)]
+pub struct SamplingFinding {
+    /// `mixed` or `walk`.
+    pub steps: String,
+    /// Number of chains.
+    pub chains: usize,
+    /// Warm-up iterations of each chain, not kept.
+    pub warm_up: usize,
+    /// Kept draws, all chains together.
+    pub draws: usize,
+    /// Share of proposals accepted after warm-up.
+    pub accepted: f64,
+    /// Why sampling stopped.
+    pub stopped: StopReason,
+    /// The precision asked for, in posterior standard deviations.
+    pub precision_asked: f64,
+    /// The worst simulation error of a mean, in posterior standard deviations.
+    pub worst_error_of_mean: f64,
+    /// The worst simulation error of an interval end, in posterior standard deviations.
+    pub worst_error_of_interval_end: f64,
+    /// The largest R-hat; absent where none can be computed.
+    pub largest_r_hat: Option<f64>,
+    /// The fewest bulk effective draws.
+    pub fewest_effective_draws: f64,
+    /// The fewest tail effective draws.
+    pub fewest_effective_tail_draws: f64,
+    /// The reference that independence steps were drawn from, in words.
+    pub reference: String,
+}
+
+/// Why sampling stopped.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
+#[serde(rename_all = "kebab-case")]
+pub enum StopReason {
+    /// Every mean and interval end is as precise as asked, and the chains agree.
+    PrecisionMet,
+    /// `most_draws` was reached first.
+    MostDraws,
+}
+
+/// The mode and its Laplace approximation.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
+#[serde(deny_unknown_fields)]
+pub struct ModeFinding {
+    /// Why the search stopped.
+    pub stopped: String,
+    /// Newton steps taken.
+    pub steps: u64,
+    /// Log posterior density at the mode, all constants kept.
+    pub log_density: f64,
+    /// Under the negative binomial, whether the scatter's mode is `inside` or `at-zero`.
+    pub scatter_mode: Option<String>,
+    /// The furthest that a posterior mean moved from Laplace's, in posterior standard deviations.
+    pub furthest_move: f64,
+    /// The parameter that moved furthest.
+    pub furthest_term: String,
+}
+
+/// Something that has to be said beside the numbers.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
+#[serde(deny_unknown_fields)]
+pub struct Note {
+    /// Stable code.
+    pub code: String,
+    /// What is to be said, in a sentence or two.
+    pub text: String,
+}

@@ -1,0 +1,3 @@
+//! Takes all that a fit found; gives the run folder, terminal text, JSON, CSV and Parquet.
+
+pub mod findings;

@@ -1,0 +1,5 @@
+//! Takes TOML text; gives a checked [`Spec`].
+
+mod study;
+
+pub use study::*;
