@@ -236,7 +236,12 @@ impl OutputError {
 /// The first few of a list, and how many more there are.
 fn listed(files: &[String]) -> String {
     const SHOWN: usize = 3;
-    let shown = files.iter().take(SHOWN).map(String::as_str).collect::<Vec<_>>().join(", ");
+    let shown = files
+        .iter()
+        .take(SHOWN)
+        .map(String::as_str)
+        .collect::<Vec<_>>()
+        .join(", ");
     match files.len().saturating_sub(SHOWN) {
         0 => shown,
         more => format!("{shown} and {more} more"),

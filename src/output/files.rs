@@ -48,9 +48,15 @@ pub fn write(folder: &RunFolder, content: &RunContent) -> Result<Manifest, Outpu
         Ok(())
     };
     put("spec.toml", content.spec.source.text.as_bytes())?;
-    put("rows.parquet", &parquet::rows(&target.join("rows.parquet"), content.rows)?)?;
+    put(
+        "rows.parquet",
+        &parquet::rows(&target.join("rows.parquet"), content.rows)?,
+    )?;
     put("coding.json", json::text("coding.json", content.coding)?.as_bytes())?;
-    put("draws.parquet", &parquet::draws(&target.join("draws.parquet"), content.draws)?)?;
+    put(
+        "draws.parquet",
+        &parquet::draws(&target.join("draws.parquet"), content.draws)?,
+    )?;
     put("coefficients.csv", tables::coefficients(findings)?.as_bytes())?;
     put("rate_ratios.csv", tables::rate_ratios(findings)?.as_bytes())?;
     put("units.csv", tables::units(findings, content.audience)?.as_bytes())?;

@@ -132,7 +132,12 @@ impl Manifest {
     pub fn read(run: &Path) -> Result<Manifest, OutputError> {
         let path = run.join(FILE);
         let text = match std::fs::read_to_string(&path) {
-            Err(error) if matches!(error.kind(), std::io::ErrorKind::NotFound | std::io::ErrorKind::NotADirectory) => {
+            Err(error)
+                if matches!(
+                    error.kind(),
+                    std::io::ErrorKind::NotFound | std::io::ErrorKind::NotADirectory
+                ) =>
+            {
                 return Err(OutputError::NotComplete {
                     run: run.to_owned(),
                     missing: FILE.to_owned(),

@@ -111,7 +111,9 @@ impl RunFolder {
                     return Err(refused(error));
                 }
                 let kept = old.clone();
-                aside.close().map_err(|source| OutputError::OldRunLeft { kept, source })?;
+                aside
+                    .close()
+                    .map_err(|source| OutputError::OldRunLeft { kept, source })?;
             }
         }
         // The folder is the person's now: it must not be removed at the end of this scope.
