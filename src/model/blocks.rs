@@ -194,16 +194,16 @@ impl Blocks {
         }
     }
 
-    /// Derivatives at one point. With `dispersion` = a > 0 of the negative binomial's
-    /// `- (y + 1/a) log(1 + a mu)`, plus y times the predictor; with `dispersion` = 0 of the
-    /// Poisson's `y * predictor - mu`. The value leaves out y times the predictor, which the model
-    /// knows in closed form.
+    /// Derivatives at one point of `y * predictor - mu` for the Poisson (`dispersion` absent), of
+    /// `y * predictor - (y + 1/a) log(1 + a mu)` for the negative binomial with a = c^2 =
+    /// `dispersion`; at a = 0 the latter is its limit, the Poisson, but the derivatives by a are
+    /// there. The value leaves out y times the predictor, which the model knows in closed form.
     ///
     /// With m = mu, D = 1 + a m and x = a m (Cameron & Trivedi 2013, section 3.3, for the first
     /// derivatives):
     /// by the predictor (y - m)/D; twice -m (1 + a y)/D^2; by a: m^2 h(x) - y m/D, where
     /// h(x) = (log(1+x) - x/(1+x))/x^2; twice m^3 h'(x) + y m^2/D^2; mixed -(y - m) m/D^2.
-    pub fn derivatives(&self, point: &[f64], dispersion: f64) -> RowSums {
+    pub fn derivatives(&self, point: &[f64], dispersion: Option<f64>) -> RowSums {
         let size = self.terms + 1;
         let mut sums = RowSums {
             value: 0.0,
@@ -213,7 +213,7 @@ impl Blocks {
             by_dispersion_twice: 0.0,
             mixed: vec![0.0; size],
         };
-        let a = dispersion;
+        let a = dispersion.unwrap_or(0.0);
         let mut means = [0.0; BLOCK];
         let (mut score, mut curvature, mut mixed) = ([0.0; BLOCK], [0.0; BLOCK], [0.0; BLOCK]);
         let (mut value, mut by_a, mut by_a_twice) = ([0.0; BLOCK], [0.0; BLOCK], [0.0; BLOCK]);
@@ -231,34 +231,34 @@ impl Blocks {
                 score[row] = w * (y - m) * d;
                 curvature[row] = -w * m * (1.0 + a * y) * d * d;
             }
-            if a > 0.0 {
+            if dispersion.is_some() {
                 for row in 0..BLOCK {
                     let (w, y, m) = (weights[row], counts[row], means[row]);
                     let d = 1.0 / (1.0 + a * m);
                     let (h, slope) = log_remainder(a * m);
-                    value[row] = -w * (y + 1.0 / a) * ln_1p(a * m);
                     by_a[row] = w * (m * m * h - y * m * d);
                     by_a_twice[row] = w * (m * m * m * slope + y * m * m * d * d);
                     mixed[row] = -w * (y - m) * m * d * d;
                 }
                 sums.by_dispersion += sum_of(&by_a);
                 sums.by_dispersion_twice += sum_of(&by_a_twice);
-            } else {
-                for row in 0..BLOCK {
-                    value[row] = -weights[row] * means[row];
-                }
+                sums.mixed[0] += sum_of(&mixed);
+            }
+            for row in 0..BLOCK {
+                value[row] = if a > 0.0 {
+                    -weights[row] * (counts[row] + 1.0 / a) * ln_1p(a * means[row])
+                } else {
+                    -weights[row] * means[row]
+                };
             }
             sums.value += sum_of(&value);
             sums.gradient[0] += sum_of(&score);
             sums.hessian[0] += sum_of(&curvature);
-            if a > 0.0 {
-                sums.mixed[0] += sum_of(&mixed);
-            }
             let columns = &self.columns[block * self.terms..(block + 1) * self.terms];
             for j in 0..self.terms {
                 let x = &columns[j];
                 sums.gradient[j + 1] += sum_of_products(x, &score);
-                if a > 0.0 {
+                if dispersion.is_some() {
                     sums.mixed[j + 1] += sum_of_products(x, &mixed);
                 }
                 for row in 0..BLOCK {

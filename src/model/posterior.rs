@@ -231,7 +231,7 @@ impl Model {
         let d = self.dimension();
         let size = self.blocks.terms() + 1;
         let dispersion = self.dispersion(point);
-        let rows = self.blocks.derivatives(point, dispersion.unwrap_or(0.0));
+        let rows = self.blocks.derivatives(point, self.scatter.as_ref().map(|_| dispersion.unwrap_or(0.0)));
         let mut value = self.constant + self.log_prior(point) + rows.value;
         let mut gradient = vec![0.0; d];
         let mut hessian = vec![0.0; d * d];
