@@ -7,8 +7,7 @@
 //! Statistics 15, 209-225, writes the likelihood so). Above [`TABLE`] the few counts left take a
 //! log-gamma difference that is stable for small a.
 
-use crate::numeric::gamma::ln_rising;
-use crate::numeric::ln_1p;
+use crate::numeric::{ln_1p, ln_rising};
 use std::collections::BTreeMap;
 
 /// Counts up to here are served by the table.

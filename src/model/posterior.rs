@@ -10,7 +10,7 @@ use super::blocks::Blocks;
 use super::count_table::CountTable;
 use super::prior::{BaselinePrior, NormalPrior, ScatterPrior};
 use crate::design::Design;
-use crate::numeric::gamma::ln_factorial;
+use crate::numeric::{ln, ln_factorial};
 use crate::spec::{Baseline, Family, Spec};
 
 /// Below this c^2 the negative binomial is computed as its limit, the Poisson. Their log densities
@@ -57,7 +57,7 @@ impl Model {
         let baseline_prior = match &spec.baseline {
             // The range is per `per` units of exposure, the coefficient per one unit.
             Baseline::PlausibleRate(range) => BaselinePrior::Range(NormalPrior {
-                mean: range.log_mean() - crate::numeric::ln(design.coding.per),
+                mean: range.log_mean() - ln(design.coding.per),
                 sd: range.log_sd(),
             }),
             Baseline::Earlier { incidents, exposure, .. } => {
@@ -103,7 +103,7 @@ impl Model {
             parameters,
             blocks: Blocks::new(design),
             // Half an incident is added, so that a table of zeros has a finite crude rate.
-            start: crate::numeric::ln((count_sums[0] + 0.5) / exposure),
+            start: ln((count_sums[0] + 0.5) / exposure),
             count_sums,
             constant,
             baseline_prior,
@@ -225,11 +225,14 @@ impl Model {
         }
     }
 
-    /// Value, gradient and Hessian at a point within the limit. The scatter's derivatives are
-    /// those on c > 0; at c = 0 they are the limits from above.
-    pub fn derivatives(&self, point: &[f64]) -> Derivatives {
+    /// Value, gradient and Hessian at a point; `None` where the density is 0. The scatter's
+    /// derivatives are those on c > 0; at c = 0 they are the limits from above.
+    pub fn derivatives(&self, point: &[f64]) -> Option<Derivatives> {
         let d = self.dimension();
         let size = self.blocks.terms() + 1;
+        if !point.iter().all(|value| value.is_finite()) || !self.blocks.within_limit(&point[..size]) {
+            return None;
+        }
         let dispersion = self.dispersion(point);
         let rows = self.blocks.derivatives(point, self.scatter.as_ref().map(|_| dispersion.unwrap_or(0.0)));
         let mut value = self.constant + self.log_prior(point) + rows.value;
@@ -267,6 +270,6 @@ impl Model {
                 hessian[last * d + i] = mixed;
             }
         }
-        Derivatives { value, gradient, hessian }
+        value.is_finite().then_some(Derivatives { value, gradient, hessian })
     }
 }

@@ -1,7 +1,6 @@
 //! Priors: what is believed before the data, each with its normalising constant.
 
-use crate::numeric::gamma::ln_gamma;
-use crate::numeric::{exp, ln};
+use crate::numeric::{exp, ln, ln_gamma};
 
 /// log(sqrt(2 pi)).
 const LN_ROOT_TWO_PI: f64 = 0.918_938_533_204_672_8;
