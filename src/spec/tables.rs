@@ -219,7 +219,7 @@ const DATA: TableInfo = TableInfo {
 };
 
 /// A range of numbers under `keep` of [data].
-pub(super) static KEEP_ENDS: TableInfo = table(
+pub(super) const KEEP_ENDS: TableInfo = table(
     "keep",
     Times::Inline,
     &[
@@ -338,7 +338,7 @@ const FAMILY: TableInfo = TableInfo {
 };
 
 /// `earlier` of [baseline].
-pub(super) static EARLIER: TableInfo = table(
+pub(super) const EARLIER: TableInfo = table(
     "earlier",
     Times::Inline,
     &[
