@@ -1,1 +1,5 @@
 //! Takes draws and design; gives the predictive check of each unit.
+
+mod units;
+
+pub use units::{UnitCheck, UnitState, UnitsCheck, units};

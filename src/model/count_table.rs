@@ -77,8 +77,8 @@ impl CountTable {
         }
         for (count, times) in &self.large {
             let rising = ln_rising(TABLE as f64, *count, a);
-            part.first += times * rising.first;
-            part.second += times * rising.second;
+            part.first += times * rising.slope;
+            part.second += times * rising.curvature;
         }
         part
     }
