@@ -122,7 +122,7 @@ def poisson_rows():
             if -600 < ln_pmf and mean < 1e5:
                 agrees(at_most, scipy.special.pdtr(y, mean), 1e-9, f"pdtr {y} {mean}")
                 agrees(above, scipy.special.pdtrc(y, mean), 1e-9, f"pdtrc {y} {mean}")
-            yield mean, y, ln_pmf, at_most, above
+            yield mean, y, ln_pmf, mpmath.exp(ln_pmf), at_most, above
 
 
 def poisson_tails(y, m, ln_pmf):
@@ -150,7 +150,7 @@ def poisson_tails(y, m, ln_pmf):
 
 
 def nb2_rows():
-    """Var = mean + c^2 mean^2; the tails by summing where the sum is short, else by the incomplete beta integral."""
+    """Var = mean + c^2 mean^2; the tails by summing where the sum is short, else by the beta integral."""
     seen = set()
     for c in [0.0, 1e-8, 1e-4, 0.01, 0.1, 0.3, 0.6, 1.0, 3.0, 50.0]:
         for mean in [1e-12, 1e-3, 0.7, 5.0, 60.0, 2000.0, 1e6, 1e9, 1e12]:
@@ -169,7 +169,7 @@ def nb2_rows():
                 if a == 0:
                     ln_pmf = y * mpmath.log(m) - m - mpmath.loggamma(y + 1)
                     at_most, above = poisson_tails(y, m, ln_pmf)
-                    yield c, mean, y, ln_pmf, at_most, above
+                    yield c, mean, y, ln_pmf, mpmath.exp(ln_pmf), at_most, above
                     continue
                 r = 1 / a
                 p = 1 / (1 + a * m)
@@ -177,48 +177,67 @@ def nb2_rows():
                           + y * mpmath.log(a * m * p))
                 at_most, above = nb2_tails(y, r, p, ln_pmf)
                 if at_most is None:
-                    yield c, mean, y, ln_pmf, float("nan"), float("nan")
-                    continue
+                    at_most, above = nb2_tails_by_integral(y, r, p)
                 if -600 < ln_pmf and c >= 0.01 and mean < 1e6:
                     agrees(at_most, scipy.stats.nbinom.cdf(y, float(r), float(p)), 1e-8, f"nbinom.cdf {y} {mean} {c}")
                     agrees(above, scipy.stats.nbinom.sf(y, float(r), float(p)), 1e-8, f"nbinom.sf {y} {mean} {c}")
-                yield c, mean, y, ln_pmf, at_most, above
+                yield c, mean, y, ln_pmf, mpmath.exp(ln_pmf), at_most, above
 
 
-def nb2_tails(y, r, p, ln_pmf, most=400_000):
-    """Positive sums at 80 digits from y up or down, whichever ends first; None where neither ends soon."""
+def nb2_tails(y, r, p, ln_pmf, most=30_000):
+    """Positive sums at 80 digits from y up or down; None where they would be too long."""
     q = 1 - p
     pmf = mpmath.exp(ln_pmf)
     mean = r * q / p
     small = mpf(10) ** -35
+    total, term, k = mpf(1), mpf(1), y
     if y <= mean:
-        term, total, k, steps = mpf(1), mpf(1), y, 0
-        while k > 0 and steps < most:
+        for _ in range(most):
+            if k == 0 or term < total * small:
+                return pmf * total, 1 - pmf * total
             term *= k / ((k - 1 + r) * q)
             total += term
             k -= 1
-            steps += 1
-            if term < total * small:
-                k = 0
-        if k == 0:
-            at_most = pmf * total
-            return at_most, 1 - at_most
         return None, None
-    term, total, k, steps = mpf(1), mpf(0), y, 0
-    while steps < most:
+    for _ in range(most):
         term *= (k + r) * q / (k + 1)
-        total += term
         k += 1
-        steps += 1
         if term < total * small:
-            above = pmf * total
+            above = pmf * (total - 1)
             return 1 - above, above
+        total += term
     return None, None
+
+
+def nb2_tails_by_integral(y, r, p):
+    """P(Y <= y) = I_p(r, y + 1) as an integral over u = ln t, cut at many widths of its peak; the smaller side is integrated."""
+    mp.dps = 50
+    f = lambda u: mpmath.exp(r * u + y * mpmath.log1p(-mpmath.exp(u)) - top)
+    mode = mpmath.log(r / (r + y))
+    width = 1 / mpmath.sqrt(r * y / (r + y))
+    top = mpf(0)
+    top = mpmath.log(f(mode))
+    cuts = [mode + j * width for j in range(-40, 41)] + [mode + j * width * mpf(1.6) ** abs(j) for j in range(-12, 13)]
+    scale = mpmath.exp(top - mpmath.log(mpmath.beta(r, y + 1)))
+    edge = mpmath.log(p)
+    floor = mpmath.log(mpf(10) ** -48 / (y + 1))  # below it (1 - t)^y is 1, and the integral is elementary
+    if edge <= mode or edge < floor:
+        points = sorted({floor, edge} | {c for c in cuts if floor < c < edge})
+        rest = mpmath.exp(r * min(floor, edge) - top) / r
+        at_most = scale * (rest + (mpmath.quad(f, points) if edge > floor else 0))
+        at_most, above = at_most, 1 - at_most
+    else:
+        ceiling = mpmath.log(mpf("0.999999"))
+        points = sorted({edge, ceiling} | {c for c in cuts if edge < c < ceiling})
+        above = scale * mpmath.quad(f, points)
+        at_most, above = 1 - above, above
+    mp.dps = 80
+    return at_most, above
 
 
 write("ln_gamma.csv", "ln Gamma(x)", "x,value", ln_gamma_rows())
 write("normal_cdf.csv", "standard normal distribution function", "x,value", normal_rows())
 write("normal_quantile.csv", "standard normal quantile", "p,value", quantile_rows())
 write("rising.csv", "sum of ln(1 + a j) for j from m to y - 1, first and second derivative in a", "m,y,a,value,slope,curvature", rising_rows())
-write("poisson.csv", "Poisson: ln P(Y = y), P(Y <= y), P(Y > y)", "mean,y,ln_pmf,at_most,above", poisson_rows())
-write("negative_binomial.csv", "negative binomial of mean and scatter c: ln P(Y = y), P(Y <= y), P(Y > y), the last two where a sum can tell", "c,mean,y,ln_pmf,at_most,above", nb2_rows())
+write("poisson.csv", "Poisson: ln P(Y = y), P(Y = y), P(Y <= y), P(Y > y)", "mean,y,ln_pmf,pmf,at_most,above", poisson_rows())
+write("negative_binomial.csv", "negative binomial of mean and scatter c: ln P(Y = y), P(Y = y), P(Y <= y), P(Y > y)", "c,mean,y,ln_pmf,pmf,at_most,above", nb2_rows())

@@ -76,7 +76,11 @@ def uniform_coefficients(orders=10, powers=20):
         assert c[1] + sign * g[k] == 0
         c = [(n + 2) * c[n + 2] + sign * g[k] * v[n + 1] for n in range(len(c) - 2)]
         rows.append(c[:])
-    return [row[:powers] for row in rows]
+    # Used at a >= 40 and |eta| <= 0.34 only: what stays below 1e-18 there is left out.
+    def needed(k, row):
+        return 1 + max(n for n in range(powers) if abs(row[n]) * Fraction(34, 100) ** n > Fraction(1, 10**18) * 40**k)
+
+    return [row[: needed(k, row)] for k, row in enumerate(rows)]
 
 
 def main(what):
@@ -85,7 +89,7 @@ def main(what):
             print(f"    {rust(c)},")
     elif what == "uniform":
         for row in uniform_coefficients():
-            print("    [" + ", ".join(rust(c) for c in row) + "],")
+            print("    &[" + ", ".join(rust(c) for c in row) + "],")
     elif what == "factorial":
         for n in range(0, 21):
             print(f"    {rust(log(factorial(n)))},")
