@@ -4,6 +4,7 @@ pub mod compare;
 mod error;
 pub mod files;
 pub mod findings;
+pub mod gather;
 pub mod json;
 pub mod manifest;
 pub mod parquet;
