@@ -72,7 +72,7 @@ pub fn simulate(seed: u64) -> Vec<Pool> {
 fn lot(stream: &mut Stream) -> Vec<bool> {
     let mut textured: Vec<bool> = (0..POOLS).map(|place| place < POOLS / 2).collect();
     for last in (1..POOLS).rev() {
-        let other = (stream.uniform() * (last + 1) as f64) as usize;
+        let other = stream.below(last as u64 + 1) as usize;
         textured.swap(last, other);
     }
     textured
