@@ -4,8 +4,7 @@
 //! A pool's slips are negative-binomial around `swims * rate`, where the log of the rate is the sum
 //! of the true values below. The floor programme was given by lot to half of the pools.
 
-use ratewright::numeric::random::{Purpose, Stream};
-use ratewright::numeric::{exp, ln};
+use ratewright::numeric::{Purpose, Stream, exp, ln};
 use std::fmt::Write;
 
 /// Number of pools.
@@ -60,11 +59,19 @@ pub struct Pool {
 /// All pools, in the order of their names.
 pub fn simulate(seed: u64) -> Vec<Pool> {
     let textured = lot(&mut Stream::new(seed, Purpose::Demo, 0));
-    let names = STEMS.iter().flat_map(|stem| ENDINGS.iter().map(move |ending| format!("{stem}{ending}")));
+    let names = STEMS
+        .iter()
+        .flat_map(|stem| ENDINGS.iter().map(move |ending| format!("{stem}{ending}")));
     names
         .enumerate()
         // A stream for each pool: what one pool draws moves no other.
-        .map(|(place, name)| pool(name, textured[place], &mut Stream::new(seed, Purpose::Demo, 1 + place as u64)))
+        .map(|(place, name)| {
+            pool(
+                name,
+                textured[place],
+                &mut Stream::new(seed, Purpose::Demo, 1 + place as u64),
+            )
+        })
         .collect()
 }
 
@@ -86,7 +93,7 @@ fn pool(name: String, textured: bool, stream: &mut Stream) -> Pool {
         _ => "waves",
     };
     // Slides make people wait on the steps, so the two go together in the data.
-    let usual_queue = if attractions == "slides" { 5.0 } else { 3.5 };
+    let usual_queue: f64 = if attractions == "slides" { 5.0 } else { 3.5 };
     let queue_tenths = (10.0 * usual_queue * stream.gamma(6.0) / 6.0).round().max(1.0);
     let swims = 10.0 * (2_500.0 * exp(0.6 * stream.normal())).round().max(1.0);
 
@@ -119,10 +126,21 @@ fn pool(name: String, textured: bool, stream: &mut Stream) -> Pool {
 pub fn csv(pools: &[Pool]) -> String {
     let mut text = String::from("pool,swims,slips,floor,setting,attractions,queue\n");
     for pool in pools {
-        let Pool { name, swims, slips, floor, setting, attractions, queue_tenths } = pool;
+        let Pool {
+            name,
+            swims,
+            slips,
+            floor,
+            setting,
+            attractions,
+            queue_tenths,
+        } = pool;
         let (people, tenths) = (queue_tenths / 10, queue_tenths % 10);
         // Writing to a String cannot fail.
-        let _ = writeln!(text, "{name},{swims},{slips},{floor},{setting},{attractions},{people}.{tenths}");
+        let _ = writeln!(
+            text,
+            "{name},{swims},{slips},{floor},{setting},{attractions},{people}.{tenths}"
+        );
     }
     text
 }
