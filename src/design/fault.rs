@@ -1,0 +1,392 @@
+//! What can be wrong once the spec and the table meet.
+
+use super::cell_rule::CellRule;
+use crate::diagnostic::{Diagnostic, Place};
+use std::fmt;
+use std::ops::Range;
+
+/// A study whose spec and table do not fit together, with everything that is wrong.
+#[derive(Debug, Clone, PartialEq)]
+pub struct DesignError {
+    /// The spec as the person named it.
+    pub spec_file: String,
+    /// The table as the person named it.
+    pub table_file: String,
+    /// What is wrong, in the order in which the study is built; never empty.
+    pub faults: Vec<DesignFault>,
+}
+
+/// One kind of problem of a study.
+#[derive(Debug, Clone, PartialEq)]
+pub enum DesignFault {
+    /// Columns that the spec names and the table lacks.
+    MissingColumns {
+        /// Each place where such a column is named.
+        missing: Vec<MissingColumn>,
+        /// The columns that the table has.
+        present: Vec<String>,
+    },
+    /// Cells that break a rule.
+    Cells {
+        /// The rule.
+        rule: CellRule,
+        /// The cells, in the order of the file.
+        cells: Vec<BadCell>,
+    },
+    /// Levels that the spec names and no row used has.
+    UnknownLevels {
+        /// What the levels are named for.
+        role: LevelRole,
+        /// Each level.
+        unknown: Vec<UnknownLevel>,
+    },
+    /// No row is left to fit.
+    NoRows {
+        /// Rows in the file.
+        read: usize,
+        /// Rows that `keep` leaves out.
+        not_kept: usize,
+        /// Rows with gaps.
+        with_gaps: usize,
+    },
+    /// A category with one level in the rows used.
+    OneLevel {
+        /// The column.
+        column: String,
+        /// Its level.
+        level: String,
+        /// Its place in the spec.
+        span: Range<usize>,
+    },
+    /// A category with too many levels to be one.
+    ManyLevels {
+        /// The column.
+        column: String,
+        /// How many levels it has.
+        levels: usize,
+        /// How many rows there are.
+        rows: usize,
+        /// Its place in the spec.
+        span: Range<usize>,
+    },
+    /// A number that is the same in every row used.
+    ConstantNumber {
+        /// The column.
+        column: String,
+        /// Its value.
+        value: f64,
+        /// Its place in the spec.
+        span: Range<usize>,
+    },
+    /// A joint term of a column that is no covariate of the spec.
+    JointColumn {
+        /// The column.
+        column: String,
+        /// Its place in the spec.
+        span: Range<usize>,
+    },
+    /// Two terms of one name, or a term named like another parameter.
+    TakenName {
+        /// The name.
+        name: String,
+        /// The places in the spec whose terms bear it.
+        spans: Vec<Range<usize>>,
+    },
+    /// Fewer rows than coefficients.
+    FewRows {
+        /// Rows used.
+        rows: usize,
+        /// Coefficients: the terms and the baseline.
+        coefficients: usize,
+    },
+    /// Terms that the other terms determine.
+    Collinear {
+        /// Each such term.
+        terms: Vec<CollinearTerm>,
+    },
+    /// `[study] answer` names no term.
+    UnknownAnswer {
+        /// What it names.
+        answer: String,
+        /// Its place in the spec.
+        span: Range<usize>,
+        /// The term of the most similar name.
+        nearest: Option<String>,
+        /// All terms.
+        terms: Vec<String>,
+    },
+}
+
+/// A column that the table lacks.
+#[derive(Debug, Clone, PartialEq)]
+pub struct MissingColumn {
+    /// Its name.
+    pub name: String,
+    /// Where the spec names it; absent when new rows are coded without a spec.
+    pub span: Option<Range<usize>>,
+    /// The most similar name that the table has.
+    pub nearest: Option<String>,
+}
+
+/// A cell that breaks a rule.
+#[derive(Debug, Clone, PartialEq)]
+pub struct BadCell {
+    /// Line of the file.
+    pub line: u64,
+    /// Column name.
+    pub column: String,
+    /// What the cell holds.
+    pub value: String,
+}
+
+/// What a level is named for.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum LevelRole {
+    /// `[data] keep`
+    Keep,
+    /// `merge` of a category.
+    Merge,
+    /// `reference` of a category.
+    Reference,
+}
+
+/// A level that no row used has.
+#[derive(Debug, Clone, PartialEq)]
+pub struct UnknownLevel {
+    /// The column.
+    pub column: String,
+    /// The level.
+    pub level: String,
+    /// Its place in the spec.
+    pub span: Range<usize>,
+    /// The most similar level that the column has.
+    pub nearest: Option<String>,
+    /// The levels that the column has, in order of first appearance.
+    pub present: Vec<String>,
+}
+
+/// A term that other terms determine.
+#[derive(Debug, Clone, PartialEq)]
+pub struct CollinearTerm {
+    /// The term.
+    pub name: String,
+    /// The terms that determine it; none when it does not vary at all.
+    pub follows_from: Vec<String>,
+    /// Its place in the spec.
+    pub span: Range<usize>,
+}
+
+impl DesignError {
+    /// The faults in words, one diagnostic for each kind.
+    pub fn diagnostics(&self) -> Vec<Diagnostic> {
+        self.faults.iter().map(|fault| self.diagnostic(fault)).collect()
+    }
+
+    fn spec(&self, span: &Range<usize>, label: impl Into<String>) -> Place {
+        Place::Spec {
+            file: self.spec_file.clone(),
+            span: span.clone(),
+            label: label.into(),
+        }
+    }
+
+    fn diagnostic(&self, fault: &DesignFault) -> Diagnostic {
+        match fault {
+            DesignFault::MissingColumns { missing, present } => self.missing_columns(missing, present),
+            DesignFault::Cells { rule, cells } => {
+                let place = |cell: &BadCell| Place::Cell {
+                    file: self.table_file.clone(),
+                    line: Some(cell.line),
+                    column: Some(cell.column.clone()),
+                    value: Some(cell.value.clone()),
+                };
+                Diagnostic::new(
+                    rule.code(),
+                    rule.message(cells.len()),
+                    cells.iter().map(place).collect(),
+                    rule.help(),
+                )
+            }
+            DesignFault::UnknownLevels { role, unknown } => self.unknown_levels(*role, unknown),
+            DesignFault::NoRows {
+                read,
+                not_kept,
+                with_gaps,
+            } => Diagnostic::new(
+                "no-rows-left",
+                format!("no row is left: of {read}, `keep` leaves out {not_kept} and {with_gaps} have gaps"),
+                vec![Place::File {
+                    file: self.table_file.clone(),
+                }],
+                "look at `keep` and `gap_marks` in `[data]`, and at the columns that are mostly empty",
+            ),
+            DesignFault::OneLevel { column, level, span } => Diagnostic::new(
+                "one-level",
+                format!(
+                    "the category `{column}` has one level, \"{level}\", in all rows used: there is nothing to compare"
+                ),
+                vec![self.spec(span, format!("always \"{level}\""))],
+                "take the covariate out, or look at what `keep` and `merge` leave of it",
+            ),
+            DesignFault::ManyLevels {
+                column,
+                levels,
+                rows,
+                span,
+            } => Diagnostic::new(
+                "too-many-levels",
+                format!("the category `{column}` has {levels} levels in {rows} rows"),
+                vec![self.spec(span, format!("{levels} levels"))],
+                "a column that is nearly different in every row is a name or a measure and no category: take it out, \
+                 code it `as = \"number\"`, or `merge` its levels",
+            ),
+            DesignFault::ConstantNumber { column, value, span } => Diagnostic::new(
+                "constant-number",
+                format!("`{column}` is {value} in all rows used: its rate ratio cannot be told from the baseline"),
+                vec![self.spec(span, format!("always {value}"))],
+                "take the covariate out, or look at what `keep` leaves of it",
+            ),
+            DesignFault::JointColumn { column, span } => Diagnostic::new(
+                "joint-column",
+                format!("`[[joint]]` names `{column}`, which is no covariate of the spec"),
+                vec![self.spec(span, "no covariate")],
+                "add a `[[covariate]]` for it: a joint term comes on top of the terms of both columns",
+            ),
+            DesignFault::TakenName { name, spans } => Diagnostic::new(
+                "taken-name",
+                format!("the name `{name}` belongs to more than one parameter of the model"),
+                spans
+                    .iter()
+                    .map(|span| self.spec(span, format!("makes `{name}`")))
+                    .collect(),
+                "rename the column or the level in the data file, or take one of the terms out",
+            ),
+            DesignFault::FewRows { rows, coefficients } => Diagnostic::new(
+                "few-rows",
+                format!(
+                    "the spec asks for {coefficients} coefficients (the baseline and its terms), and {rows} rows are used"
+                ),
+                vec![Place::File {
+                    file: self.table_file.clone(),
+                }],
+                "take covariates out or merge levels until the rows are well above the coefficients",
+            ),
+            DesignFault::Collinear { terms } => self.collinear(terms),
+            DesignFault::UnknownAnswer {
+                answer,
+                span,
+                nearest,
+                terms,
+            } => Diagnostic::new(
+                "unknown-answer",
+                format!("`[study] answer` is `{answer}`, and the model has no such term"),
+                vec![self.spec(span, did_you_mean(nearest))],
+                format!("name one of {}", listed(&with_baseline(terms))),
+            ),
+        }
+    }
+
+    fn missing_columns(&self, missing: &[MissingColumn], present: &[String]) -> Diagnostic {
+        let place = |column: &MissingColumn| match &column.span {
+            Some(span) => self.spec(span, did_you_mean(&column.nearest)),
+            None => Place::Cell {
+                file: self.table_file.clone(),
+                line: None,
+                column: Some(column.name.clone()),
+                value: None,
+            },
+        };
+        let mut names: Vec<String> = missing.iter().map(|column| column.name.clone()).collect();
+        names.dedup();
+        Diagnostic::new(
+            "missing-column",
+            format!("the table `{}` has no column {}", self.table_file, listed(&names)),
+            missing.iter().map(place).collect(),
+            format!("the table has {}", listed(present)),
+        )
+    }
+
+    fn unknown_levels(&self, role: LevelRole, unknown: &[UnknownLevel]) -> Diagnostic {
+        let places = unknown
+            .iter()
+            .map(|level| self.spec(&level.span, did_you_mean(&level.nearest)))
+            .collect();
+        let (code, what) = match role {
+            LevelRole::Keep => ("unknown-keep-level", "`keep` names"),
+            LevelRole::Merge => ("unknown-merge-level", "`merge` names"),
+            LevelRole::Reference => ("unknown-reference", "`reference` names"),
+        };
+        let names: Vec<String> = unknown
+            .iter()
+            .map(|level| format!("{}={}", level.column, level.level))
+            .collect();
+        let mut help = Vec::new();
+        for level in unknown {
+            let line = format!("`{}` has {}", level.column, listed(&level.present));
+            if !help.contains(&line) {
+                help.push(line);
+            }
+        }
+        Diagnostic::new(
+            code,
+            format!("{what} {}, which no row used has", listed(&names)),
+            places,
+            format!("{}; capital letters count", help.join("; ")),
+        )
+    }
+
+    fn collinear(&self, terms: &[CollinearTerm]) -> Diagnostic {
+        let told = |term: &CollinearTerm| match term.follows_from.as_slice() {
+            [] => format!("`{}` is the same in every row", term.name),
+            others => format!("`{}` follows from {}", term.name, listed(others)),
+        };
+        let message: Vec<String> = terms.iter().map(told).collect();
+        Diagnostic::new(
+            "collinear",
+            format!("the rows cannot tell these terms apart: {}", message.join("; ")),
+            terms.iter().map(|term| self.spec(&term.span, told(term))).collect(),
+            "take one of the terms out, or merge levels: which one is a matter of the question, not of the data",
+        )
+    }
+}
+
+/// Names in backticks, the first dozen and a count.
+fn listed(names: &[String]) -> String {
+    const SHOWN: usize = 12;
+    let shown: Vec<String> = names.iter().take(SHOWN).map(|name| format!("`{name}`")).collect();
+    let rest = names.len().saturating_sub(SHOWN);
+    match rest {
+        0 => shown.join(", "),
+        _ => format!("{} and {rest} more", shown.join(", ")),
+    }
+}
+
+fn did_you_mean(nearest: &Option<String>) -> String {
+    nearest
+        .as_ref()
+        .map(|name| format!("did you mean `{name}`?"))
+        .unwrap_or_default()
+}
+
+fn with_baseline(terms: &[String]) -> Vec<String> {
+    terms.iter().cloned().chain(["baseline".to_owned()]).collect()
+}
+
+impl fmt::Display for DesignError {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        let messages: Vec<String> = self
+            .diagnostics()
+            .into_iter()
+            .map(|diagnostic| diagnostic.message)
+            .collect();
+        write!(
+            f,
+            "{} with {}: {}",
+            self.spec_file,
+            self.table_file,
+            messages.join("; ")
+        )
+    }
+}
+
+impl std::error::Error for DesignError {}
