@@ -219,10 +219,10 @@ fn grouped(value: f64, place: Place) -> String {
     }
 }
 
-/// Commas between thousands, from 10,000 on (as in `4096` and `10,000`).
+/// Commas between thousands.
 fn with_commas(whole: &str) -> String {
     let (sign, digits) = whole.strip_prefix('-').map_or(("", whole), |rest| ("-", rest));
-    if digits.len() < 5 || !digits.bytes().all(|b| b.is_ascii_digit()) {
+    if !digits.bytes().all(|b| b.is_ascii_digit()) {
         return whole.to_owned();
     }
     let mut out = String::from(sign);
@@ -301,7 +301,9 @@ mod tests {
         assert_eq!(figure(0.0004, -2), "below 0.01");
         assert_eq!(figure(-0.0004, -2), "0.00");
         assert_eq!(figure(1_234_567.0, 0), "1,234,567");
+        assert_eq!(figure(9_812.4, 0), "9,812");
         assert_eq!(as_written(10_000.0), "10,000");
+        assert_eq!(as_written(2_019.0), "2019");
         assert_eq!(as_written(0.5), "0.5");
         assert_eq!(level(0.95), "95 %");
         assert_eq!(level(0.57), "57 %");

@@ -1,5 +1,6 @@
 //! The rules that single cells can break, each with its code, its message and its remedy.
 
+use super::fault::BadCell;
 use super::types::LARGEST_COUNT;
 
 /// A rule that a cell breaks.
@@ -139,18 +140,18 @@ impl CellRule {
     }
 
     /// What to do about it.
-    pub(super) fn help(self) -> &'static str {
-        match self {
+    pub(super) fn help(self, cells: &[BadCell]) -> String {
+        let help = match self {
             CellRule::Gap => {
                 "fill the cells, or set `rows_with_gaps = \"drop\"` in `[data]` to leave such rows out and have them \
-                 listed; a text that means \"no value\" belongs into `gap_marks`"
+                 listed; a text that means \"no value\" belongs in `gap_marks`"
             }
             CellRule::KeepNumber => {
                 "write them as plain numbers, or name the levels to keep: `keep = { column = [\"…\"] }`"
             }
             CellRule::CountNumber => {
                 "write each count as a plain whole number without separators or units; a text that means \"no value\" \
-                 belongs into `[data] gap_marks`"
+                 belongs in `[data] gap_marks`"
             }
             CellRule::CountFinite => "write the number of incidents of the row",
             CellRule::CountNegative => {
@@ -171,8 +172,11 @@ impl CellRule {
                  for their incidents happened"
             }
             CellRule::ExposureZero => {
-                "such rows tell nothing about the rate: leave them out with `keep` in `[data]`, for example \
-                 `keep = { exposure_column = { from = 1 } }`"
+                let column = cells.first().map_or("", |cell| cell.column.as_str());
+                return format!(
+                    "such rows tell nothing about the rate: leave them out with `keep = {{ \"{column}\" = {{ from = 1 }} }}` in \
+                     `[data]`, or whatever is the least exposure that counts"
+                );
             }
             CellRule::MoreThanChances => {
                 "correct the cells, or take `one_incident_each_at_most` out if one unit of exposure can bring several incidents"
@@ -180,7 +184,7 @@ impl CellRule {
             CellRule::StandsFor => "write how many identical rows the row stands for: 1, 2, 3 and so on",
             CellRule::CovariateNumber => {
                 "write each as a plain number with a decimal point, without separators or units, or code the column \
-                 `as = \"category\"`; a text that means \"no value\" belongs into `[data] gap_marks`"
+                 `as = \"category\"`; a text that means \"no value\" belongs in `[data] gap_marks`"
             }
             CellRule::CovariateFinite => "write the value of the row",
             CellRule::CovariatePositive => {
@@ -188,7 +192,8 @@ impl CellRule {
             }
             CellRule::CovariateFar => "correct the cells, or choose a larger `step`",
             CellRule::NewLevel => "correct the level, or fit again with rows that have it",
-        }
+        };
+        help.to_owned()
     }
 }
 

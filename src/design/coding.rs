@@ -41,7 +41,8 @@ impl Coding {
     /// A column that the table lacks, a number that cannot be read or taken a logarithm of, a
     /// level that the coding does not know; all of them together.
     ///
-    /// A row index past the table's end is a mistake of the caller and panics.
+    /// # Panics
+    /// On a row index past the end of the table, a mistake of the caller.
     pub fn code(&self, table: &Table, rows: &[usize]) -> Result<Vec<Vec<f64>>, Vec<DesignFault>> {
         let rows = Rows {
             table,
@@ -178,8 +179,8 @@ fn coded(covariate: &CovariateCoding, rows: &Rows, values: &Values, faults: &mut
     };
     for column in &columns {
         for (at, value) in column.iter().enumerate() {
-            // Written so that NaN, from a centre or step at the edge of what a float holds, is told too.
-            if !(value.abs() <= MOST_STEPS) {
+            // NaN comes of a centre or a step at the edge of what a float holds.
+            if value.is_nan() || value.abs() > MOST_STEPS {
                 tell(CellRule::CovariateFar, at, &mut bad);
             }
         }

@@ -1,7 +1,7 @@
 //! What can be wrong once the spec and the table meet.
 
 use super::cell_rule::CellRule;
-use crate::diagnostic::{Diagnostic, Place};
+use crate::diagnostic::{Diagnostic, PLACES_SHOWN, Place};
 use std::fmt;
 use std::ops::Range;
 
@@ -179,7 +179,20 @@ pub struct CollinearTerm {
 impl DesignError {
     /// The faults in words, one diagnostic for each kind.
     pub fn diagnostics(&self) -> Vec<Diagnostic> {
-        self.faults.iter().map(|fault| self.diagnostic(fault)).collect()
+        let mut told: Vec<Diagnostic> = Vec::new();
+        for fault in of_one_kind_together(&self.faults) {
+            let next = self.diagnostic(&fault);
+            match told.iter_mut().find(|known| known.code == next.code) {
+                Some(known) => {
+                    known.message = format!("{}; {}", known.message, next.message);
+                    known.places.extend(next.places);
+                    known.places.truncate(PLACES_SHOWN);
+                    known.places_in_all += next.places_in_all;
+                }
+                None => told.push(next),
+            }
+        }
+        told
     }
 
     fn spec(&self, span: &Range<usize>, label: impl Into<String>) -> Place {
@@ -204,7 +217,7 @@ impl DesignError {
                     rule.code(),
                     rule.message(cells.len()),
                     cells.iter().map(place).collect(),
-                    rule.help(),
+                    rule.help(cells),
                 )
             }
             DesignFault::UnknownLevels { role, unknown } => self.unknown_levels(*role, unknown),
@@ -222,11 +235,9 @@ impl DesignError {
             ),
             DesignFault::OneLevel { column, level, span } => Diagnostic::new(
                 "one-level",
-                format!(
-                    "the category `{column}` has one level, \"{level}\", in all rows used: there is nothing to compare"
-                ),
+                format!("the category `{column}` has one level, \"{level}\", in all rows used"),
                 vec![self.spec(span, format!("always \"{level}\""))],
-                "take the covariate out, or look at what `keep` and `merge` leave of it",
+                "with one level there is nothing to compare: take the covariate out, or look at what `keep` and `merge` leave of it",
             ),
             DesignFault::ManyLevels {
                 column,
@@ -242,9 +253,10 @@ impl DesignError {
             ),
             DesignFault::ConstantNumber { column, value, span } => Diagnostic::new(
                 "constant-number",
-                format!("`{column}` is {value} in all rows used: its rate ratio cannot be told from the baseline"),
+                format!("`{column}` is {value} in all rows used"),
                 vec![self.spec(span, format!("always {value}"))],
-                "take the covariate out, or look at what `keep` leaves of it",
+                "the rate ratio of what never changes cannot be told from the baseline: take the covariate out, or look at what \
+                 `keep` leaves of it",
             ),
             DesignFault::JointColumn { column, span } => Diagnostic::new(
                 "joint-column",
@@ -348,6 +360,31 @@ impl DesignError {
             "take one of the terms out, or merge levels: which one is a matter of the question, not of the data",
         )
     }
+}
+
+/// Faults that list cells or levels, joined with those of their kind.
+fn of_one_kind_together(faults: &[DesignFault]) -> Vec<DesignFault> {
+    let mut joined: Vec<DesignFault> = Vec::new();
+    for fault in faults {
+        let merged = joined.iter_mut().any(|known| match (known, fault) {
+            (DesignFault::Cells { rule: known, cells }, DesignFault::Cells { rule, cells: more }) if known == rule => {
+                cells.extend_from_slice(more);
+                true
+            }
+            (
+                DesignFault::UnknownLevels { role: known, unknown },
+                DesignFault::UnknownLevels { role, unknown: more },
+            ) if known == role => {
+                unknown.extend_from_slice(more);
+                true
+            }
+            _ => false,
+        });
+        if !merged {
+            joined.push(fault.clone());
+        }
+    }
+    joined
 }
 
 /// Names in backticks, the first dozen and a count.

@@ -22,6 +22,13 @@ pub enum OutputError {
         /// What the system said.
         source: std::io::Error,
     },
+    /// An old run was moved aside for a new one and could be neither moved back nor removed.
+    OldRunLeft {
+        /// Where it stands now.
+        kept: PathBuf,
+        /// What the system said.
+        source: std::io::Error,
+    },
     /// The folder that the run should stand in does not exist.
     NoFolder {
         /// The missing folder.
@@ -97,13 +104,13 @@ pub enum OutputError {
 
 impl OutputError {
     /// A refusal to write, by path.
-    pub fn write(path: &Path) -> impl FnOnce(std::io::Error) -> OutputError {
+    pub fn write(path: &Path) -> impl FnOnce(std::io::Error) -> OutputError + use<> {
         let path = path.to_owned();
         move |source| OutputError::Write { path, source }
     }
 
     /// A refusal to read, by path.
-    pub fn read(path: &Path) -> impl FnOnce(std::io::Error) -> OutputError {
+    pub fn read(path: &Path) -> impl FnOnce(std::io::Error) -> OutputError + use<> {
         let path = path.to_owned();
         move |source| OutputError::Read { path, source }
     }
@@ -145,6 +152,12 @@ impl OutputError {
                 format!("this cannot be read: {source}"),
                 Some(path),
                 "Check the name and who may read the file.".to_owned(),
+            ),
+            OutputError::OldRunLeft { kept, source } => (
+                "old-run-left",
+                format!("the old run was moved here to make room, and then the system refused: {source}"),
+                Some(kept),
+                "Look at what stands in its old place; then move this folder back, or remove it.".to_owned(),
             ),
             OutputError::NoFolder { folder } => (
                 "no-folder",
@@ -223,7 +236,12 @@ impl OutputError {
 /// The first few of a list, and how many more there are.
 fn listed(files: &[String]) -> String {
     const SHOWN: usize = 3;
-    let shown = files.iter().take(SHOWN).map(String::as_str).collect::<Vec<_>>().join(", ");
+    let shown = files
+        .iter()
+        .take(SHOWN)
+        .map(String::as_str)
+        .collect::<Vec<_>>()
+        .join(", ");
     match files.len().saturating_sub(SHOWN) {
         0 => shown,
         more => format!("{shown} and {more} more"),
@@ -243,7 +261,9 @@ impl fmt::Display for OutputError {
 impl std::error::Error for OutputError {
     fn source(&self) -> Option<&(dyn std::error::Error + 'static)> {
         match self {
-            OutputError::Write { source, .. } | OutputError::Read { source, .. } => Some(source),
+            OutputError::Write { source, .. }
+            | OutputError::Read { source, .. }
+            | OutputError::OldRunLeft { source, .. } => Some(source),
             _ => None,
         }
     }

@@ -5,6 +5,12 @@ use crate::design::Audit;
 use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 
+/// Version of the layout of `findings.json`.
+pub const LAYOUT: u32 = 1;
+
+/// What `findings.json` says about who may read it.
+pub const AUDIENCE: &str = "not for publication";
+
 /// All findings of one fit: the content of `findings.json`.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]

@@ -29,7 +29,10 @@ fn first_null(value: &Value) -> Option<String> {
     };
     match value {
         Value::Null => Some(String::new()),
-        Value::Array(items) => items.iter().enumerate().find_map(|(k, item)| below(&k.to_string(), item)),
+        Value::Array(items) => items
+            .iter()
+            .enumerate()
+            .find_map(|(k, item)| below(&k.to_string(), item)),
         Value::Object(items) => items.iter().find_map(|(key, item)| below(key, item)),
         _ => None,
     }

@@ -21,8 +21,12 @@ const LINE: &str = "line_of_file";
 
 /// `draws.parquet`: chain and draw, both counted from 1, then one column for each parameter.
 pub fn draws(path: &Path, draws: &Draws) -> Result<Vec<u8>, OutputError> {
-    let chain: Vec<u32> = (0..draws.in_all()).map(|k| (k / draws.per_chain.max(1)) as u32 + 1).collect();
-    let draw: Vec<u32> = (0..draws.in_all()).map(|k| (k % draws.per_chain.max(1)) as u32 + 1).collect();
+    let chain: Vec<u32> = (0..draws.in_all())
+        .map(|k| (k / draws.per_chain.max(1)) as u32 + 1)
+        .collect();
+    let draw: Vec<u32> = (0..draws.in_all())
+        .map(|k| (k % draws.per_chain.max(1)) as u32 + 1)
+        .collect();
     let mut names = Names::default();
     let mut columns = vec![
         Series::new(names.free(CHAIN).into(), chain).into_column(),
@@ -61,7 +65,10 @@ pub fn read_rows(path: &Path, file: &str) -> Result<Table, OutputError> {
         path: path.to_owned(),
         because: because.to_owned(),
     };
-    let (first, rest) = frame.columns().split_first().ok_or_else(|| damaged("it has no column"))?;
+    let (first, rest) = frame
+        .columns()
+        .split_first()
+        .ok_or_else(|| damaged("it has no column"))?;
     let lines: Vec<u64> = first
         .u64()
         .map_err(|_| damaged("its first column does not hold line numbers"))?

@@ -177,7 +177,10 @@ impl<'a> Sheet<'a> {
                 Cell::Number(_) => {
                     return Err(OutputError::NotFinite {
                         file: self.file,
-                        place: self.header.get(place).map_or_else(String::new, |name| format!("column {name}")),
+                        place: self
+                            .header
+                            .get(place)
+                            .map_or_else(String::new, |name| format!("column {name}")),
                     });
                 }
             }
