@@ -11,21 +11,33 @@ fn root() -> &'static Path {
 /// README, guide and docs: where each is, and its text.
 fn pages() -> Vec<(PathBuf, String)> {
     let mut paths = vec![root().join("README.md"), root().join("DEVELOPERS.md")];
-    let docs = fs::read_dir(root().join("docs")).unwrap().map(|entry| entry.unwrap().path());
+    let docs = fs::read_dir(root().join("docs"))
+        .unwrap()
+        .map(|entry| entry.unwrap().path());
     paths.extend(docs.filter(|path| path.extension().is_some_and(|kind| kind == "md")));
     paths.sort();
-    paths.into_iter().map(|path| (path.clone(), fs::read_to_string(&path).unwrap())).collect()
+    paths
+        .into_iter()
+        .map(|path| (path.clone(), fs::read_to_string(&path).unwrap()))
+        .collect()
 }
 
 /// The fenced blocks of a page in this language.
 fn blocks(text: &str, language: &str) -> Vec<String> {
     let fence = format!("```{language}\n");
-    text.split(&fence).skip(1).map(|rest| rest.split("```").next().unwrap().to_string()).collect()
+    text.split(&fence)
+        .skip(1)
+        .map(|rest| rest.split("```").next().unwrap().to_string())
+        .collect()
 }
 
 /// Every piece of code on a page: the lines of its shell blocks, and what stands between backticks in its prose.
 fn code(text: &str) -> Vec<String> {
-    let mut found: Vec<String> = blocks(text, "sh").iter().flat_map(|block| block.lines()).map(str::to_string).collect();
+    let mut found: Vec<String> = blocks(text, "sh")
+        .iter()
+        .flat_map(|block| block.lines())
+        .map(str::to_string)
+        .collect();
     let mut prose = String::new();
     for (place, part) in text.split("```").enumerate() {
         if place % 2 == 0 {
@@ -34,7 +46,10 @@ fn code(text: &str) -> Vec<String> {
     }
     found.extend(prose.split('`').skip(1).step_by(2).map(str::to_string));
     // What follows two spaces and a hash is a remark.
-    found.iter().map(|line| line.split("  #").next().unwrap().trim().to_string()).collect()
+    found
+        .iter()
+        .map(|line| line.split("  #").next().unwrap().trim().to_string())
+        .collect()
 }
 
 #[test]
@@ -47,7 +62,11 @@ fn every_link_within_the_project_leads_to_a_file() {
                 continue;
             }
             links += 1;
-            assert!(path.parent().unwrap().join(target).exists(), "{}: no {target}", path.display());
+            assert!(
+                path.parent().unwrap().join(target).exists(),
+                "{}: no {target}",
+                path.display()
+            );
         }
     }
     assert!(links > 5, "only {links} links were found");
@@ -81,7 +100,11 @@ fn command_lines() -> BTreeSet<Vec<String>> {
         let rest = code.strip_prefix("ratewright ")?.to_string();
         Some(rest.split_whitespace().map(str::to_string).collect::<Vec<_>>())
     };
-    pages().into_iter().flat_map(|(_, text)| code(&text)).filter_map(shown).collect()
+    pages()
+        .into_iter()
+        .flat_map(|(_, text)| code(&text))
+        .filter_map(shown)
+        .collect()
 }
 
 #[test]
@@ -91,12 +114,23 @@ fn every_command_line_shown_is_understood() {
     for words in lines {
         assert!(understood(&words), "ratewright {}", words.join(" "));
     }
-    assert!(!understood(&["fit".into(), "pools.toml".into(), "--no-such-option".into()]));
+    assert!(!understood(&[
+        "fit".into(),
+        "pools.toml".into(),
+        "--no-such-option".into()
+    ]));
 }
 
 fn understood(words: &[String]) -> bool {
     // Help at the end stops a command that was understood so far from being run.
-    assert_cmd::Command::cargo_bin("ratewright").unwrap().args(words).arg("--help").output().unwrap().status.success()
+    assert_cmd::Command::cargo_bin("ratewright")
+        .unwrap()
+        .args(words)
+        .arg("--help")
+        .output()
+        .unwrap()
+        .status
+        .success()
 }
 
 #[test]
@@ -115,14 +149,20 @@ fn reading_the_findings_names_every_file_and_column_of_a_run_and_no_other() {
     assert!(fit.status.success(), "{}", String::from_utf8_lossy(&fit.stderr));
 
     let page = fs::read_to_string(root().join("docs/reading-the-findings.md")).unwrap();
-    let files: BTreeSet<String> =
-        fs::read_dir(&run).unwrap().map(|entry| entry.unwrap().file_name().into_string().unwrap()).collect();
+    let files: BTreeSet<String> = fs::read_dir(&run)
+        .unwrap()
+        .map(|entry| entry.unwrap().file_name().into_string().unwrap())
+        .collect();
     assert_eq!(first_column(section(&page, "## The run folder")), files);
 
     for table in ["coefficients.csv", "rate_ratios.csv", "units.csv"] {
         let text = fs::read_to_string(run.join(table)).unwrap();
         let columns: BTreeSet<String> = text.lines().next().unwrap().split(',').map(str::to_string).collect();
-        assert_eq!(first_column(section(&page, &format!("### `{table}`"))), columns, "{table}");
+        assert_eq!(
+            first_column(section(&page, &format!("### `{table}`"))),
+            columns,
+            "{table}"
+        );
     }
 }
 
@@ -138,7 +178,11 @@ fn first_column(section: &str) -> BTreeSet<String> {
     let rows = section.lines().filter(|line| line.starts_with("| `"));
     rows.flat_map(|row| {
         let cell = row.trim_start_matches("| ").split(" |").next().unwrap();
-        cell.split('`').skip(1).step_by(2).map(str::to_string).collect::<Vec<_>>()
+        cell.split('`')
+            .skip(1)
+            .step_by(2)
+            .map(str::to_string)
+            .collect::<Vec<_>>()
     })
     .collect()
 }
