@@ -27,10 +27,38 @@ pub struct Plan {
 
 /// The problems, small ones first.
 pub const PLANS: [Plan; 4] = [
-    Plan { name: "S (small)", rows: 500, terms: 8, base: 3.0, scatter: 0.6, exposure_sd: 0.5 },
-    Plan { name: "D (few and skewed)", rows: 60, terms: 12, base: 0.6, scatter: 1.2, exposure_sd: 0.3 },
-    Plan { name: "Z (no scatter)", rows: 2_000, terms: 8, base: 4.0, scatter: 0.0, exposure_sd: 0.5 },
-    Plan { name: "M (medium)", rows: 10_000, terms: 20, base: 4.0, scatter: 0.6, exposure_sd: 0.5 },
+    Plan {
+        name: "S (small)",
+        rows: 500,
+        terms: 8,
+        base: 3.0,
+        scatter: 0.6,
+        exposure_sd: 0.5,
+    },
+    Plan {
+        name: "D (few and skewed)",
+        rows: 60,
+        terms: 12,
+        base: 0.6,
+        scatter: 1.2,
+        exposure_sd: 0.3,
+    },
+    Plan {
+        name: "Z (no scatter)",
+        rows: 2_000,
+        terms: 8,
+        base: 4.0,
+        scatter: 0.0,
+        exposure_sd: 0.5,
+    },
+    Plan {
+        name: "M (medium)",
+        rows: 10_000,
+        terms: 20,
+        base: 4.0,
+        scatter: 0.6,
+        exposure_sd: 0.5,
+    },
 ];
 
 /// The spec of a problem: its priors, and where its seed stands.
@@ -64,7 +92,11 @@ pub fn simulate(plan: &Plan, seed: u64) -> Design {
                 log_mean += coefficient * column[row];
             }
             let square = plan.scatter * plan.scatter;
-            let own_factor = if square > 0.0 { square * stream.gamma(1.0 / square) } else { 1.0 };
+            let own_factor = if square > 0.0 {
+                square * stream.gamma(1.0 / square)
+            } else {
+                1.0
+            };
             stream.poisson(exp(log_mean) * own_factor)
         })
         .collect();
@@ -101,7 +133,12 @@ pub fn simulate(plan: &Plan, seed: u64) -> Design {
 }
 
 fn term(name: &String) -> Term {
-    Term { name: name.clone(), change: format!("per 1 more {name}"), prior_mean: 0.0, prior_sd: 1.0 }
+    Term {
+        name: name.clone(),
+        change: format!("per 1 more {name}"),
+        prior_mean: 0.0,
+        prior_sd: 1.0,
+    }
 }
 
 /// Columns with lag-one correlation 0.4, the last quarter cut to 0/1 at 0.3, centred.
