@@ -4,7 +4,7 @@
 mod support;
 
 use ratewright::design::{self, Audit, CellRule, ColumnCoding, Design, DesignFault};
-use ratewright::spec::{Centre, RowsWithGaps, Spec};
+use ratewright::spec::{Centre, Data, RowsWithGaps, Spec, Standing};
 use ratewright::table::{Cells, Table};
 use support::*;
 
@@ -275,4 +275,53 @@ fn a_new_row_with_a_new_level_is_refused_with_its_line() {
     );
     let faults = coding.code(&table("decking,slop\nplain,5\n"), &[0]).unwrap_err();
     assert!(matches!(&faults[0], DesignFault::MissingColumns { missing, .. } if missing.len() == 2));
+}
+
+#[test]
+fn remarks_tell_what_is_no_error() {
+    let mut spec = study();
+    spec.data.period = Some(at("month"));
+    spec.covariates = vec![category("decking", "plain"), number("year", Centre::Value(0.0), 1.0)];
+    spec.covariates[0].plausible_ratio.standing = Standing::Provisional;
+    let mut text = "landing,month,falls,boardings,decking,year\n".to_owned();
+    for row in 0..30 {
+        let decking = if row == 11 {
+            "mesh"
+        } else {
+            ["plain", "grooved"][row % 2]
+        };
+        let boardings = if row == 3 {
+            "0.001".to_owned()
+        } else {
+            (row * 1000 + 500).to_string()
+        };
+        text.push_str(&format!(
+            "L{},m{},1,{boardings},{decking},{}\n",
+            row / 5,
+            row % 4,
+            2030 + row / 10
+        ));
+    }
+    let table = table(&text);
+    let design = built(&spec, &table);
+    let told: Vec<String> = design::remarks(&spec, &table, &design)
+        .iter()
+        .map(|remark| format!("[{}] {remark}\n", remark.code()))
+        .collect();
+    insta::assert_snapshot!(told.concat());
+}
+
+#[test]
+fn a_study_in_order_calls_for_no_remark() {
+    let (spec, original) = (full_study(), table(&full_table()));
+    let spec = Spec {
+        data: Data {
+            keep: vec![keep_numbers("boardings", Some(1.0), None)],
+            ..spec.data
+        },
+        joints: vec![],
+        ..spec
+    };
+    let design = built(&spec, &original);
+    assert_eq!(design::remarks(&spec, &original, &design), []);
 }

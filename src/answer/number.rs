@@ -113,7 +113,12 @@ pub fn whole(value: f64) -> String {
 pub fn as_written(value: f64) -> String {
     let text = format!("{value}");
     let (head, tail) = text.split_once('.').unwrap_or((&text, ""));
-    let head = with_commas(head);
+    // Four digits stand as they are: they may be a year.
+    let head = if head.trim_start_matches('-').len() > 4 {
+        with_commas(head)
+    } else {
+        head.to_owned()
+    };
     if tail.is_empty() {
         head
     } else {

@@ -18,6 +18,8 @@ pub enum Purpose {
     Demo = 3,
     /// A simulated study; the index is the repetition.
     Simulation = 4,
+    /// What the priors allow; there is one stream of it.
+    Prior = 5,
 }
 
 /// A stream of random numbers.

@@ -1,5 +1,6 @@
 //! Takes all that a fit found; gives the run folder, terminal text, JSON, CSV and Parquet.
 
+pub mod compare;
 mod error;
 pub mod files;
 pub mod findings;
@@ -13,6 +14,7 @@ pub mod tables;
 pub mod terminal;
 mod text;
 pub mod timings;
+pub mod vetting;
 
 pub use error::OutputError;
 pub use run_folder::{Replace, RunFolder};

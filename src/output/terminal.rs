@@ -3,6 +3,7 @@
 //! Every figure is read from the findings; nothing is computed here but its rounding.
 
 use crate::answer::{self, Measured, as_written, figure, level, probability, roughly, whole};
+use crate::design::Audit;
 use crate::output::findings::{CoefficientFinding, Findings, SamplingFinding, StopReason, UnitFinding, UnitState};
 use crate::output::shown::{Audience, Observed};
 use crate::output::text::{Align, Line, Page, name, shell_word};
@@ -22,7 +23,7 @@ pub fn findings(findings: &Findings, audience: Audience, run: &Path) -> String {
     rate_ratios(&mut page, findings);
     rate_and_scatter(&mut page, findings);
     units(&mut page, findings, audience);
-    rows(&mut page, findings);
+    rows(&mut page, &findings.data);
     simulation(&mut page, findings);
     notes(&mut page, findings);
     the_run(&mut page, run);
@@ -182,9 +183,9 @@ fn unit_line(unit: &UnitFinding) -> Line {
     ])
 }
 
-fn rows(page: &mut Page, findings: &Findings) {
+/// What happened to the rows of the file.
+pub(super) fn rows(page: &mut Page, audit: &Audit) {
     page.heading("The rows");
-    let audit = &findings.data;
     page.paragraph(&format!(
         "{} of the {} rows of the file are used.",
         whole(audit.rows_used as f64),
