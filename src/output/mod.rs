@@ -3,6 +3,7 @@
 pub mod compare;
 mod error;
 pub mod files;
+pub mod diagnostic;
 pub mod findings;
 pub mod gather;
 pub mod json;
