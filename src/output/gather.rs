@@ -31,8 +31,7 @@ pub fn findings(spec: &Spec, design: &Design, fit: &Fit, units: UnitsCheck) -> R
         incidents: &spec.incidents.column.value,
         interval: spec.report.interval,
     };
-    let answer =
-        answer::answer(question, &design.coding, &fit.draws, &summaries).ok_or_else(|| missing("/answer"))?;
+    let answer = answer::answer(question, &design.coding, &fit.draws, &summaries).ok_or_else(|| missing("/answer"))?;
     let sampling = sampling(spec, fit);
     Ok(Findings {
         layout: LAYOUT,

@@ -256,7 +256,11 @@ fn errors_in_words(s: &SamplingFinding) -> String {
 }
 
 fn notes(page: &mut Page, findings: &Findings) {
-    let mut notes = findings.notes.iter().filter(|note| note.code != NOTE_ON_UNITS).peekable();
+    let mut notes = findings
+        .notes
+        .iter()
+        .filter(|note| note.code != NOTE_ON_UNITS)
+        .peekable();
     if notes.peek().is_some() {
         page.heading("To bear in mind");
     }
