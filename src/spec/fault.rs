@@ -64,7 +64,9 @@ pub enum SpecFault {
         table: String,
         /// The key.
         key: At<String>,
-        /// The deciding key with its value, as in `as = "category"`.
+        /// The key that decides, as in `as`.
+        decided_by: &'static str,
+        /// The value of that key.
         decided: String,
         /// Values of the deciding key that the key goes with.
         goes_with: &'static [&'static str],
@@ -73,8 +75,6 @@ pub enum SpecFault {
     MissingTable {
         /// Its heading.
         table: String,
-        /// What it is for.
-        meaning: &'static str,
     },
     /// A key that its table needs.
     MissingKey {
