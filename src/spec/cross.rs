@@ -4,9 +4,10 @@
 use std::ops::Range;
 
 use super::fault::{AnswerFault, JointFault, SpecFault};
-use super::fields::{Faults, nearest};
+use super::fields::Faults;
 use super::predictor::{CovariateDraft, JointDraft, merged_into};
 use super::study::{At, Data, Exposure, Incidents};
+use super::values::nearest;
 
 /// Parameters that every fit may have: no term can share their name.
 const RESERVED: [&str; 3] = ["baseline", "scatter", "spread"];
@@ -85,12 +86,21 @@ pub(super) fn check_counts_column(
         .and_then(Option::as_ref)
         .map(|exposure| ("`column` in [exposure]", &exposure.column));
     let unit = data.map(|data| ("`unit` in [data]", &data.unit));
+    let period = data
+        .and_then(|data| data.period.as_ref())
+        .map(|column| ("`period` in [data]", column));
     let stands_for = data
         .and_then(|data| data.stands_for.as_ref())
         .map(|column| ("`stands_for` in [data]", column));
     let columns = covariates.iter().filter_map(|covariate| covariate.column.as_ref());
     let covariates = columns.map(|column| ("`column` in [[covariate]]", column));
-    for (key, column) in exposure.into_iter().chain(unit).chain(stands_for).chain(covariates) {
+    for (key, column) in exposure
+        .into_iter()
+        .chain(unit)
+        .chain(period)
+        .chain(stands_for)
+        .chain(covariates)
+    {
         if column.value == *counts {
             faults.push(SpecFault::CountsReused {
                 column: counts.clone(),

@@ -22,6 +22,8 @@ pub enum SpecFault {
         /// What the system said.
         reason: String,
     },
+    /// The file is larger than [`MOST_BYTES`](super::MOST_BYTES).
+    TooLarge,
     /// The file holds nothing but white space and comments.
     Empty,
     /// The file is not UTF-8.
@@ -332,6 +334,7 @@ impl SpecFault {
     pub fn span(&self) -> Option<Range<usize>> {
         match self {
             SpecFault::Unreadable { .. }
+            | SpecFault::TooLarge
             | SpecFault::Empty
             | SpecFault::NotUtf8 { .. }
             | SpecFault::MissingTable { .. } => None,

@@ -1,12 +1,14 @@
 //! From a file or a text to a checked [`Spec`], or to all that is wrong with it.
 
+use std::fs::File;
+use std::io::Read;
 use std::path::Path;
 
 use toml::de::{DeTable, DeValue};
 
 use super::cross::{check_answer, check_counts_column, check_terms};
 use super::fault::{Encoding, KeyHint, SpecError, SpecFault};
-use super::fields::{Faults, Fields, nearest, type_in_words};
+use super::fields::{Faults, Fields};
 use super::keys::{TableInfo, Times};
 use super::predictor::{CovariateDraft, JointDraft, read_covariate, read_joint};
 use super::sections::{
@@ -14,11 +16,16 @@ use super::sections::{
 };
 use super::study::{At, Source, Spec};
 use super::tables::{TABLES, TABLES_NOT_YET};
+use super::values::{nearest, type_in_words};
+
+/// The largest spec that is read, in bytes. A table named where the spec is meant would otherwise be
+/// taken in whole, only to be refused line by line.
+pub const MOST_BYTES: u64 = 1 << 20;
 
 /// Reads and checks a spec file.
 ///
 /// # Errors
-/// The file cannot be read, is not UTF-8 (a byte-order mark of UTF-8 is accepted), or [`parse`]
+/// The file cannot be read, is larger than [`MOST_BYTES`], is not UTF-8 (a byte-order mark of UTF-8 is accepted), or [`parse`]
 /// refuses its text.
 pub fn read(path: &Path) -> Result<Spec, SpecError> {
     let file = path.display().to_string();
@@ -29,11 +36,17 @@ pub fn read(path: &Path) -> Result<Spec, SpecError> {
         },
         faults: vec![fault],
     };
-    let bytes = std::fs::read(path).map_err(|error| {
-        refuse(SpecFault::Unreadable {
-            reason: error.to_string(),
-        })
-    })?;
+    let mut bytes = Vec::new();
+    File::open(path)
+        .and_then(|file| file.take(MOST_BYTES + 1).read_to_end(&mut bytes))
+        .map_err(|error| {
+            refuse(SpecFault::Unreadable {
+                reason: error.to_string(),
+            })
+        })?;
+    if bytes.len() as u64 > MOST_BYTES {
+        return Err(refuse(SpecFault::TooLarge));
+    }
     match String::from_utf8(bytes) {
         Ok(text) => parse(&file, &text),
         Err(error) => {

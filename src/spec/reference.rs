@@ -2,8 +2,8 @@
 
 use std::fmt::Write as _;
 
-use super::keys::{DefaultValue, KeyInfo, Kind, LeftOut, TableInfo, Times, grouped, one_of};
-use super::tables::{EARLIER, KEEP_ENDS, TABLES, TABLES_NOT_YET};
+use super::keys::{DefaultValue, KeyInfo, Kind, LeftOut, TableInfo, Times, grouped};
+use super::tables::{KEEP_ENDS, TABLES, TABLES_NOT_YET};
 
 /// A whole spec, for the docs and to start from.
 pub const EXAMPLE: &str = include_str!("example.toml");
@@ -47,12 +47,6 @@ pub fn reference_markdown() -> String {
     }
     for info in TABLES {
         push_table(&mut out, info);
-        if info.keys.iter().any(|key| matches!(key.kind, Kind::Keep)) {
-            push_inline(&mut out, &KEEP_ENDS);
-        }
-        if info.keys.iter().any(|key| matches!(key.kind, Kind::Inline(_))) {
-            push_inline(&mut out, &EARLIER);
-        }
     }
     push_not_yet(&mut out);
     out
@@ -71,23 +65,30 @@ fn push_table(out: &mut String, info: &TableInfo) {
         let _ = writeln!(out, "Exactly one of {} must stand.", names.join(" and "));
     }
     for key in info.keys {
-        push_key(out, "###", info, key);
+        let _ = writeln!(out, "\n### `{}`", key.name);
+        if let (Some(deciding), false) = (info.decided_by, key.only_with.is_empty()) {
+            let values: Vec<String> = key
+                .only_with
+                .iter()
+                .map(|value| format!("`{deciding} = \"{value}\"`"))
+                .collect();
+            let _ = writeln!(out, "\nOnly with {}.", values.join(" or "));
+        }
+        push_value(out, key);
+        match key.kind {
+            Kind::Keep => push_inline(out, &KEEP_ENDS),
+            Kind::Inline(inner) => push_inline(out, inner),
+            _ => {}
+        }
     }
 }
 
+/// The keys of a table that is written in place, after the key that holds it.
 fn push_inline(out: &mut String, info: &TableInfo) {
     for key in info.keys {
         let _ = writeln!(out, "\n#### `{}` in {}", key.name, info.heading());
         push_value(out, key);
     }
-}
-
-fn push_key(out: &mut String, level: &str, info: &TableInfo, key: &KeyInfo) {
-    let _ = writeln!(out, "\n{level} `{}`", key.name);
-    if let (Some(deciding), false) = (info.decided_by, key.only_with.is_empty()) {
-        let _ = writeln!(out, "\nOnly with `{deciding} =` {}.", in_code(&one_of(key.only_with)));
-    }
-    push_value(out, key);
 }
 
 fn push_value(out: &mut String, key: &KeyInfo) {
@@ -112,21 +113,6 @@ fn left_out(left_out: &LeftOut) -> String {
         LeftOut::Default(DefaultValue::Choice(value)) => format!("`\"{value}\"`"),
         LeftOut::Default(DefaultValue::Switch(on)) => format!("`{on}`"),
     }
-}
-
-/// Puts every value in quotes into code marks.
-fn in_code(values: &str) -> String {
-    values
-        .split('"')
-        .enumerate()
-        .map(|(i, part)| {
-            if i % 2 == 1 {
-                format!("`\"{part}\"`")
-            } else {
-                part.into()
-            }
-        })
-        .collect()
 }
 
 fn push_not_yet(out: &mut String) {

@@ -100,6 +100,7 @@ impl SpecFault {
     pub fn code(&self) -> &'static str {
         match self {
             SpecFault::Unreadable { .. } => "spec-unreadable",
+            SpecFault::TooLarge => "spec-too-large",
             SpecFault::Empty => "spec-empty",
             SpecFault::NotUtf8 { .. } => "spec-not-utf-8",
             SpecFault::Syntax { .. } => "not-toml",

@@ -1,7 +1,8 @@
 //! Each fault in words: what is wrong, what stands beside the place, what to do.
 
 use super::fault::{AnswerFault, EarlierFault, Encoding, JointFault, KeyHint, MergeFault, RangeFault, SpecFault};
-use super::keys::one_of;
+use super::keys::{grouped, one_of};
+use super::read::MOST_BYTES;
 
 /// One fault in words.
 pub(super) struct Told {
@@ -26,6 +27,14 @@ impl SpecFault {
                 format!("the spec cannot be read: {reason}"),
                 String::new(),
                 "Check the path and that you may read the file.",
+            ),
+            SpecFault::TooLarge => told(
+                format!(
+                    "the spec is larger than {} bytes, as no spec is",
+                    grouped(MOST_BYTES as i64)
+                ),
+                String::new(),
+                "Name the spec, not the table: the table is named within the spec, by `file` in [data].",
             ),
             SpecFault::Empty => told(
                 "the spec is empty".into(),
