@@ -109,13 +109,25 @@ fn rate_and_scatter(page: &mut Page, findings: &Findings) {
 fn units(page: &mut Page, findings: &Findings, audience: Audience) {
     let check = &findings.units;
     page.heading("Does each count fit the model?");
+    let judged = |wanted: Option<bool>| {
+        check
+            .units
+            .iter()
+            .filter(|unit| audience.is_outside(unit) == wanted)
+            .count()
+    };
+    let outside = judged(Some(true));
+    let not_judged = match judged(None) {
+        0 => String::new(),
+        units => format!(" ({} with small counts left open)", whole(units as f64)),
+    };
     page.paragraph(&format!(
-        "Of {} units (column {}), {} {} outside the {} interval that the model predicts; if the model were right, \
-         about {} would by chance.",
+        "Of {} units (column {}), {} {} outside the {} interval that the model predicts{not_judged}; if the model \
+         were right, about {} would by chance.",
         whole(check.units.len() as f64),
         findings.study.unit_column,
-        whole(check.outside as f64),
-        if check.outside == 1 { "lies" } else { "lie" },
+        whole(outside as f64),
+        if outside == 1 { "lies" } else { "lie" },
         level(findings.study.interval),
         roughly(check.outside_by_chance)
     ));
