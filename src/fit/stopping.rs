@@ -46,11 +46,11 @@ impl Goal {
     }
 
     /// Draws of each chain before the next look: a whole number of rounds. Looks that cannot succeed
-    /// are left out, since each costs a sort of all draws: the next one is at nine tenths of what
+    /// are left out, since each costs a sort of all draws: the next one is just beyond what
     /// the last one asked for, and at most four times as far.
     pub fn next_per_chain(&self, per_chain: usize, worth: f64, chains: usize) -> usize {
         let round = ROUND.div_ceil(chains);
-        let asked = (per_chain as f64 * (0.9 * worth).min(4.0)) as usize;
+        let asked = (per_chain as f64 * (1.02 * worth).min(4.0)) as usize;
         let next = (asked / round * round).max(per_chain + round);
         next.min(self.most_per_chain(chains))
     }
