@@ -53,9 +53,14 @@ fn every_kind_of_fault_has_a_file_and_an_entry_in_the_docs() {
     codes.extend(missing.faults.iter().map(|fault| fault.code()));
     // Both sides: a fault without a file, and an entry of a fault that no longer exists.
     let problems = include_str!("../docs/problems.md");
-    let part = problems.split("\n## ").find(|part| part.starts_with("Spec\n")).expect("a part about the spec");
-    let entries: BTreeSet<&str> =
-        part.lines().filter_map(|line| line.strip_prefix("### `")?.strip_suffix('`')).collect();
+    let part = problems
+        .split("\n## ")
+        .find(|part| part.starts_with("Spec\n"))
+        .expect("a part about the spec");
+    let entries: BTreeSet<&str> = part
+        .lines()
+        .filter_map(|line| line.strip_prefix("### `")?.strip_suffix('`'))
+        .collect();
     assert_eq!(codes, entries);
 }
 
@@ -67,7 +72,10 @@ fn messages_of_ours_stay_within_80_columns_and_end_with_what_to_do() {
             assert!(line.chars().count() <= 80, "{name}: {line}");
         }
         assert!(message.contains("What to do:"), "{name}");
-        assert!(!message.chars().any(|letter| letter.is_control() && letter != '\n'), "{name}");
+        assert!(
+            !message.chars().any(|letter| letter.is_control() && letter != '\n'),
+            "{name}"
+        );
     }
 }
 
@@ -76,7 +84,11 @@ fn colour_adds_escape_sequences_and_no_word() {
     for name in files() {
         let error = error_of(&name);
         let styled = render(&error.diagnostics(), Some(&error.source), Look::Styled);
-        assert_eq!(anstream::adapter::strip_str(&styled).to_string(), message_of(&error), "{name}");
+        assert_eq!(
+            anstream::adapter::strip_str(&styled).to_string(),
+            message_of(&error),
+            "{name}"
+        );
         assert_ne!(styled, message_of(&error), "{name}");
     }
 }

@@ -147,7 +147,10 @@ fn is_provisional(spec: &Spec) -> bool {
         Baseline::PlausibleRate(range) => range.standing,
         Baseline::Earlier { .. } => Standing::Settled,
     };
-    let ratios = spec.covariates.iter().map(|covariate| covariate.plausible_ratio.standing);
+    let ratios = spec
+        .covariates
+        .iter()
+        .map(|covariate| covariate.plausible_ratio.standing);
     let joints = spec.joints.iter().map(|joint| joint.plausible_ratio.standing);
     [baseline, spec.family.standing()]
         .into_iter()

@@ -74,7 +74,11 @@ fn log_gamma() -> Known {
             ("rate^2", |p| exp(p[0]) * exp(p[0]), 6.0),
             // digamma(2) = 1 - Euler's constant.
             ("b", |p| p[0], 1.0 - 0.577_215_664_901_532_9),
-            ("P(rate < 0.2)", |p| f64::from(u8::from(exp(p[0]) < 0.2)), 1.0 - exp(-0.2) * 1.2),
+            (
+                "P(rate < 0.2)",
+                |p| f64::from(u8::from(exp(p[0]) < 0.2)),
+                1.0 - exp(-0.2) * 1.2,
+            ),
         ],
         mean: vec![ln(2.0)],
         covariance: vec![0.5],
@@ -100,7 +104,11 @@ fn scatter_at_zero() -> Known {
             ("c^2", |p| p[1] * p[1], 1.0),
             ("bc", |p| p[0] * p[1], 1.0),
             ("b^2", |p| p[0] * p[0], 1.09),
-            ("P(c < 0.1)", |p| f64::from(u8::from(p[1] < 0.1)), 2.0 * normal_cdf(0.1) - 1.0),
+            (
+                "P(c < 0.1)",
+                |p| f64::from(u8::from(p[1] < 0.1)),
+                2.0 * normal_cdf(0.1) - 1.0,
+            ),
         ],
         mean: vec![mean, mean],
         covariance: vec![variance + 0.09, variance, variance, variance],
@@ -174,7 +182,11 @@ fn plan(steps: Steps, draws: usize) -> Plan {
         width: 4,
         threads: 2,
         // A precision that cannot be met: exactly `draws` draws are kept.
-        goal: Goal { precision: 1e-9, interval: 0.95, most_draws: draws },
+        goal: Goal {
+            precision: 1e-9,
+            interval: 0.95,
+            most_draws: draws,
+        },
     }
 }
 
@@ -182,10 +194,17 @@ fn plan(steps: Steps, draws: usize) -> Plan {
 fn both_kinds_of_steps_keep_to_known_laws() {
     for law in laws() {
         for (steps, draws) in [(Steps::Mixed, 100_000), (Steps::Walk, 200_000)] {
-            let laplace = Laplace { mean: law.mean.clone(), covariance: law.covariance.clone() };
+            let laplace = Laplace {
+                mean: law.mean.clone(),
+                covariance: law.covariance.clone(),
+            };
             let sampled = sample(&law, &laplace, &plan(steps, draws), &Unwatched).unwrap();
             let (z, name) = worst(&law, &sampled.values, CHAINS);
-            assert!(z < LIMIT, "{} by {steps:?} steps: {name} is {z:.1} errors off", law.name);
+            assert!(
+                z < LIMIT,
+                "{} by {steps:?} steps: {name} is {z:.1} errors off",
+                law.name
+            );
         }
     }
 }
@@ -197,7 +216,10 @@ fn a_wrong_laplace_approximation_costs_draws_but_not_the_law() {
             *mean += 0.5 * law.covariance[i * law.dimension + i].sqrt();
         }
         law.covariance.iter_mut().for_each(|v| *v *= 0.4);
-        let laplace = Laplace { mean: law.mean.clone(), covariance: law.covariance.clone() };
+        let laplace = Laplace {
+            mean: law.mean.clone(),
+            covariance: law.covariance.clone(),
+        };
         let sampled = sample(&law, &laplace, &plan(Steps::Mixed, 100_000), &Unwatched).unwrap();
         let (z, name) = worst(&law, &sampled.values, CHAINS);
         assert!(z < LIMIT, "{}: {name} is {z:.1} errors off", law.name);
@@ -225,7 +247,15 @@ fn faulty_draws(law: &Known, planted: Planted, draws: usize) -> Vec<Vec<f64>> {
     let walk = Cholesky::factor(&law.covariance, d).unwrap();
     let shape = Shape::of_moments(&law.mean, &law.covariance, law.scatter);
     let reference = Reference::new(&shape, Tails::Normal, 1.0).unwrap();
-    let image = Reference::new(&Shape { scatter: None, ..shape.clone() }, Tails::Normal, 1.0).unwrap();
+    let image = Reference::new(
+        &Shape {
+            scatter: None,
+            ..shape.clone()
+        },
+        Tails::Normal,
+        1.0,
+    )
+    .unwrap();
     let main_part = |point: &[f64]| -0.5 * reference.distances(point)[0].unwrap();
     let log_q = |point: &[f64]| match planted {
         Planted::NoReferenceInTheRatio => 0.0,
@@ -259,7 +289,11 @@ fn faulty_draws(law: &Known, planted: Planted, draws: usize) -> Vec<Vec<f64>> {
                 here.copy_from_slice(&proposed);
             }
             for (place, values) in values.iter_mut().enumerate() {
-                values.push(if law.scatter == Some(place) { here[place].abs() } else { here[place] });
+                values.push(if law.scatter == Some(place) {
+                    here[place].abs()
+                } else {
+                    here[place]
+                });
             }
         }
     }

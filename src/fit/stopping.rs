@@ -59,7 +59,11 @@ impl Goal {
     pub fn judge(&self, values: &[Vec<f64>], chains: usize, threads: usize) -> (Vec<Assessment>, Verdict) {
         let assessments = assess_all(values, chains, self.interval, threads);
         let worth = assessments.iter().map(|a| self.worth(a)).fold(0.0, f64::max);
-        let verdict = if worth <= 1.0 { Verdict::Met } else { Verdict::More { worth } };
+        let verdict = if worth <= 1.0 {
+            Verdict::Met
+        } else {
+            Verdict::More { worth }
+        };
         (assessments, verdict)
     }
 
@@ -98,9 +102,16 @@ fn assess_all(values: &[Vec<f64>], chains: usize, interval: f64, threads: usize)
         let parts: Vec<_> = values
             .chunks(share)
             .map(|part| {
-                scope.spawn(move || part.iter().map(|values| assess(values, chains, interval)).collect::<Vec<_>>())
+                scope.spawn(move || {
+                    part.iter()
+                        .map(|values| assess(values, chains, interval))
+                        .collect::<Vec<_>>()
+                })
             })
             .collect();
-        parts.into_iter().flat_map(|part| part.join().unwrap_or_default()).collect()
+        parts
+            .into_iter()
+            .flat_map(|part| part.join().unwrap_or_default())
+            .collect()
     })
 }

@@ -1,9 +1,9 @@
 //! Takes all that a fit found; gives the run folder, terminal text, JSON, CSV and Parquet.
 
 pub mod compare;
+pub mod diagnostic;
 mod error;
 pub mod files;
-pub mod diagnostic;
 pub mod findings;
 pub mod json;
 pub mod manifest;

@@ -81,9 +81,13 @@ pub(super) fn check_counts_column(
     let Some(counts) = incidents.map(|incidents| &incidents.column.value) else {
         return;
     };
-    let exposure = exposure.and_then(Option::as_ref).map(|exposure| ("`column` in [exposure]", &exposure.column));
+    let exposure = exposure
+        .and_then(Option::as_ref)
+        .map(|exposure| ("`column` in [exposure]", &exposure.column));
     let unit = data.map(|data| ("`unit` in [data]", &data.unit));
-    let stands_for = data.and_then(|data| data.stands_for.as_ref()).map(|column| ("`stands_for` in [data]", column));
+    let stands_for = data
+        .and_then(|data| data.stands_for.as_ref())
+        .map(|column| ("`stands_for` in [data]", column));
     let columns = covariates.iter().filter_map(|covariate| covariate.column.as_ref());
     let covariates = columns.map(|column| ("`column` in [[covariate]]", column));
     for (key, column) in exposure.into_iter().chain(unit).chain(stands_for).chain(covariates) {
@@ -104,7 +108,9 @@ pub(super) fn check_answer(
     joints: &[JointDraft],
     faults: &mut Faults,
 ) {
-    let readable = covariates.iter().all(|covariate| covariate.column.is_some() && covariate.form.is_some());
+    let readable = covariates
+        .iter()
+        .all(|covariate| covariate.column.is_some() && covariate.form.is_some());
     if !readable || joints.iter().any(|joint| joint.of.is_none()) {
         // The term that is meant may be one that could not be read.
         return;
@@ -161,17 +167,26 @@ enum Part {
 }
 
 fn part(covariate: &CovariateDraft, name: &str) -> Part {
-    let Some(column) = &covariate.column else { return Part::Other };
+    let Some(column) = &covariate.column else {
+        return Part::Other;
+    };
     if covariate.form != Some("category") {
         return if name == column.value { Part::Term } else { Part::Other };
     }
-    let Some(level) = name.strip_prefix(column.value.as_str()).and_then(|rest| rest.strip_prefix('=')) else {
+    let Some(level) = name
+        .strip_prefix(column.value.as_str())
+        .and_then(|rest| rest.strip_prefix('='))
+    else {
         return Part::Other;
     };
     if level.is_empty() {
         return Part::Other;
     }
-    if covariate.reference.as_ref().is_some_and(|reference| reference.value == level) {
+    if covariate
+        .reference
+        .as_ref()
+        .is_some_and(|reference| reference.value == level)
+    {
         return Part::No(AnswerFault::IsReference {
             level: level.to_string(),
         });
@@ -195,5 +210,7 @@ fn pattern(covariate: &CovariateDraft) -> String {
 }
 
 fn of_column<'c>(covariates: &'c [CovariateDraft], column: &str) -> Option<&'c CovariateDraft> {
-    covariates.iter().find(|covariate| covariate.column.as_ref().is_some_and(|known| known.value == column))
+    covariates
+        .iter()
+        .find(|covariate| covariate.column.as_ref().is_some_and(|known| known.value == column))
 }

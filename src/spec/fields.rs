@@ -134,7 +134,11 @@ impl<'a> Fields<'a> {
     /// A list of texts.
     pub fn texts(&self, name: &str, faults: &mut Faults) -> Option<Vec<At<String>>> {
         let (info, value) = self.value(name, faults)?;
-        let at_least = if let Kind::Texts { at_least } = info.kind { at_least } else { 0 };
+        let at_least = if let Kind::Texts { at_least } = info.kind {
+            at_least
+        } else {
+            0
+        };
         self.texts_of(&self.title(name), &info.kind.in_words(), at_least, value, faults)
     }
 
@@ -186,7 +190,11 @@ impl<'a> Fields<'a> {
                 _ => None,
             };
         };
-        let bounds = if let Kind::Number(bounds) = info.kind { bounds } else { Bounds::POSITIVE };
+        let bounds = if let Kind::Number(bounds) = info.kind {
+            bounds
+        } else {
+            Bounds::POSITIVE
+        };
         self.number_of(&self.title(name), &info.kind.in_words(), bounds, value, faults)
     }
 
@@ -201,7 +209,9 @@ impl<'a> Fields<'a> {
         let DeValue::String(text) = value.get_ref() else {
             return self.wrong_type(&self.title(name), &info.kind.in_words(), value, faults);
         };
-        let Kind::Choice(choices, not_yet) = info.kind else { return None };
+        let Kind::Choice(choices, not_yet) = info.kind else {
+            return None;
+        };
         if let Some(choice) = choices.iter().find(|choice| choice.value == text.as_ref()) {
             return Some(choice.value);
         }
@@ -256,7 +266,10 @@ impl<'a> Fields<'a> {
         array: &DeArray<'_>,
         faults: &mut Faults,
     ) -> Option<Result<[f64; 2], RangeFault>> {
-        let [first, second] = array.get(0).zip(array.get(1)).map_or([None; 2], |(a, b)| [Some(a), Some(b)]);
+        let [first, second] = array
+            .get(0)
+            .zip(array.get(1))
+            .map_or([None; 2], |(a, b)| [Some(a), Some(b)]);
         let (Some(first), Some(second), 2) = (first, second, array.len()) else {
             return Some(Err(RangeFault::NotTwo { ends: array.len() }));
         };
@@ -332,8 +345,10 @@ impl<'a> Fields<'a> {
             });
             return None;
         }
-        let texts: Vec<Option<At<String>>> =
-            array.iter().map(|item| self.text_of(key, wanted, item, faults)).collect();
+        let texts: Vec<Option<At<String>>> = array
+            .iter()
+            .map(|item| self.text_of(key, wanted, item, faults))
+            .collect();
         texts.into_iter().collect()
     }
 

@@ -96,19 +96,40 @@ fn read_root(source: &Source, root: &DeTable<'_>, faults: &mut Faults) -> Option
         nothing: &DeTable::new(),
         text: &source.text,
     };
-    let study = tables.one("study", faults).and_then(|fields| read_study(&fields, faults));
+    let study = tables
+        .one("study", faults)
+        .and_then(|fields| read_study(&fields, faults));
     let data = tables.one("data", faults).and_then(|fields| read_data(&fields, faults));
-    let incidents = tables.one("incidents", faults).and_then(|fields| read_incidents(&fields, faults));
-    let exposure = tables.one("exposure", faults).map(|fields| read_exposure(&fields, faults));
-    let family = tables.one("family", faults).map(|fields| read_family(&fields, faults)).unwrap_or_default();
-    let baseline = tables.one("baseline", faults).and_then(|fields| read_baseline(&fields, family.kind, faults));
+    let incidents = tables
+        .one("incidents", faults)
+        .and_then(|fields| read_incidents(&fields, faults));
+    let exposure = tables
+        .one("exposure", faults)
+        .map(|fields| read_exposure(&fields, faults));
+    let family = tables
+        .one("family", faults)
+        .map(|fields| read_family(&fields, faults))
+        .unwrap_or_default();
+    let baseline = tables
+        .one("baseline", faults)
+        .and_then(|fields| read_baseline(&fields, family.kind, faults));
     let covariates = tables.many("covariate", faults, |fields, faults| read_covariate(fields, faults));
     let joints = tables.many("joint", faults, |fields, faults| read_joint(fields, faults));
-    let sampling = tables.or_defaults("sampling", faults).and_then(|fields| read_sampling(&fields, faults));
-    let report = tables.or_defaults("report", faults).and_then(|fields| read_report(&fields, faults));
+    let sampling = tables
+        .or_defaults("sampling", faults)
+        .and_then(|fields| read_sampling(&fields, faults));
+    let report = tables
+        .or_defaults("report", faults)
+        .and_then(|fields| read_report(&fields, faults));
 
     check_terms(&covariates, &joints, faults);
-    check_counts_column(incidents.as_ref(), exposure.as_ref(), data.as_ref(), &covariates, faults);
+    check_counts_column(
+        incidents.as_ref(),
+        exposure.as_ref(),
+        data.as_ref(),
+        &covariates,
+        faults,
+    );
     if let Some(study) = &study {
         check_answer(&study.answer, &covariates, &joints, faults);
     }
@@ -123,7 +144,10 @@ fn read_root(source: &Source, root: &DeTable<'_>, faults: &mut Faults) -> Option
         },
         family: family.family?,
         baseline: baseline?,
-        covariates: covariates.into_iter().map(CovariateDraft::finish).collect::<Option<_>>()?,
+        covariates: covariates
+            .into_iter()
+            .map(CovariateDraft::finish)
+            .collect::<Option<_>>()?,
         joints: joints.into_iter().map(JointDraft::finish).collect::<Option<_>>()?,
         sampling: sampling?,
         report: report?,

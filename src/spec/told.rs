@@ -144,7 +144,9 @@ impl SpecFault {
                 match looks_like {
                     Encoding::Utf16 => "the spec is not UTF-8: it looks like UTF-16".into(),
                     Encoding::Other => {
-                        format!("the spec is not UTF-8: the first bad byte is in line {line} (byte {offset} of the file)")
+                        format!(
+                            "the spec is not UTF-8: the first bad byte is in line {line} (byte {offset} of the file)"
+                        )
                     }
                 },
                 String::new(),
