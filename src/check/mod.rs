@@ -1,1 +1,9 @@
-//! Takes draws and design; gives the predictive check of each unit.
+//! Takes draws and design; gives the predictive check of each unit, and what the priors imply.
+
+mod prior;
+mod units;
+
+pub use prior::{
+    MOST_ABOVE_CHANCES, PriorLook, PriorRange, PriorRatio, PriorScatter, PriorState, SIMULATIONS, WIDEST_RATE, prior,
+};
+pub use units::{UnitCheck, UnitState, UnitsCheck, units};

@@ -74,8 +74,7 @@ fn ln_parts(f: f64, k: f64) -> f64 {
 #[inline(always)]
 pub fn ln_1p(v: f64) -> f64 {
     let u = 1.0 + v;
-    // What the addition lost. It matters only while u keeps the exponent of 1; above that it is
-    // below half a unit in the last place of the result.
+    // What the addition lost: up to half a unit in the last place of u, so a whole unit of a small v.
     let lost = v - (u - 1.0);
     let shifted = u.to_bits().wrapping_sub(ROOT_HALF_BITS);
     let k = shifted >> 52;
@@ -83,7 +82,10 @@ pub fn ln_1p(v: f64) -> f64 {
     // k as a float without an integer conversion, which SSE2 lacks for 64 bits: put it into the
     // low bits of 2^52 and take 2^52 off.
     let k_float = f64::from_bits(k | 0x4330_0000_0000_0000) - 4_503_599_627_370_496.0;
-    let f = (m - 1.0) + if k == 0 { lost } else { 0.0 };
+    // u = m 2^k, so what was lost belongs to m as lost 2^-k. Half of 2^(1-k), because k is
+    // 1024 for v above 1.27e308, and 2^-1024 has no normal float.
+    let scale = f64::from_bits(1024_u64.wrapping_sub(k) << 52);
+    let f = (m - 1.0) + 0.5 * (lost * scale);
     ln_parts(f, k_float)
 }
 

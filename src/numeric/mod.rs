@@ -1,5 +1,27 @@
 //! Takes floats; gives special functions, random streams, fixed-order sums and kernels.
 
+mod beta;
+pub mod cholesky;
 mod elementary;
+mod fourier;
+mod gamma;
+mod legendre;
+mod negative_binomial;
+mod normal;
+mod poisson;
+mod random;
+mod rising;
+mod sum;
+mod uniform_expansion;
 
+pub use beta::{beta_quantile, incomplete_beta};
 pub use elementary::{exp, ln, ln_1p};
+pub use fourier::Fourier;
+pub use legendre::legendre;
+pub use gamma::{ln_factorial, ln_gamma};
+pub use negative_binomial::{nb2_cdf, nb2_ln_pmf, nb2_pmf, nb2_sf};
+pub use normal::{normal_cdf, normal_quantile};
+pub use poisson::{poisson_cdf, poisson_ln_pmf, poisson_pmf, poisson_sf};
+pub use random::{Purpose, Stream};
+pub use rising::{RisingSum, ln_rising};
+pub use sum::{dot, mean, sum};

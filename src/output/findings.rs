@@ -1,8 +1,15 @@
 //! Everything that a fit concluded, in one value: every writer reads it, none computes a statistic.
 
+use crate::answer::{Answer, BaselineRate, RateRatio};
 use crate::design::Audit;
 use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
+
+/// Version of the layout of `findings.json`.
+pub const LAYOUT: u32 = 1;
+
+/// What `findings.json` says about who may read it.
+pub const AUDIENCE: &str = "not for publication";
 
 /// All findings of one fit: the content of `findings.json`.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
@@ -19,11 +26,11 @@ pub struct Findings {
     /// What happened to the rows.
     pub data: Audit,
     /// The answer, told first.
-    pub answer: AnswerFinding,
+    pub answer: Answer,
     /// One entry for each parameter, `baseline` first.
     pub coefficients: Vec<CoefficientFinding>,
     /// One entry for each term but the baseline.
-    pub rate_ratios: Vec<RateRatioFinding>,
+    pub rate_ratios: Vec<RateRatio>,
     /// The rate at the baseline, per `study.per`.
     pub baseline_rate: BaselineRate,
     /// Predictive check of each unit.
@@ -53,6 +60,7 @@ pub struct StudyFacts {
     /// Column of the unit.
     pub unit_column: String,
     /// Column of the exposure, where there is one.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
     pub exposure_column: Option<String>,
     /// Rates are told per this many units of exposure.
     pub per: f64,
@@ -64,24 +72,6 @@ pub struct StudyFacts {
     pub hide_counts_below: u64,
     /// Whether a count of 0 is shown.
     pub show_zero: bool,
-}
-
-/// The answer to the study's question.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
-#[serde(deny_unknown_fields)]
-pub struct AnswerFinding {
-    /// In words, with its uncertainty.
-    pub sentence: String,
-    /// The term.
-    pub term: String,
-    /// Rate ratio, or the rate per `study.per` where the answer is the baseline: posterior median.
-    pub estimate: f64,
-    /// Lower end of its interval.
-    pub lower: f64,
-    /// Upper end of its interval.
-    pub upper: f64,
-    /// Posterior probability that the rate ratio is below 1; absent for the baseline.
-    pub prob_below_one: Option<f64>,
 }
 
 /// One parameter: log scale for the baseline (per unit of raw exposure) and the terms, `scatter` as itself.
@@ -111,41 +101,12 @@ pub struct CoefficientFinding {
     /// Tail effective draws.
     pub effective_tail_draws: f64,
     /// Rank-normalised split R-hat; absent where it cannot be computed.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
     pub split_r_hat: Option<f64>,
     /// Mean under the Laplace approximation.
     pub laplace_mean: f64,
     /// Standard deviation under the Laplace approximation.
     pub laplace_sd: f64,
-}
-
-/// One rate ratio.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
-#[serde(deny_unknown_fields)]
-pub struct RateRatioFinding {
-    /// The term.
-    pub term: String,
-    /// The change that the ratio stands for, in words.
-    pub change: String,
-    /// Posterior median of exp(coefficient).
-    pub rate_ratio: f64,
-    /// Lower end of the interval.
-    pub lower: f64,
-    /// Upper end of the interval.
-    pub upper: f64,
-    /// Posterior probability that the ratio is below 1.
-    pub prob_below_one: f64,
-}
-
-/// The rate where numbers are at their centre and categories at their reference.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
-#[serde(deny_unknown_fields)]
-pub struct BaselineRate {
-    /// Posterior median, per `study.per` units of exposure.
-    pub rate: f64,
-    /// Lower end of the interval.
-    pub lower: f64,
-    /// Upper end of the interval.
-    pub upper: f64,
 }
 
 /// The predictive check of every unit.
@@ -222,6 +183,7 @@ pub struct SamplingFinding {
     /// The worst simulation error of an interval end, in posterior standard deviations.
     pub worst_error_of_interval_end: f64,
     /// The largest R-hat; absent where none can be computed.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
     pub largest_r_hat: Option<f64>,
     /// The fewest bulk effective draws.
     pub fewest_effective_draws: f64,
@@ -252,6 +214,7 @@ pub struct ModeFinding {
     /// Log posterior density at the mode, all constants kept.
     pub log_density: f64,
     /// Under the negative binomial, whether the scatter's mode is `inside` or `at-zero`.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
     pub scatter_mode: Option<String>,
     /// The furthest that a posterior mean moved from Laplace's, in posterior standard deviations.
     pub furthest_move: f64,

@@ -46,14 +46,7 @@ impl SpecError {
         for (fault, one) in faults.iter().zip(&told) {
             places.extend(self.places(fault, &one.label));
         }
-        let mut diagnostic = Diagnostic::new(code, message, places, helps.join(" "));
-        // Some faults point at two places; what is counted is the faults.
-        if faults.len() > diagnostic.places.len() {
-            diagnostic.places_in_all = faults.len();
-        } else {
-            diagnostic.places_in_all = diagnostic.places.len();
-        }
-        diagnostic
+        Diagnostic::new(code, message, places, helps.join(" "))
     }
 
     fn places(&self, fault: &SpecFault, label: &str) -> Vec<Place> {

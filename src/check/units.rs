@@ -1,0 +1,361 @@
+//! The predictive check of each unit: is its count one that the fitted model would bring?
+//!
+//! The rows of a unit are summed. Given a posterior draw, that sum is Poisson about a mean M: the
+//! sum of the rows' means under Poisson, with a gamma factor for each row under the negative
+//! binomial (a gamma mixture of Poissons). So no count is ever simulated: probabilities are averages
+//! over draws of exact Poisson ones (Rao & Blackwell), and only the gamma factors are random.
+//!
+//! The data that are judged here also took part in the fit, so the tails are conservative: a truly
+//! odd unit pulls the model towards itself.
+
+use crate::design::Design;
+use crate::fit::{Draws, quantile_of_sorted};
+use crate::numeric::{Purpose, Stream, exp, mean, poisson_cdf, poisson_pmf, sum};
+use crate::spec::Family;
+use schemars::JsonSchema;
+use serde::{Deserialize, Serialize};
+use std::num::NonZero;
+
+/// Row-by-draw evaluations that the check may cost; between 400 and 2,000 draws are used.
+const ROW_DRAWS: usize = 4_000_000;
+
+/// Above this shape a gamma factor is its mean to within 3e-8, far below what a count can show.
+const SHAPE_OF_A_CONSTANT: f64 = 1e15;
+
+/// Means are held below this, so that a wild draw (a rate of exp(700)) leaves finite probabilities.
+const LARGEST_MEAN: f64 = 1e300;
+
+/// The predictive check of every unit.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
+#[serde(deny_unknown_fields)]
+pub struct UnitsCheck {
+    /// One entry for each unit, in order of first appearance.
+    pub units: Vec<UnitCheck>,
+    /// Units whose count lies outside its predictive interval.
+    pub outside: usize,
+    /// How many would, by chance, if the model were right.
+    pub outside_by_chance: f64,
+    /// Posterior draws that the check used.
+    pub draws_used: usize,
+}
+
+/// The predictive check of one unit.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
+#[serde(deny_unknown_fields)]
+pub struct UnitCheck {
+    /// The unit.
+    pub unit: String,
+    /// Its rows (each counted as often as it stands for others).
+    pub rows: f64,
+    /// Its exposure.
+    pub exposure: f64,
+    /// Its count.
+    pub observed: f64,
+    /// Posterior mean of its expected count.
+    pub expected: f64,
+    /// Lower end of the predictive interval.
+    pub lower: f64,
+    /// Upper end of the predictive interval.
+    pub upper: f64,
+    /// Predictive probability of a smaller count plus half that of the same count (mid-p):
+    /// near 0 the count is unusually low, near 1 unusually high.
+    pub tail_probability: f64,
+    /// Where the count lies.
+    pub state: UnitState,
+}
+
+/// Where a unit's count lies in its predictive interval.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
+#[serde(rename_all = "kebab-case")]
+pub enum UnitState {
+    /// Within it, ends included.
+    Inside,
+    /// Below its lower end.
+    Below,
+    /// Above its upper end.
+    Above,
+}
+
+/// Checks every unit of the design against the posterior `draws`, at the level `interval`, say 0.95.
+///
+/// `seed` is the study's; each unit has its own random stream, so the result does not depend on how
+/// many threads share the work.
+pub fn units(design: &Design, family: &Family, draws: &Draws, interval: f64, seed: u64) -> UnitsCheck {
+    let threads = std::thread::available_parallelism().map_or(1, NonZero::get);
+    units_on(threads, design, family, draws, interval, seed)
+}
+
+fn units_on(threads: usize, design: &Design, family: &Family, draws: &Draws, interval: f64, seed: u64) -> UnitsCheck {
+    let at_most = (ROW_DRAWS / design.counts.len().max(1)).clamp(400, 2_000);
+    let used = UsedDraws::new(draws, family, design.terms.len(), at_most);
+    let mut rows_of = vec![Vec::new(); design.units.len()];
+    for (row, unit) in design.unit_of.iter().enumerate() {
+        rows_of[*unit].push(row);
+    }
+
+    // Every thread takes each n-th unit: neighbours in the file are often alike in size.
+    let threads = threads.clamp(1, design.units.len().max(1));
+    let check_from = |first: usize| -> Vec<(usize, UnitCheck, f64)> {
+        let mine = (first..design.units.len()).step_by(threads);
+        mine.map(|unit| {
+            let stream = Stream::new(seed, Purpose::UnitCheck, unit as u64);
+            let (check, outside) = check_unit(design, unit, &rows_of[unit], &used, interval, stream);
+            (unit, check, outside)
+        })
+        .collect()
+    };
+    let mut found: Vec<(usize, UnitCheck, f64)> = std::thread::scope(|scope| {
+        let check_from = &check_from;
+        let others: Vec<_> = (1..threads)
+            .map(|first| scope.spawn(move || check_from(first)))
+            .collect();
+        let mut found = check_from(0);
+        for other in others {
+            match other.join() {
+                Ok(part) => found.extend(part),
+                Err(panic) => std::panic::resume_unwind(panic),
+            }
+        }
+        found
+    });
+    found.sort_unstable_by_key(|(unit, _, _)| *unit);
+
+    let chances: Vec<f64> = found.iter().map(|(_, _, outside)| *outside).collect();
+    let units: Vec<UnitCheck> = found.into_iter().map(|(_, check, _)| check).collect();
+    UnitsCheck {
+        outside: units.iter().filter(|unit| unit.state != UnitState::Inside).count(),
+        outside_by_chance: sum(&chances),
+        draws_used: used.count,
+        units,
+    }
+}
+
+/// The draws that the check uses, draw by draw: baseline, then the terms.
+struct UsedDraws {
+    count: usize,
+    coefficients: Vec<f64>,
+    width: usize,
+    /// The scatter of each draw; `None` under Poisson.
+    scatter: Option<Vec<f64>>,
+}
+
+impl UsedDraws {
+    fn new(draws: &Draws, family: &Family, terms: usize, at_most: usize) -> UsedDraws {
+        let places = draws.evenly_spaced(at_most);
+        let width = terms + 1;
+        let mut coefficients = Vec::with_capacity(places.len() * width);
+        for place in &places {
+            coefficients.extend(draws.values[..width].iter().map(|values| values[*place]));
+        }
+        let scatter = match family {
+            Family::Poisson => None,
+            Family::NegativeBinomial { .. } => Some(places.iter().map(|p| draws.values[width][*p].abs()).collect()),
+        };
+        UsedDraws {
+            count: places.len(),
+            coefficients,
+            width,
+            scatter,
+        }
+    }
+}
+
+/// The check of one unit, and the chance that its count would fall outside its interval.
+fn check_unit(
+    design: &Design,
+    unit: usize,
+    rows: &[usize],
+    used: &UsedDraws,
+    interval: f64,
+    stream: Stream,
+) -> (UnitCheck, f64) {
+    let total = |of: &dyn Fn(usize) -> f64| sum(&rows.iter().map(|row| of(*row)).collect::<Vec<f64>>());
+    let observed = total(&|row| design.counts[row]);
+    let (expected, means) = means_of_unit(design, rows, used, stream);
+    let predictive = Predictive::new(means);
+    let lower = predictive.smallest_reaching(0.5 * (1.0 - interval));
+    let upper = predictive.smallest_reaching(0.5 * (1.0 + interval));
+    let state = if observed < lower.count {
+        UnitState::Below
+    } else if observed > upper.count {
+        UnitState::Above
+    } else {
+        UnitState::Inside
+    };
+    let check = UnitCheck {
+        unit: design.units[unit].clone(),
+        rows: total(&|row| design.stands_for[row]),
+        exposure: total(&|row| design.exposure[row]),
+        observed,
+        expected,
+        lower: lower.count,
+        upper: upper.count,
+        tail_probability: predictive.at_most(observed - 1.0) + 0.5 * predictive.exactly(observed),
+        state,
+    };
+    (check, lower.below + (1.0 - upper.reached))
+}
+
+/// The unit's expected count, and for each draw the Poisson mean of its count.
+fn means_of_unit(design: &Design, rows: &[usize], used: &UsedDraws, mut stream: Stream) -> (f64, Vec<f64>) {
+    let mut coded = Vec::with_capacity(rows.len() * design.columns.len());
+    for row in rows {
+        coded.extend(design.columns.iter().map(|column| column[*row]));
+    }
+    let terms = design.columns.len();
+    let mut expected = Vec::with_capacity(used.count);
+    let mut means = Vec::with_capacity(used.count);
+    for draw in 0..used.count {
+        let coefficients = &used.coefficients[draw * used.width..(draw + 1) * used.width];
+        let (mut plain, mut mixed) = (0.0, 0.0);
+        for (place, row) in rows.iter().enumerate() {
+            let mut eta = design.log_exposure[*row] + coefficients[0];
+            for (x, b) in coded[place * terms..(place + 1) * terms].iter().zip(&coefficients[1..]) {
+                eta += x * b;
+            }
+            let mu = exp(eta);
+            let stands_for = design.stands_for[*row];
+            plain += mu * stands_for;
+            if let Some(scatter) = &used.scatter {
+                mixed += mu * factor(scatter[draw], stands_for, &mut stream);
+            }
+        }
+        expected.push(plain.min(LARGEST_MEAN));
+        means.push(if used.scatter.is_some() { mixed } else { plain }.min(LARGEST_MEAN));
+    }
+    // Divided before summing: the sum of many means of 1e300 would be infinite.
+    let share = 1.0 / used.count.max(1) as f64;
+    let parts: Vec<f64> = expected.iter().map(|mean| mean * share).collect();
+    (sum(&parts), means)
+}
+
+/// The sum of `stands_for` independent gamma factors of mean 1 and variance c^2: one gamma of shape stands_for / c^2.
+fn factor(scatter: f64, stands_for: f64, stream: &mut Stream) -> f64 {
+    let variance = scatter * scatter;
+    if stands_for >= SHAPE_OF_A_CONSTANT * variance {
+        return stands_for;
+    }
+    variance * stream.gamma(stands_for / variance)
+}
+
+/// A count's predictive distribution: the average of Poissons about these means.
+struct Predictive {
+    means: Vec<f64>,
+    /// A few means that stand for groups of neighbouring ones: a cheap first guess at a quantile.
+    coarse: Vec<f64>,
+    sd: f64,
+}
+
+/// A quantile of a count.
+#[derive(Debug, Clone, Copy, PartialEq)]
+struct Reached {
+    /// The smallest count at which the distribution function reaches the probability asked for.
+    count: f64,
+    /// P(count or fewer).
+    reached: f64,
+    /// P(fewer).
+    below: f64,
+}
+
+impl Predictive {
+    fn new(means: Vec<f64>) -> Predictive {
+        let mut sorted = means.clone();
+        sorted.sort_unstable_by(f64::total_cmp);
+        let groups = 48;
+        let coarse = (0..groups).map(|g| quantile_of_sorted(&sorted, (f64::from(g) + 0.5) / f64::from(groups)));
+        let coarse: Vec<f64> = coarse.collect();
+        // Of the coarse means, so that one wild draw does not set the step of the search.
+        let centre = mean(&coarse);
+        let squares: Vec<f64> = coarse.iter().map(|m| (m - centre) * (m - centre)).collect();
+        let sd = (centre + mean(&squares)).sqrt();
+        Predictive { means, coarse, sd }
+    }
+
+    fn at_most(&self, count: f64) -> f64 {
+        if count < 0.0 {
+            0.0
+        } else {
+            average(&self.means, |mean| poisson_cdf(count, mean))
+        }
+    }
+
+    fn exactly(&self, count: f64) -> f64 {
+        average(&self.means, |mean| poisson_pmf(count, mean))
+    }
+
+    /// The smallest count whose distribution function is at least `p`, exact over the draws.
+    fn smallest_reaching(&self, p: f64) -> Reached {
+        let coarse = |count: f64| {
+            if count < 0.0 {
+                0.0
+            } else {
+                average(&self.coarse, |mean| poisson_cdf(count, mean))
+            }
+        };
+        let most = self.coarse.last().copied().unwrap_or(0.0);
+        let rough = search(p, most.floor(), (0.25 * self.sd).floor(), coarse);
+        search(p, rough.count, (0.02 * self.sd).floor(), |count| self.at_most(count))
+    }
+}
+
+fn average(means: &[f64], of: impl Fn(f64) -> f64) -> f64 {
+    let values: Vec<f64> = means.iter().map(|mean| of(*mean)).collect();
+    mean(&values)
+}
+
+/// The smallest whole number at which the distribution function `cdf` reaches `p`, searched outwards
+/// from `guess` in doubling steps and then between by interpolation, held to halve the gap in time.
+fn search(p: f64, guess: f64, first_step: f64, cdf: impl Fn(f64) -> f64) -> Reached {
+    let mut step = first_step.max(1.0);
+    let (mut low, mut below, mut high, mut reached);
+    let at_guess = cdf(guess);
+    if at_guess >= p {
+        (high, reached) = (guess, at_guess);
+        loop {
+            low = (high - step).max(-1.0);
+            below = cdf(low);
+            // Nothing lies below 0, whatever p is.
+            if below < p || low < 0.0 {
+                break;
+            }
+            (high, reached) = (low, below);
+            step *= 2.0;
+        }
+    } else {
+        (low, below) = (guess, at_guess);
+        loop {
+            high = low + step;
+            reached = cdf(high);
+            if reached >= p || high > 2.0 * LARGEST_MEAN {
+                break;
+            }
+            (low, below) = (high, reached);
+            step *= 2.0;
+        }
+    }
+    let mut interpolate = true;
+    loop {
+        let gap = high - low;
+        let share = if interpolate && reached > below {
+            (p - below) / (reached - below)
+        } else {
+            0.5
+        };
+        let between = (low + share * gap).floor().min(high - 1.0).max(low + 1.0);
+        // Neighbours; or, beyond 2^53, no whole number between them.
+        if gap <= 1.0 || between <= low || between >= high {
+            return Reached {
+                count: high,
+                reached,
+                below,
+            };
+        }
+        let value = cdf(between);
+        if value >= p {
+            (high, reached) = (between, value);
+        } else {
+            (low, below) = (between, value);
+        }
+        interpolate = high - low < 0.5 * gap;
+    }
+}

@@ -1,0 +1,183 @@
+//! How many independent draws chains are worth.
+
+use crate::numeric::{Fourier, dot, ln, mean, sum};
+
+/// Lags whose autocovariances are summed directly; what needs more goes through a transform.
+///
+/// A chain that mixes is judged within a few lags. One that is stuck needs as many lags as it has
+/// draws, which at a million draws would take minutes lag by lag.
+const DIRECT_LAGS: usize = 128;
+
+/// Chains of equal length, one after another.
+#[derive(Debug, Clone, Copy)]
+pub(super) struct Chains<'a> {
+    values: &'a [f64],
+    count: usize,
+}
+
+impl<'a> Chains<'a> {
+    /// `count` chains of equal length in `values`, at least one.
+    pub(super) fn new(values: &'a [f64], count: usize) -> Chains<'a> {
+        Chains {
+            values,
+            count: count.max(1),
+        }
+    }
+
+    /// Draws of one chain.
+    pub(super) fn length(&self) -> usize {
+        self.values.len() / self.count
+    }
+
+    fn iter(&self) -> impl Iterator<Item = &'a [f64]> {
+        self.values.chunks_exact(self.length().max(1))
+    }
+
+    /// Variances of the draws within chains (averaged, denominator n - 1) and of the chains' means.
+    fn variances(&self) -> (f64, f64) {
+        let n = self.length() as f64;
+        let means: Vec<f64> = self.iter().map(centre).collect();
+        let within: Vec<f64> = self
+            .iter()
+            .zip(&means)
+            .map(|(chain, m)| squares_about(chain, *m) / (n - 1.0))
+            .collect();
+        let between = squares_about(&means, centre(&means)) / (self.count as f64 - 1.0);
+        (mean(&within), if self.count > 1 { between } else { 0.0 })
+    }
+
+    /// R-hat of the chains as they stand: sqrt((B / W + n - 1) / n) with B = n times the variance of the means.
+    ///
+    /// Gelman et al. (2013), Bayesian Data Analysis, 11.4. `None` where no chain moves at all.
+    pub(super) fn r_hat(&self) -> Option<f64> {
+        let n = self.length() as f64;
+        let (within, between) = self.variances();
+        (within > 0.0).then(|| ((n * between / within + n - 1.0) / n).sqrt())
+    }
+
+    /// Effective draws for the mean of the chains: their number over 1 + 2 * sum of autocorrelations.
+    ///
+    /// Vehtari et al. (2021), section 3.2: the autocorrelations combine all chains, and the sum ends
+    /// by Geyer's (1992) initial monotone sequence. Held to at most log10(N) times the number of
+    /// draws N, as that paper does for antithetic chains. At least 4 draws a chain, else 1.
+    pub(super) fn effective(&self) -> f64 {
+        let draws = self.values.len() as f64;
+        if self.length() < 4 {
+            return 1.0;
+        }
+        let (within, between) = self.variances();
+        let n = self.length() as f64;
+        let total = within * (n - 1.0) / n + between;
+        if within <= 0.0 {
+            // No chain moves, so each is worth one draw; all at one place are worth one together.
+            return if between > 0.0 { self.count as f64 } else { 1.0 };
+        }
+        let mut covariances = Autocovariances::of(*self);
+        let time = autocorrelation_time(self.length(), |lag| 1.0 - (within - covariances.at(lag)) / total);
+        let least = std::f64::consts::LN_10 / ln(draws);
+        draws / time.max(least)
+    }
+}
+
+/// 1 + 2 * the sum of the autocorrelations `rho(lag)`, by Geyer's initial monotone sequence.
+///
+/// Pairs (rho(2 k) + rho(2 k + 1)) are taken while they are positive and held to never rise; of the
+/// pair that ends it only a positive first member still counts, once (Vehtari et al. 2021, section
+/// 3.2 and its code).
+fn autocorrelation_time(length: usize, mut rho: impl FnMut(usize) -> f64) -> f64 {
+    let mut even = 1.0;
+    let mut odd = rho(1);
+    let mut pair = even + odd;
+    let mut before = f64::INFINITY;
+    let mut sum = 0.0;
+    let mut lag = 1;
+    while lag + 3 < length && pair > 0.0 {
+        before = pair.min(before);
+        sum += before;
+        even = rho(lag + 1);
+        odd = rho(lag + 2);
+        pair = even + odd;
+        lag += 2;
+    }
+    -1.0 + 2.0 * sum + even.max(0.0)
+}
+
+/// Autocovariances at a lag, averaged over chains, each about its own mean and over its own length.
+struct Autocovariances<'a> {
+    chains: Chains<'a>,
+    centred: Vec<f64>,
+    transformed: Option<Vec<f64>>,
+}
+
+impl<'a> Autocovariances<'a> {
+    fn of(chains: Chains<'a>) -> Autocovariances<'a> {
+        let mut centred = Vec::with_capacity(chains.values.len());
+        for chain in chains.iter() {
+            let centre = centre(chain);
+            centred.extend(chain.iter().map(|value| value - centre));
+        }
+        Autocovariances {
+            chains,
+            centred,
+            transformed: None,
+        }
+    }
+
+    fn at(&mut self, lag: usize) -> f64 {
+        if lag <= DIRECT_LAGS {
+            let length = self.chains.length();
+            let products: Vec<f64> = self
+                .centred
+                .chunks_exact(length)
+                .map(|chain| dot(chain, &chain[lag.min(length)..]))
+                .collect();
+            return sum(&products) / (length * self.chains.count) as f64;
+        }
+        let (chains, centred) = (self.chains, &self.centred);
+        let transformed = self.transformed.get_or_insert_with(|| all_lags(chains, centred));
+        transformed.get(lag).copied().unwrap_or(0.0)
+    }
+}
+
+/// All lags at once: the transform of the summed power spectra, each chain padded to twice its length.
+fn all_lags(chains: Chains, centred: &[f64]) -> Vec<f64> {
+    let length = chains.length();
+    let fourier = Fourier::new(2 * length);
+    let mut power = vec![[0.0, 0.0]; fourier.length()];
+    let mut padded = vec![[0.0, 0.0]; fourier.length()];
+    // Two chains at a time, one as the real and one as the imaginary part: the real part of the
+    // pair's autocovariance is the sum of the two.
+    for two in centred.chunks(2 * length) {
+        let (first, second) = two.split_at(length);
+        padded.fill([0.0, 0.0]);
+        for (place, value) in padded.iter_mut().zip(first) {
+            place[0] = *value;
+        }
+        for (place, value) in padded.iter_mut().zip(second) {
+            place[1] = *value;
+        }
+        fourier.transform(&mut padded);
+        for (sum, [re, im]) in power.iter_mut().zip(&padded) {
+            sum[0] += re * re + im * im;
+        }
+    }
+    fourier.transform(&mut power);
+    let scale = (fourier.length() * length * chains.count) as f64;
+    power[..length].iter().map(|[re, _]| re / scale).collect()
+}
+
+/// The mean; of equal values exactly that value, so that what never moves has no spread.
+///
+/// (50 times 0.1 over 50 is not 0.1: chains stuck apart had an R-hat of 3e16 by that.)
+pub(super) fn centre(values: &[f64]) -> f64 {
+    match values.first() {
+        Some(first) if values.iter().all(|value| value == first) => *first,
+        _ => mean(values),
+    }
+}
+
+/// Sum of squared differences from `centre`.
+pub(super) fn squares_about(values: &[f64], centre: f64) -> f64 {
+    let squares: Vec<f64> = values.iter().map(|value| (value - centre) * (value - centre)).collect();
+    sum(&squares)
+}

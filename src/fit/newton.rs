@@ -1,0 +1,175 @@
+//! Damped Newton steps up a log density in its coefficients, the scatter held fixed.
+//!
+//! Both families are log-concave in the coefficients and so are the priors (the negative
+//! binomial's second derivative by the predictor is -mu (1 + a y)/(1 + a mu)^2 < 0), so there is
+//! one mode and the exact Hessian leads to it; damping keeps a far start from overshooting
+//! (Nocedal & Wright 2006, sections 3.1 and 3.4). The loop, its limit and its stop reasons are
+//! argmin's.
+
+use crate::model::{Derivatives, Model};
+use crate::numeric::cholesky::Cholesky;
+use argmin::core::{
+    Error, Executor, IterState, KV, Operator, Problem, Solver, State, TerminationReason, TerminationStatus,
+};
+
+/// Far more steps than a concave problem needs; a limit all the same, since every loop has one.
+const MOST_STEPS: u64 = 200;
+/// The squared length of the Newton step, in the metric of the Hessian (so in posterior standard
+/// deviations), at which one last full step is taken: convergence is quadratic, so that step ends
+/// at the limit of rounding.
+const LAST_STEP: f64 = 1e-12;
+
+/// Where the search ended.
+#[derive(Debug, Clone)]
+pub struct Climb {
+    /// Baseline and coefficients, without the scatter.
+    pub coefficients: Vec<f64>,
+    /// Derivatives there, in all parameters.
+    pub derivatives: Derivatives,
+    /// Factor of the negative Hessian in the coefficients.
+    pub factor: Cholesky,
+    /// Steps taken.
+    pub steps: u64,
+}
+
+/// Why there is no mode to report.
+#[derive(Debug, Clone, PartialEq)]
+pub enum ClimbFailed {
+    /// The density is 0 at the start.
+    BadStart,
+    /// The negative Hessian is not positive definite: this coefficient's pivot failed.
+    NotPositiveDefinite {
+        /// Place of the coefficient, 0 the baseline.
+        coefficient: usize,
+    },
+    /// The limit of steps was reached.
+    StepLimit,
+}
+
+/// Climbs to the mode of the coefficients with the scatter held at `scatter` (absent under the
+/// Poisson), from `start`.
+///
+/// # Errors
+/// [`ClimbFailed`] says why no mode was found.
+pub fn climb(model: &Model, scatter: Option<f64>, start: &[f64]) -> Result<Climb, ClimbFailed> {
+    let outcome = Executor::new(Slice { model, scatter }, Newton::default())
+        .configure(|state: Steps| state.param(start.to_vec()).max_iters(MOST_STEPS))
+        .timer(false)
+        .run();
+    // The operator never fails and the solver reports through its own fields.
+    let Ok(outcome) = outcome else { return Err(ClimbFailed::BadStart) };
+    let steps = outcome.state().get_iter();
+    let newton = outcome.solver;
+    match (newton.failure, newton.reached, newton.finished) {
+        (Some(failure), _, _) => Err(failure),
+        (None, Some((coefficients, derivatives)), true) => {
+            let factor = negative_hessian(&derivatives, coefficients.len())?;
+            Ok(Climb { coefficients, derivatives, factor, steps })
+        }
+        _ => Err(ClimbFailed::StepLimit),
+    }
+}
+
+/// Factor of the negative Hessian in the first `size` parameters.
+fn negative_hessian(derivatives: &Derivatives, size: usize) -> Result<Cholesky, ClimbFailed> {
+    let d = derivatives.gradient.len();
+    let mut matrix = vec![0.0; size * size];
+    for i in 0..size {
+        for j in 0..=i {
+            matrix[i * size + j] = -derivatives.hessian[i * d + j];
+        }
+    }
+    Cholesky::factor(&matrix, size).map_err(|fault| ClimbFailed::NotPositiveDefinite { coefficient: fault.row })
+}
+
+/// The log density on the slice of one scatter.
+struct Slice<'a> {
+    model: &'a Model,
+    scatter: Option<f64>,
+}
+
+impl Operator for Slice<'_> {
+    type Param = Vec<f64>;
+    type Output = Option<Derivatives>;
+
+    fn apply(&self, coefficients: &Vec<f64>) -> Result<Option<Derivatives>, Error> {
+        let mut point = coefficients.clone();
+        point.extend(self.scatter);
+        Ok(self.model.derivatives(&point))
+    }
+}
+
+type Steps = IterState<Vec<f64>, (), (), (), (), f64>;
+
+/// The solver: argmin calls it, step by step.
+#[derive(Default)]
+struct Newton {
+    reached: Option<(Vec<f64>, Derivatives)>,
+    finished: bool,
+    failure: Option<ClimbFailed>,
+}
+
+impl<'a> Solver<Slice<'a>, Steps> for Newton {
+    fn name(&self) -> &str {
+        "damped Newton"
+    }
+
+    fn init(&mut self, problem: &mut Problem<Slice<'a>>, mut state: Steps) -> Result<(Steps, Option<KV>), Error> {
+        let start = state.take_param().unwrap_or_default();
+        match problem.apply(&start)? {
+            Some(derivatives) => {
+                state = state.param(start.clone()).cost(-derivatives.value);
+                self.reached = Some((start, derivatives));
+            }
+            None => {
+                state = state.param(start);
+                self.failure = Some(ClimbFailed::BadStart);
+            }
+        }
+        Ok((state, None))
+    }
+
+    fn next_iter(&mut self, problem: &mut Problem<Slice<'a>>, state: Steps) -> Result<(Steps, Option<KV>), Error> {
+        let Some((place, here)) = self.reached.take() else { return Ok((state, None)) };
+        let size = place.len();
+        let factor = match negative_hessian(&here, size) {
+            Ok(factor) => factor,
+            Err(failure) => {
+                self.failure = Some(failure);
+                return Ok((state, None));
+            }
+        };
+        let mut step = here.gradient[..size].to_vec();
+        factor.solve(&mut step);
+        let rise: f64 = step.iter().zip(&here.gradient).map(|(s, g)| s * g).sum();
+        let last = rise <= LAST_STEP;
+        let mut share = 1.0;
+        let (place, there) = loop {
+            let trial: Vec<f64> = place.iter().zip(&step).map(|(x, s)| x + share * s).collect();
+            match problem.apply(&trial)? {
+                // The last step is below what a difference of two values can show.
+                Some(there) if last || there.value >= here.value + 1e-4 * share * rise => break (trial, there),
+                _ if share < 1e-9 => {
+                    // No visible rise along a rising direction: rounding has the last word.
+                    self.finished = true;
+                    break (place, here);
+                }
+                _ => share *= 0.5,
+            }
+        };
+        self.finished |= last;
+        let state = state.param(place.clone()).cost(-there.value);
+        self.reached = Some((place, there));
+        Ok((state, None))
+    }
+
+    fn terminate(&mut self, _state: &Steps) -> TerminationStatus {
+        if self.finished {
+            TerminationStatus::Terminated(TerminationReason::SolverConverged)
+        } else if self.failure.is_some() {
+            TerminationStatus::Terminated(TerminationReason::SolverExit("no mode".to_owned()))
+        } else {
+            TerminationStatus::NotTerminated
+        }
+    }
+}

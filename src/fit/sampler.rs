@@ -1,0 +1,237 @@
+//! From Laplace's approximation to draws: warm-up, then rounds of kept draws until they are precise
+//! enough or the limit is reached.
+
+use super::chain::{Chain, Proposal, Target, advance};
+use super::choice::{Chosen, Correction, History, choose, corrected, from_laplace};
+use super::convergence::Assessment;
+use super::laplace::Laplace;
+use super::reference::Tails;
+use super::stopping::{Goal, Verdict};
+use super::watch::{Stage, Watch};
+use crate::numeric::cholesky::Cholesky;
+use crate::spec::Steps;
+
+/// How to sample.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Plan {
+    /// Number of chains.
+    pub chains: usize,
+    /// Kind of steps.
+    pub steps: Steps,
+    /// Seed of the chains' streams.
+    pub seed: u64,
+    /// Warm-up iterations of each chain.
+    pub warm_up: usize,
+    /// Chains moved in lockstep on one thread.
+    pub width: usize,
+    /// Threads.
+    pub threads: usize,
+    /// When to stop.
+    pub goal: Goal,
+}
+
+/// What sampling gave.
+#[derive(Debug, Clone)]
+pub struct Sampled {
+    /// One vector for each parameter, chain after chain; the scatter as its absolute value.
+    pub values: Vec<Vec<f64>>,
+    /// Kept draws of each chain.
+    pub per_chain: usize,
+    /// One assessment for each parameter.
+    pub assessments: Vec<Assessment>,
+    /// Whether the goal was met.
+    pub verdict: Verdict,
+    /// Share of proposals accepted among the kept draws.
+    pub accepted: f64,
+    /// The reference, in words.
+    pub reference: String,
+}
+
+/// Why there are no draws.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum SamplingFailed {
+    /// The Laplace covariance is not positive definite.
+    NoCovariance,
+    /// The watcher asked to stop.
+    Stopped,
+}
+
+/// Draws from a target whose Laplace approximation is known.
+///
+/// # Errors
+/// [`SamplingFailed`] says why there are no draws.
+pub fn sample(target: &impl Target, laplace: &Laplace, plan: &Plan, watch: &dyn Watch) -> Result<Sampled, SamplingFailed> {
+    let start = Cholesky::factor(&laplace.covariance, target.dimension()).map_err(|_| SamplingFailed::NoCovariance)?;
+    let mut chains: Vec<Chain> = (0..plan.chains)
+        .map(|index| Chain::start(target, laplace, &start, plan.seed, index as u64))
+        .collect();
+    let chosen = warm_up(&mut chains, target, laplace, plan, watch)?;
+    let proposal = chosen.proposal(plan.steps).ok_or(SamplingFailed::NoCovariance)?;
+    draw(&mut chains, target, &proposal, plan, watch, chosen.in_words(plan.steps))
+}
+
+/// Iterations of warm-up: the walk needs many more, since it forgets its start slowly.
+pub fn warm_up_iterations(steps: Steps, rows: usize, dimension: usize) -> usize {
+    match steps {
+        // A small study is a skewed one, and its iterations cost nothing.
+        Steps::Mixed if rows < 100 => 600,
+        Steps::Mixed => 300,
+        Steps::Walk => 400 * (dimension + 4),
+    }
+}
+
+/// Adapts the proposal at a quarter, a half and the end; each time from the draws since the last.
+fn warm_up(
+    chains: &mut [Chain],
+    target: &impl Target,
+    laplace: &Laplace,
+    plan: &Plan,
+    watch: &dyn Watch,
+) -> Result<Chosen, SamplingFailed> {
+    let scatter = target.scatter_place();
+    let mut chosen = from_laplace(laplace, scatter).ok_or(SamplingFailed::NoCovariance)?;
+    let mut done = 0;
+    for until in [plan.warm_up / 4, plan.warm_up / 2, plan.warm_up] {
+        let proposal = chosen.proposal(plan.steps).ok_or(SamplingFailed::NoCovariance)?;
+        move_watched(chains, target, &proposal, until - done, plan, watch, &|moved| Stage::WarmUp {
+            done: done + moved,
+            of: plan.warm_up,
+        })?;
+        done = until;
+        let history = history(chains, target.dimension());
+        let next = match plan.steps {
+            Steps::Mixed => choose(laplace, &history, scatter),
+            // Haario et al. 2001, frozen after warm-up.
+            Steps::Walk => corrected(laplace, &history, scatter, Correction::Moments(0.5), &|_| true)
+                .map(|shape| Chosen { covariance: shape.covariance, ..chosen.clone() }),
+        };
+        // A stage in which no chain moved gives no covariance: keep what there was.
+        if let Some(next) = next.filter(|next| next.proposal(plan.steps).is_some()) {
+            chosen = next;
+        }
+        chains.iter_mut().for_each(Chain::forget);
+    }
+    Ok(chosen)
+}
+
+/// The chains' points since they were last forgotten, iteration by iteration.
+fn history(chains: &[Chain], d: usize) -> History {
+    let iterations = chains.first().map_or(0, |chain| chain.log_densities.len());
+    let mut history = History { chains: chains.len(), ..History::default() };
+    for iteration in 0..iterations {
+        for chain in chains {
+            history.points.extend_from_slice(&chain.points[iteration * d..(iteration + 1) * d]);
+            history.log_densities.push(chain.log_densities[iteration]);
+        }
+    }
+    history
+}
+
+/// Draws in rounds until the goal is met.
+fn draw(
+    chains: &mut [Chain],
+    target: &impl Target,
+    proposal: &Proposal,
+    plan: &Plan,
+    watch: &dyn Watch,
+    reference: String,
+) -> Result<Sampled, SamplingFailed> {
+    let d = target.dimension();
+    let most = plan.goal.most_per_chain(plan.chains);
+    let mut per_chain = 0;
+    let mut next = plan.goal.first_per_chain(plan.chains);
+    loop {
+        move_watched(chains, target, proposal, next - per_chain, plan, watch, &|moved| Stage::Drawing {
+            done: (per_chain + moved) * plan.chains,
+            next: next * plan.chains,
+            most: most * plan.chains,
+        })?;
+        per_chain = next;
+        let values = by_parameter(chains, d, target.scatter_place());
+        let (assessments, verdict) = plan.goal.judge(&values, plan.chains, plan.threads);
+        match verdict {
+            Verdict::More { worth } if per_chain < most => next = plan.goal.next_per_chain(per_chain, worth, plan.chains),
+            _ => {
+                let accepted: usize = chains.iter().map(|chain| chain.accepted).sum();
+                return Ok(Sampled {
+                    values,
+                    per_chain,
+                    assessments,
+                    verdict,
+                    accepted: accepted as f64 / (per_chain * plan.chains) as f64,
+                    reference,
+                });
+            }
+        }
+    }
+}
+
+/// The chains' points, parameter by parameter, the scatter without its sign.
+fn by_parameter(chains: &[Chain], d: usize, scatter: Option<usize>) -> Vec<Vec<f64>> {
+    (0..d)
+        .map(|place| {
+            let values = chains.iter().flat_map(|chain| chain.points.chunks_exact(d).map(move |point| point[place]));
+            if scatter == Some(place) {
+                values.map(f64::abs).collect()
+            } else {
+                values.collect()
+            }
+        })
+        .collect()
+}
+
+/// Iterations between two looks at the watcher.
+const WATCHED: usize = 50;
+
+fn move_watched(
+    chains: &mut [Chain],
+    target: &impl Target,
+    proposal: &Proposal,
+    iterations: usize,
+    plan: &Plan,
+    watch: &dyn Watch,
+    stage: &dyn Fn(usize) -> Stage,
+) -> Result<(), SamplingFailed> {
+    let mut moved = 0;
+    while moved < iterations {
+        if watch.stop_asked() {
+            return Err(SamplingFailed::Stopped);
+        }
+        watch.told(stage(moved));
+        let now = WATCHED.min(iterations - moved);
+        advance(chains, target, proposal, now, plan.width, plan.threads);
+        moved += now;
+    }
+    Ok(())
+}
+
+impl Chosen {
+    /// The proposal of a kind of steps; `None` where the covariance cannot be factored.
+    fn proposal(&self, steps: Steps) -> Option<Proposal> {
+        let d = self.covariance.len().isqrt();
+        let walk = Cholesky::factor(&self.covariance, d).ok()?;
+        Some(match steps {
+            Steps::Mixed => Proposal::new(walk, Some(self.reference.clone())),
+            Steps::Walk => Proposal::new(walk, None),
+        })
+    }
+
+    /// The reference in words, for the findings.
+    fn in_words(&self, steps: Steps) -> String {
+        if steps == Steps::Walk {
+            return "none: plain random walk".to_owned();
+        }
+        let correction = match self.correction {
+            Correction::None => "Laplace's moments",
+            Correction::Diagonal(share) if share < 1.0 => "Laplace's moments, scales moved half-way to the draws'",
+            Correction::Diagonal(_) => "Laplace's correlations with the draws' means and scales",
+            Correction::Moments(share) if share < 1.0 => "moments half-way between Laplace's and the draws'",
+            Correction::Moments(_) => "the draws' moments",
+        };
+        let tails = match self.tails {
+            Tails::Normal => "normal".to_owned(),
+            Tails::T(degrees) => format!("t with {degrees} degrees of freedom"),
+        };
+        format!("{correction}; {tails}; scale times {}", self.inflation)
+    }
+}

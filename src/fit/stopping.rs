@@ -1,0 +1,106 @@
+//! When there are enough draws.
+
+use super::convergence::{Assessment, assess};
+
+/// Draws between two looks, all chains together.
+const ROUND: usize = 1_000;
+/// R-hat at or below this and at least this many effective draws (Vehtari et al. 2021).
+pub const LARGEST_R_HAT: f64 = 1.01;
+/// Fewest effective draws, in the bulk and in the tails.
+pub const FEWEST_EFFECTIVE: f64 = 400.0;
+/// An interval end may be this many times less precise than a mean.
+pub const INTERVAL_END: f64 = 2.5;
+
+/// What sampling aims at.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Goal {
+    /// Largest simulation error of a mean, in posterior standard deviations.
+    pub precision: f64,
+    /// Level of the intervals.
+    pub interval: f64,
+    /// Most kept draws, all chains together.
+    pub most_draws: usize,
+}
+
+/// Whether the goal is met.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub enum Verdict {
+    /// It is.
+    Met,
+    /// Not yet: `worth` times as many draws may do.
+    More {
+        /// How many times as many draws the worst figure asks for, above 1.
+        worth: f64,
+    },
+}
+
+impl Goal {
+    /// Most kept draws of each chain.
+    pub fn most_per_chain(&self, chains: usize) -> usize {
+        (self.most_draws / chains).max(4)
+    }
+
+    /// Draws of each chain before the first look.
+    pub fn first_per_chain(&self, chains: usize) -> usize {
+        ROUND.div_ceil(chains).min(self.most_per_chain(chains))
+    }
+
+    /// Draws of each chain before the next look: a whole number of rounds. Looks that cannot succeed
+    /// are left out, since each costs a sort of all draws: the next one is at nine tenths of what
+    /// the last one asked for, and at most four times as far.
+    pub fn next_per_chain(&self, per_chain: usize, worth: f64, chains: usize) -> usize {
+        let round = ROUND.div_ceil(chains);
+        let asked = (per_chain as f64 * (0.9 * worth).min(4.0)) as usize;
+        let next = (asked / round * round).max(per_chain + round);
+        next.min(self.most_per_chain(chains))
+    }
+
+    /// Assesses every parameter and judges them together.
+    pub fn judge(&self, values: &[Vec<f64>], chains: usize, threads: usize) -> (Vec<Assessment>, Verdict) {
+        let assessments = assess_all(values, chains, self.interval, threads);
+        let worth = assessments.iter().map(|a| self.worth(a)).fold(0.0, f64::max);
+        let verdict = if worth <= 1.0 { Verdict::Met } else { Verdict::More { worth } };
+        (assessments, verdict)
+    }
+
+    /// How many times as many draws a parameter asks for: at most 1 when it is precise enough.
+    fn worth(&self, a: &Assessment) -> f64 {
+        // A parameter that never moved has no simulation error to speak of, and is no result.
+        if a.sd <= 0.0 {
+            return 4.0;
+        }
+        let error = |error: f64, allowed: f64| {
+            let ratio = error / (allowed * a.sd);
+            ratio * ratio
+        };
+        let ends = INTERVAL_END * self.precision;
+        let agreement = match a.split_r_hat {
+            Some(r_hat) if r_hat <= LARGEST_R_HAT => 1.0,
+            _ => 1.1,
+        };
+        [
+            error(a.error_of_mean, self.precision),
+            error(a.error_of_lower, ends),
+            error(a.error_of_upper, ends),
+            FEWEST_EFFECTIVE / a.effective_draws,
+            FEWEST_EFFECTIVE / a.effective_tail_draws,
+            agreement,
+        ]
+        .into_iter()
+        .fold(0.0, f64::max)
+    }
+}
+
+/// One assessment for each parameter, on several threads; each is computed whole by one of them.
+fn assess_all(values: &[Vec<f64>], chains: usize, interval: f64, threads: usize) -> Vec<Assessment> {
+    let share = values.len().div_ceil(threads.max(1)).max(1);
+    std::thread::scope(|scope| {
+        let parts: Vec<_> = values
+            .chunks(share)
+            .map(|part| {
+                scope.spawn(move || part.iter().map(|values| assess(values, chains, interval)).collect::<Vec<_>>())
+            })
+            .collect();
+        parts.into_iter().flat_map(|part| part.join().unwrap_or_default()).collect()
+    })
+}

@@ -1,0 +1,275 @@
+//! The log posterior of a study: one function serves the mode, the Laplace approximation and the
+//! draws.
+//!
+//! A point holds the baseline (log rate per unit of raw exposure), one coefficient for each term,
+//! and under the negative binomial the scatter c as a signed number: the density is that at |c|,
+//! the even extension of the density on c >= 0. All normalising constants are kept, so that values
+//! of different models on the same rows can be compared.
+
+use super::blocks::Blocks;
+use super::count_table::CountTable;
+use super::prior::{BaselinePrior, NormalPrior, ScatterPrior};
+use crate::design::Design;
+use crate::numeric::{ln, ln_factorial};
+use crate::spec::{Baseline, Family, Spec};
+
+/// Below this c^2 the negative binomial is computed as its limit, the Poisson. Their log densities
+/// differ by less than `c^2 mu^2 / 2`, which is below 1e-16 for every mean that a count can have;
+/// above it 1/c^2 and everything multiplied by it stay finite.
+const SMALLEST_DISPERSION: f64 = 1e-40;
+
+/// The log posterior density of one study.
+#[derive(Debug, Clone)]
+pub struct Model {
+    parameters: Vec<String>,
+    blocks: Blocks,
+    /// Sum over rows of weight * y, then of weight * y * column for each term.
+    count_sums: Vec<f64>,
+    /// Sum over rows of weight * (y * log exposure - log y!).
+    constant: f64,
+    baseline_prior: BaselinePrior,
+    term_priors: Vec<NormalPrior>,
+    scatter: Option<Scatter>,
+    start: f64,
+}
+
+/// What only the negative binomial has.
+#[derive(Debug, Clone)]
+struct Scatter {
+    counts: CountTable,
+    prior: ScatterPrior,
+}
+
+/// Value, gradient and Hessian at a point.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Derivatives {
+    /// Log density.
+    pub value: f64,
+    /// First derivatives, one for each parameter.
+    pub gradient: Vec<f64>,
+    /// Second derivatives, row-major, symmetric.
+    pub hessian: Vec<f64>,
+}
+
+impl Model {
+    /// The model of a spec on its design.
+    pub fn new(spec: &Spec, design: &Design) -> Self {
+        let baseline_prior = match &spec.baseline {
+            // The range is per `per` units of exposure, the coefficient per one unit.
+            Baseline::PlausibleRate(range) => BaselinePrior::Range(NormalPrior {
+                mean: range.log_mean() - ln(design.coding.per),
+                sd: range.log_sd(),
+            }),
+            Baseline::Earlier { incidents, exposure, .. } => {
+                BaselinePrior::Earlier { incidents: *incidents, exposure: *exposure }
+            }
+        };
+        let scatter_prior = match spec.family {
+            Family::Poisson => None,
+            Family::NegativeBinomial { .. } => spec.family.scatter_rate().map(|rate| ScatterPrior { rate }),
+        };
+        let term_priors = design
+            .terms
+            .iter()
+            .map(|term| NormalPrior { mean: term.prior_mean, sd: term.prior_sd })
+            .collect();
+        Model::with_priors(design, baseline_prior, term_priors, scatter_prior)
+    }
+
+    /// A model with priors given directly: Poisson without a scatter prior, negative binomial with one.
+    pub fn with_priors(
+        design: &Design,
+        baseline_prior: BaselinePrior,
+        term_priors: Vec<NormalPrior>,
+        scatter_prior: Option<ScatterPrior>,
+    ) -> Self {
+        let weighted: Vec<f64> = design.counts.iter().zip(&design.stands_for).map(|(y, w)| y * w).collect();
+        let mut count_sums = vec![weighted.iter().sum()];
+        for column in &design.columns {
+            count_sums.push(column.iter().zip(&weighted).map(|(x, y)| x * y).sum());
+        }
+        let constant = (0..design.counts.len())
+            .map(|row| {
+                weighted[row] * design.log_exposure[row] - design.stands_for[row] * ln_factorial(design.counts[row])
+            })
+            .sum();
+        let exposure: f64 = design.exposure.iter().zip(&design.stands_for).map(|(e, w)| e * w).sum();
+        let mut parameters = vec!["baseline".to_owned()];
+        parameters.extend(design.terms.iter().map(|term| term.name.clone()));
+        if scatter_prior.is_some() {
+            parameters.push("scatter".to_owned());
+        }
+        Model {
+            parameters,
+            blocks: Blocks::new(design),
+            // Half an incident is added, so that a table of zeros has a finite crude rate.
+            start: ln((count_sums[0] + 0.5) / exposure),
+            count_sums,
+            constant,
+            baseline_prior,
+            term_priors,
+            scatter: scatter_prior.map(|prior| Scatter {
+                counts: CountTable::new(&design.counts, &design.stands_for),
+                prior,
+            }),
+        }
+    }
+
+    /// Names of the parameters: `baseline`, the terms, then `scatter` under the negative binomial.
+    pub fn parameters(&self) -> &[String] {
+        &self.parameters
+    }
+
+    /// Number of parameters.
+    pub fn dimension(&self) -> usize {
+        self.parameters.len()
+    }
+
+    /// Place of the scatter among the parameters, under the negative binomial.
+    pub fn scatter_place(&self) -> Option<usize> {
+        self.scatter.as_ref().map(|_| self.parameters.len() - 1)
+    }
+
+    /// Rate of the scatter's exponential prior, under the negative binomial.
+    pub fn scatter_prior_rate(&self) -> Option<f64> {
+        self.scatter.as_ref().map(|scatter| scatter.prior.rate)
+    }
+
+    /// Number of rows.
+    pub fn rows(&self) -> usize {
+        self.blocks.rows()
+    }
+
+    /// Where a search for the mode may start: the crude rate, every rate ratio 1.
+    pub fn start(&self) -> Vec<f64> {
+        let mut start = vec![0.0; self.blocks.terms() + 1];
+        start[0] = self.start;
+        start
+    }
+
+    /// Log prior density at a point.
+    pub fn log_prior(&self, point: &[f64]) -> f64 {
+        let mut sum = self.baseline_prior.at(point[0]).value;
+        for (prior, coefficient) in self.term_priors.iter().zip(&point[1..]) {
+            sum += prior.at(*coefficient).value;
+        }
+        if let Some(scatter) = &self.scatter {
+            sum += scatter.prior.value(point[self.dimension() - 1].abs());
+        }
+        sum
+    }
+
+    /// Log posterior density, not normalised by the evidence, at several points at once: `points`
+    /// holds `out.len()` points of [`dimension`](Self::dimension) values each. Minus infinity where
+    /// the model is not defined; never NaN. The result at a point does not depend on its company.
+    pub fn log_densities(&self, points: &[f64], out: &mut [f64]) {
+        let d = self.dimension();
+        let coefficients = self.blocks.terms() + 1;
+        let mut admitted = Vec::with_capacity(points.len());
+        let mut places = Vec::with_capacity(out.len());
+        for (place, point) in points.chunks_exact(d).enumerate() {
+            out[place] = f64::NEG_INFINITY;
+            if point.iter().all(|value| value.is_finite()) && self.blocks.within_limit(&point[..coefficients]) {
+                admitted.extend_from_slice(point);
+                places.push(place);
+            }
+        }
+        let mut row_sums = vec![0.0; places.len()];
+        self.row_sums(&admitted, &mut row_sums);
+        for ((point, place), row_sum) in admitted.chunks_exact(d).zip(places).zip(row_sums) {
+            let mut value = self.constant + self.log_prior(point) - row_sum;
+            for (sum, coefficient) in self.count_sums.iter().zip(point) {
+                value += sum * coefficient;
+            }
+            if let (Some(scatter), Some(a)) = (&self.scatter, self.dispersion(point)) {
+                value += scatter.counts.value(a);
+            }
+            if value.is_finite() {
+                out[place] = value;
+            }
+        }
+    }
+
+    /// Log posterior density at one point.
+    pub fn log_density(&self, point: &[f64]) -> f64 {
+        let mut out = [0.0];
+        self.log_densities(point, &mut out);
+        out[0]
+    }
+
+    /// c^2 at a point, where it is large enough to matter.
+    fn dispersion(&self, point: &[f64]) -> Option<f64> {
+        let scatter = point[self.scatter_place()?];
+        let a = scatter * scatter;
+        (a >= SMALLEST_DISPERSION).then_some(a)
+    }
+
+    /// The sums over rows, for points that are all within the limit.
+    fn row_sums(&self, points: &[f64], out: &mut [f64]) {
+        let d = self.dimension();
+        let dispersions: Vec<Option<f64>> = points.chunks_exact(d).map(|point| self.dispersion(point)).collect();
+        if dispersions.iter().all(Option::is_none) {
+            self.blocks.sum_of_means(points, d, out);
+        } else if dispersions.iter().all(Option::is_some) {
+            let dispersions: Vec<f64> = dispersions.into_iter().flatten().collect();
+            self.blocks.sum_of_log_terms(points, d, &dispersions, out);
+        } else {
+            // A chain at a scatter of exactly 0 among others: each on its own.
+            for ((point, dispersion), out) in points.chunks_exact(d).zip(dispersions).zip(out) {
+                let out = std::slice::from_mut(out);
+                match dispersion {
+                    Some(a) => self.blocks.sum_of_log_terms(point, d, &[a], out),
+                    None => self.blocks.sum_of_means(point, d, out),
+                }
+            }
+        }
+    }
+
+    /// Value, gradient and Hessian at a point; `None` where the density is 0. The scatter's
+    /// derivatives are those on c > 0; at c = 0 they are the limits from above.
+    pub fn derivatives(&self, point: &[f64]) -> Option<Derivatives> {
+        let d = self.dimension();
+        let size = self.blocks.terms() + 1;
+        if !point.iter().all(|value| value.is_finite()) || !self.blocks.within_limit(&point[..size]) {
+            return None;
+        }
+        let dispersion = self.dispersion(point);
+        let rows = self.blocks.derivatives(point, self.scatter.as_ref().map(|_| dispersion.unwrap_or(0.0)));
+        let mut value = self.constant + self.log_prior(point) + rows.value;
+        let mut gradient = vec![0.0; d];
+        let mut hessian = vec![0.0; d * d];
+        for i in 0..size {
+            value += self.count_sums[i] * point[i];
+            let prior = if i == 0 {
+                self.baseline_prior.at(point[0])
+            } else {
+                self.term_priors[i - 1].at(point[i])
+            };
+            gradient[i] = rows.gradient[i] + prior.first;
+            for j in 0..=i {
+                hessian[i * d + j] = rows.hessian[i * size + j];
+                hessian[j * d + i] = rows.hessian[i * size + j];
+            }
+            hessian[i * d + i] += prior.second;
+        }
+        if let Some(scatter) = &self.scatter {
+            let last = d - 1;
+            let c = point[last].abs();
+            let sign = if point[last] < 0.0 { -1.0 } else { 1.0 };
+            let counts = scatter.counts.derivatives(dispersion.unwrap_or(0.0));
+            if dispersion.is_some() {
+                value += counts.value;
+            }
+            // a = c^2: d/dc = 2c d/da; d2/dc2 = 2 d/da + 4c^2 d2/da2.
+            let by_a = rows.by_dispersion + counts.first;
+            gradient[last] = sign * (2.0 * c * by_a - scatter.prior.rate);
+            hessian[last * d + last] = 2.0 * by_a + 4.0 * c * c * (rows.by_dispersion_twice + counts.second);
+            for i in 0..size {
+                let mixed = sign * 2.0 * c * rows.mixed[i];
+                hessian[i * d + last] = mixed;
+                hessian[last * d + i] = mixed;
+            }
+        }
+        value.is_finite().then_some(Derivatives { value, gradient, hessian })
+    }
+}

@@ -1,0 +1,146 @@
+//! Every fault of a spec, each with a file of its own and the message that a person reads.
+
+use std::collections::BTreeSet;
+use std::path::{Path, PathBuf};
+
+use proptest::prelude::*;
+use ratewright::output::diagnostic::{Look, render};
+use ratewright::spec::{SpecError, parse, read};
+
+fn folder() -> PathBuf {
+    Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/bad_spec")
+}
+
+/// Files of the folder, by name.
+fn files() -> Vec<String> {
+    let mut names: Vec<String> = std::fs::read_dir(folder())
+        .expect("the folder is there")
+        .map(|entry| entry.expect("readable").file_name().into_string().expect("plain name"))
+        .filter(|name| name.ends_with(".toml"))
+        .collect();
+    names.sort();
+    names
+}
+
+/// The error of a file, under its bare name.
+fn error_of(name: &str) -> SpecError {
+    let mut error = read(&folder().join(name)).expect_err(name);
+    error.source.file = name.to_string();
+    error
+}
+
+fn message_of(error: &SpecError) -> String {
+    render(&error.diagnostics(), Some(&error.source), Look::Plain)
+}
+
+#[test]
+fn every_bad_file_has_its_message() {
+    for name in files() {
+        let message = message_of(&error_of(&name));
+        insta::with_settings!({ snapshot_path => "bad_spec/snapshots", prepend_module_to_snapshot => false }, {
+            insta::assert_snapshot!(name.trim_end_matches(".toml"), message);
+        });
+    }
+}
+
+#[test]
+fn every_kind_of_fault_has_a_file_and_an_entry_in_the_docs() {
+    let mut codes: BTreeSet<&str> = BTreeSet::new();
+    for name in files() {
+        codes.extend(error_of(&name).faults.iter().map(|fault| fault.code()));
+    }
+    let missing = read(Path::new("no such file.toml")).expect_err("it is not there");
+    codes.extend(missing.faults.iter().map(|fault| fault.code()));
+    // Both sides: a fault without a file, and an entry of a fault that no longer exists.
+    let problems = include_str!("../docs/problems.md");
+    let part = problems.split("\n## ").find(|part| part.starts_with("Spec\n")).expect("a part about the spec");
+    let entries: BTreeSet<&str> =
+        part.lines().filter_map(|line| line.strip_prefix("### `")?.strip_suffix('`')).collect();
+    assert_eq!(codes, entries);
+}
+
+#[test]
+fn messages_of_ours_stay_within_80_columns_and_end_with_what_to_do() {
+    for name in files() {
+        let message = message_of(&error_of(&name));
+        for line in message.lines() {
+            assert!(line.chars().count() <= 80, "{name}: {line}");
+        }
+        assert!(message.contains("What to do:"), "{name}");
+        assert!(!message.chars().any(|letter| letter.is_control() && letter != '\n'), "{name}");
+    }
+}
+
+#[test]
+fn colour_adds_escape_sequences_and_no_word() {
+    for name in files() {
+        let error = error_of(&name);
+        let styled = render(&error.diagnostics(), Some(&error.source), Look::Styled);
+        assert_eq!(anstream::adapter::strip_str(&styled).to_string(), message_of(&error), "{name}");
+        assert_ne!(styled, message_of(&error), "{name}");
+    }
+}
+
+#[test]
+fn a_file_that_is_not_there_or_is_a_folder_is_told() {
+    let told = |path: &Path| message_of(&read(path).expect_err("not a spec"));
+    assert!(told(Path::new("no such file.toml")).contains("no such file.toml"));
+    let folder = told(Path::new(env!("CARGO_MANIFEST_DIR")));
+    assert!(folder.contains("[spec-unreadable]"), "{folder}");
+}
+
+#[test]
+fn a_fault_says_all_in_one_line_too() {
+    let error = error_of("range-reversed.toml");
+    assert_eq!(
+        error.to_string(),
+        "the spec range-reversed.toml cannot be used: the range `plausible_ratio` in [[covariate]] is reversed"
+    );
+}
+
+const GOOD: &str = include_str!("../src/spec/example.toml");
+
+/// Parses and renders; either outcome is right as long as it is one.
+fn survives(text: &str) {
+    if let Err(error) = parse("any.toml", text) {
+        assert!(!error.faults.is_empty());
+        for look in [Look::Plain, Look::Styled] {
+            assert!(!render(&error.diagnostics(), Some(&error.source), look).is_empty());
+        }
+        assert!(!render(&error.diagnostics(), None, Look::Plain).is_empty());
+    }
+}
+
+proptest! {
+    #![proptest_config(ProptestConfig { cases: 2000, failure_persistence: None, ..ProptestConfig::default() })]
+
+    #[test]
+    fn no_text_makes_it_panic(text in "\\PC{0,200}") {
+        survives(&text);
+    }
+
+    #[test]
+    fn no_toml_like_text_makes_it_panic(
+        text in "(\u{feff})?(\\[{0,2}[a-z_]{0,9}\\]{0,2}|[a-z_\"]{0,9} = [\\[\\]{}0-9a-z\"'.,_+=\u{e4}-]{0,12}|\t|\r|\n|\n){0,40}"
+    ) {
+        survives(&text);
+    }
+
+    #[test]
+    fn no_cut_or_change_of_a_good_spec_makes_it_panic(
+        at in 0..GOOD.len(),
+        cut in 0usize..30,
+        put in "([\\[\\]{}=\"'#\n.]|nan|inf|-1|1e999|0x7|true|1979-05-27|\u{65e5}|mean|earlier){0,3}",
+    ) {
+        let end = (at + cut).min(GOOD.len());
+        survives(&format!("{}{put}{}", &GOOD[..at], &GOOD[end..]));
+    }
+
+    #[test]
+    fn no_exchange_of_two_lines_makes_it_panic(a in 0usize..60, b in 0usize..60) {
+        let mut lines: Vec<&str> = GOOD.lines().collect();
+        let (a, b) = (a % lines.len(), b % lines.len());
+        lines.swap(a, b);
+        survives(&lines.join("\n"));
+    }
+}
