@@ -128,7 +128,7 @@ fn a_table_without_counts_is_refused_with_what_spoils_them() {
     let docs =
         std::fs::read_to_string(PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("docs/problems-data.md")).unwrap();
     for code in ["draft-no-count", "draft-no-unit"] {
-        assert!(docs.contains(&format!("### {code}\n")), "no entry for {code}");
+        assert!(docs.contains(&format!("### `{code}`\n")), "no entry for {code}");
     }
 }
 

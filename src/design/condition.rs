@@ -2,7 +2,7 @@
 //!
 //! For remarks only: whether a study is refused is `collinear`'s to decide.
 
-use super::collinear::dot;
+use crate::numeric::dot;
 
 /// Sweeps of Jacobi rotations after which the eigenvalues stand, whatever is left; each sweep
 /// after the fourth or so squares what is left, so that this is never reached.

@@ -1,6 +1,6 @@
 //! What a column of an unprepared table looks like.
 
-use super::super::covariates::mean;
+use crate::numeric::mean;
 use crate::table::{Column, Table};
 use std::collections::HashMap;
 

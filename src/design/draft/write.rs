@@ -77,7 +77,14 @@ impl Sheet<'_> {
         )?;
         writeln!(text, "# its `provisional = true` out.\n")?;
         writeln!(text, "[study]")?;
-        writeln!(text, "title = {}", quoted(&format!("{counts} in {file}")))?;
+        writeln!(
+            text,
+            "title = {}",
+            quoted(&format!(
+                "{counts} in {}",
+                file.rsplit(['/', '\\']).next().unwrap_or(file)
+            ))
+        )?;
         let question = match terms.first() {
             Some(term) => format!("Does the rate of {counts} go with {term}?"),
             None => format!("What is the rate of {counts}?"),
