@@ -100,7 +100,7 @@ fn conjugate_clinics_meet_their_closed_form() {
     let mut outside = 0.0;
     for (unit, row) in found.units.iter().zip(&rows) {
         let tail = row[at("p_less")] + 0.5 * row[at("p_equal")];
-        assert!((unit.tail_probability - tail).abs() < 2e-6, "{unit:?} for {tail}");
+        assert!((unit.tail_probability - tail).abs() < 1e-5, "{unit:?} for {tail}");
         let mean = row[at("posterior_mean_mu")];
         assert!((unit.expected / mean - 1.0).abs() < 2e-5, "{unit:?} for {mean}");
         let scatter = 1.0 / shape.sqrt();
@@ -120,7 +120,7 @@ fn conjugate_clinics_meet_their_closed_form() {
         assert_eq!(unit.state, state);
     }
     assert!(
-        (found.outside_by_chance - outside).abs() < 2e-5,
+        (found.outside_by_chance - outside).abs() < 1e-4,
         "{} for {outside}",
         found.outside_by_chance
     );
