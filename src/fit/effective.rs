@@ -6,7 +6,7 @@ use crate::numeric::{Fourier, dot, ln, mean, sum};
 ///
 /// A chain that mixes is judged within a few lags. One that is stuck needs as many lags as it has
 /// draws, which at a million draws would take minutes lag by lag.
-const DIRECT_LAGS: usize = 128;
+const DIRECT_LAGS: usize = 512;
 
 /// Chains of equal length, one after another.
 #[derive(Debug, Clone, Copy)]
