@@ -1,9 +1,10 @@
 //! The predictive check of each unit: is its count one that the fitted model would bring?
 //!
-//! The rows of a unit are summed. Given a posterior draw, that sum is Poisson about a mean M: the
-//! sum of the rows' means under Poisson, with a gamma factor for each row under the negative
-//! binomial (a gamma mixture of Poissons). So no count is ever simulated: probabilities are averages
-//! over draws of exact Poisson ones (Rao & Blackwell), and only the gamma factors are random.
+//! The rows of a unit are summed, each as often as it stands for others. Given a posterior draw,
+//! that sum is Poisson about a mean M: the sum of the rows' means under Poisson, with a gamma factor
+//! for each row under the negative binomial (a gamma mixture of Poissons). So no count is ever
+//! simulated: probabilities are averages over draws of exact Poisson ones (Rao & Blackwell), and
+//! only the gamma factors are random.
 //!
 //! The data that are judged here also took part in the fit, so the tails are conservative: a truly
 //! odd unit pulls the model towards itself.
@@ -48,9 +49,9 @@ pub struct UnitCheck {
     pub unit: String,
     /// Its rows (each counted as often as it stands for others).
     pub rows: f64,
-    /// Its exposure.
+    /// Its exposure, over all those rows.
     pub exposure: f64,
-    /// Its count.
+    /// Its count, over all those rows.
     pub observed: f64,
     /// Posterior mean of its expected count.
     pub expected: f64,
@@ -170,7 +171,11 @@ fn check_unit(
     interval: f64,
     stream: Stream,
 ) -> (UnitCheck, f64) {
-    let total = |of: &dyn Fn(usize) -> f64| sum(&rows.iter().map(|row| of(*row)).collect::<Vec<f64>>());
+    // Each of the identical rows that a row stands for has the row's count and exposure.
+    let total = |of: &dyn Fn(usize) -> f64| {
+        let parts: Vec<f64> = rows.iter().map(|row| design.stands_for[*row] * of(*row)).collect();
+        sum(&parts)
+    };
     let observed = total(&|row| design.counts[row]);
     let (expected, means) = means_of_unit(design, rows, used, stream);
     let predictive = Predictive::new(means);
@@ -185,13 +190,14 @@ fn check_unit(
     };
     let check = UnitCheck {
         unit: design.units[unit].clone(),
-        rows: total(&|row| design.stands_for[row]),
+        rows: total(&|_| 1.0),
         exposure: total(&|row| design.exposure[row]),
         observed,
         expected,
         lower: lower.count,
         upper: upper.count,
-        tail_probability: predictive.at_most(observed - 1.0) + 0.5 * predictive.exactly(observed),
+        // Two roundings can add up to a hair above 1.
+        tail_probability: (predictive.at_most(observed - 1.0) + 0.5 * predictive.exactly(observed)).min(1.0),
         state,
     };
     (check, lower.below + (1.0 - upper.reached))

@@ -186,9 +186,9 @@ pub(super) fn atanh_tail(z: f64) -> f64 {
     sum
 }
 
-/// d ln(x / m) - (x - m) scaled: the deviance part x ln(x / m) - (x - m) >= 0 of `x` about `m`, with
-/// the difference `d` = x - m given, because the caller often knows it better than x - m would.
+/// The deviance part x ln(x / m) - (x - m) >= 0 of `x` about `m`, both above 0 (or x = 0: then m).
 ///
+/// The difference `d` = x - m is asked for, because the caller often knows it better than x - m would tell.
 /// With s = d / (x + m) it is d s (1 + s (1 + s) B(s^2)) while |s| <= 1/3 (compare Loader 2000,
 /// "Fast and accurate computation of binomial probabilities", the function bd0).
 pub(super) fn deviance_part(x: f64, m: f64, d: f64) -> f64 {
