@@ -178,12 +178,16 @@ fn negative_binomial_meets_its_table() {
         ln_pmf.compare(nb2_ln_pmf(y, mean, c), row[3], &about);
         pmf.compare(nb2_pmf(y, mean, c), row[4], &about);
         at_most.compare(nb2_cdf(y, mean, c), row[5], &about);
-        above.compare(nb2_sf(y, mean, c), row[6], &about);
+        let found = nb2_sf(y, mean, c);
+        // At a scatter of 50 the upper tail may be what the lower one leaves of 1.
+        if c < 50.0 || (found - row[6]).abs() > 4e-15 {
+            above.compare(found, row[6], &about);
+        }
     }
-    ln_pmf.below(1e-12);
-    pmf.below(1e-12);
-    at_most.below(1e-12);
-    above.below(1e-12);
+    ln_pmf.below(5e-15);
+    pmf.below(2e-13);
+    at_most.below(2e-13);
+    above.below(2e-13);
 }
 
 #[test]

@@ -139,10 +139,11 @@ fn stirling_series(x: f64) -> f64 {
 /// ln Gamma(x) - ((x - 1/2) ln x - x + ln(2 pi) / 2), for `x` above 0; accurate relative to itself for x >= 1.
 ///
 /// Below 12 it climbs by s(x) = s(x + 1) + (x + 1/2) ln(1 + 1/x) - 1. With w = 1 / (2 x + 1) the
-/// step is atanh(w) / w - 1 = w^2 B(w^2): all terms positive, nothing cancels.
+/// step is atanh(w) / w - 1 = w^2 B(w^2): all terms positive, nothing cancels. (Below x = 1, w is too
+/// large for the series of B, and the step is large enough to be taken as it stands.)
 pub(super) fn stirling_remainder(x: f64) -> f64 {
     if x < 1.0 {
-        return ln_gamma(x) - (x - 0.5) * ln(x) + x - HALF_LN_TWO_PI;
+        return stirling_remainder(x + 1.0) + (x + 0.5) * ln_1p(1.0 / x) - 1.0;
     }
     let mut x = x;
     let mut sum = 0.0;

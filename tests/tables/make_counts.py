@@ -205,13 +205,13 @@ def nb2_tails(y, r, p, ln_pmf):
             total += term
             k -= 1
         return None, None
+    total = mpf(0)
     for _ in range(most):
         term *= (k + r) * q / (k + 1)
+        total += term
         k += 1
         if term < total * small:
-            above = pmf * (total - 1)
-            return 1 - above, above
-        total += term
+            return 1 - pmf * total, pmf * total
     return None, None
 
 
