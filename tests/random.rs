@@ -209,6 +209,16 @@ fn below_gives_each_number_equally_often() {
 }
 
 #[test]
+fn parameters_that_are_no_number_end_no_draw_in_a_loop() {
+    let mut stream = Stream::new(6, Purpose::Simulation, 0);
+    assert!(stream.gamma(f64::NAN).is_nan() && stream.poisson(f64::NAN).is_nan());
+    assert_eq!(
+        (stream.gamma(f64::INFINITY), stream.poisson(f64::INFINITY)),
+        (f64::INFINITY, f64::INFINITY)
+    );
+}
+
+#[test]
 fn streams_differ_in_seed_purpose_and_index() {
     let mut firsts = Vec::new();
     for seed in [0, 1, u64::MAX] {

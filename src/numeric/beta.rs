@@ -58,7 +58,7 @@ fn front(a: f64, b: f64, x: f64, y: f64, lambda: f64) -> f64 {
 /// The F of I_x(a, b) = x^a (1 - x)^b / (B(a, b) F), for `lambda` = a (1 - x) - b x above 2 x - 1.
 ///
 /// That condition is x < (a + 1) / (a + b + 2), where the fraction ends soon. (Split at the mean, at
-/// lambda = 0, it crept for a below 1: with a = 1e6, b = 4e-4 it stopped six digits short.)
+/// lambda = 0, it crept where b is below 1: with a = 1e6, b = 4e-4 it stopped six digits short.)
 ///
 /// The continued fraction of DiDonato & Morris (1992), "Algorithm 708: significant digit
 /// computation of the incomplete beta function ratios", equation 9, by the modified Lentz method.
