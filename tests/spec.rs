@@ -92,6 +92,53 @@ fn what_is_left_out_has_the_stated_default() {
 }
 
 #[test]
+fn rows_may_be_kept_by_numbers_with_an_open_end() {
+    let keep = "keep = { slope_deg = { from = -2, to = 9.5 }, boardings = { from = 1 }, age = { to = 3, from = 3 } }";
+    let text = EXAMPLE.replace("keep   = { season = [\"summer\", \"autumn\"] }", keep);
+    let spec = parse("s.toml", &text).expect("good");
+    let kept: Vec<(&str, &KeepOnly)> = spec
+        .data
+        .keep
+        .iter()
+        .map(|keep| (keep.column.value.as_str(), &keep.only))
+        .collect();
+    let numbers = |from, to| KeepOnly::Numbers { from, to };
+    assert_eq!(
+        kept,
+        [
+            ("slope_deg", &numbers(Some(-2.0), Some(9.5))),
+            ("boardings", &numbers(Some(1.0), None)),
+            ("age", &numbers(Some(3.0), Some(3.0))),
+        ]
+    );
+}
+
+#[test]
+fn numbers_may_be_written_in_any_toml_form() {
+    for (written, per) in [
+        ("10_000", 10_000.0),
+        ("1e4", 10_000.0),
+        ("0x10", 16.0),
+        ("+5.5", 5.5),
+        ("9223372036854775808", 9_223_372_036_854_775_808.0),
+    ] {
+        let text = EXAMPLE.replace("= 10000 ", &format!("= {written} "));
+        let spec = parse("s.toml", &text).expect(written);
+        assert_eq!(spec.exposure.map(|exposure| exposure.per), Some(per), "{written}");
+    }
+}
+
+#[test]
+fn a_merged_level_may_keep_the_name_of_a_level_that_it_takes_in() {
+    let text = EXAMPLE.replace("other = [\"mesh\", \"paint\"]", "plain = [\"plain\", \"paint\"]");
+    let spec = parse("s.toml", &text).expect("plain stays the reference");
+    let CovariateKind::Category { merge, .. } = &spec.covariates[0].kind else {
+        panic!("a category")
+    };
+    assert_eq!(merge[0].into.value, "plain");
+}
+
+#[test]
 fn a_byte_order_mark_and_windows_line_ends_change_nothing_but_the_places() {
     let plain = parse("s.toml", EXAMPLE).expect("good");
     let windows = format!("\u{feff}{}", EXAMPLE.replace('\n', "\r\n"));

@@ -142,7 +142,7 @@ fn reasons(spec: &Spec, look: &PriorLook) -> Vec<String> {
 }
 
 /// Whether any range of the spec is still as `draft` wrote it.
-fn is_provisional(spec: &Spec) -> bool {
+pub fn is_provisional(spec: &Spec) -> bool {
     let baseline = match &spec.baseline {
         Baseline::PlausibleRate(range) => range.standing,
         Baseline::Earlier { .. } => Standing::Settled,

@@ -41,7 +41,7 @@ pub fn render(diagnostics: &[Diagnostic], spec_source: Option<&Source>, look: Lo
 
 fn one(diagnostic: &Diagnostic, spec_source: Option<&Source>, look: Look) -> String {
     let mut out = String::new();
-    let message = format!("{} [{}]", diagnostic.message, diagnostic.code);
+    let message = format!("{} ({})", diagnostic.message, diagnostic.code);
     out.push_str(&paragraph("Problem:", &message, look));
     for place in &diagnostic.places {
         out.push_str(&match (place, spec_source) {

@@ -107,7 +107,7 @@ fn read_centre(fields: &Fields<'_>, bounds: Bounds, faults: &mut Faults) -> Opti
     let wanted = if bounds == Bounds::NONE {
         info.kind.in_words()
     } else {
-        format!("a number {}, or \"mean\"", bounds.in_words())
+        format!("{}, or \"mean\"", bounds.in_words())
     };
     fields
         .number_of(&fields.title("centre"), &wanted, bounds, value, faults)
