@@ -103,3 +103,14 @@ fn the_truth_lies_where_the_posterior_says() {
         );
     }
 }
+
+/// A search for the mode that judges every step by the rise it brings loses its way on this seed's
+/// pools: the last rises are below the rounding of the log density.
+#[test]
+fn the_mode_is_found_where_its_last_rise_cannot_be_seen() {
+    let spec = spec::read(&folder().join("pools.toml")).unwrap();
+    let csv = pools::csv(&pools::simulate(205));
+    let table = table::parse_csv("pools.csv", csv.as_bytes()).unwrap();
+    let design = design::build(&spec, &table).unwrap();
+    fit::laplace(&Model::new(&spec, &design)).unwrap();
+}
