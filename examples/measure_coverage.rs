@@ -68,7 +68,7 @@ fn tally_seeds(next: &AtomicU64, seeds: u64, study: &Spec) -> Result<Tallies, Fa
         if seed > seeds {
             return Ok(tallies);
         }
-        tally(seed, study, &mut tallies)?;
+        tally(seed, study, &mut tallies).map_err(|failed| format!("seed {seed}: {failed}"))?;
     }
 }
 
