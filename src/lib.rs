@@ -24,6 +24,7 @@ pub mod check;
 pub mod command;
 pub mod design;
 pub mod diagnostic;
+pub mod error;
 pub mod fit;
 pub mod model;
 pub mod numeric;

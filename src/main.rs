@@ -1,1 +1,7 @@
-fn main() {}
+//! Starts the program; everything else is the library's.
+
+use std::process::ExitCode;
+
+fn main() -> ExitCode {
+    ratewright::command::run(std::env::args_os())
+}

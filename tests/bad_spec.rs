@@ -1,6 +1,7 @@
 //! Every fault of a spec, each with a file of its own and the message that a person reads.
 
 use std::collections::BTreeSet;
+use std::io::Write;
 use std::path::{Path, PathBuf};
 
 use proptest::prelude::*;
@@ -51,11 +52,17 @@ fn every_kind_of_fault_has_a_file_and_an_entry_in_the_docs() {
     }
     let missing = read(Path::new("no such file.toml")).expect_err("it is not there");
     codes.extend(missing.faults.iter().map(|fault| fault.code()));
+    codes.extend(a_large_file().faults.iter().map(|fault| fault.code()));
     // Both sides: a fault without a file, and an entry of a fault that no longer exists.
     let problems = include_str!("../docs/problems.md");
-    let part = problems.split("\n## ").find(|part| part.starts_with("Spec\n")).expect("a part about the spec");
-    let entries: BTreeSet<&str> =
-        part.lines().filter_map(|line| line.strip_prefix("### `")?.strip_suffix('`')).collect();
+    let part = problems
+        .split("\n## ")
+        .find(|part| part.starts_with("Spec\n"))
+        .expect("a part about the spec");
+    let entries: BTreeSet<&str> = part
+        .lines()
+        .filter_map(|line| line.strip_prefix("### `")?.strip_suffix('`'))
+        .collect();
     assert_eq!(codes, entries);
 }
 
@@ -67,7 +74,10 @@ fn messages_of_ours_stay_within_80_columns_and_end_with_what_to_do() {
             assert!(line.chars().count() <= 80, "{name}: {line}");
         }
         assert!(message.contains("What to do:"), "{name}");
-        assert!(!message.chars().any(|letter| letter.is_control() && letter != '\n'), "{name}");
+        assert!(
+            !message.chars().any(|letter| letter.is_control() && letter != '\n'),
+            "{name}"
+        );
     }
 }
 
@@ -76,8 +86,52 @@ fn colour_adds_escape_sequences_and_no_word() {
     for name in files() {
         let error = error_of(&name);
         let styled = render(&error.diagnostics(), Some(&error.source), Look::Styled);
-        assert_eq!(anstream::adapter::strip_str(&styled).to_string(), message_of(&error), "{name}");
+        assert_eq!(
+            anstream::adapter::strip_str(&styled).to_string(),
+            message_of(&error),
+            "{name}"
+        );
         assert_ne!(styled, message_of(&error), "{name}");
+    }
+}
+
+/// The error of a table that was named in place of the spec.
+fn a_large_file() -> SpecError {
+    let mut table = tempfile::NamedTempFile::new().expect("a file");
+    table
+        .write_all("landing,falls\n".repeat(100_000).as_bytes())
+        .expect("written");
+    let mut error = read(table.path()).expect_err("no spec");
+    error.source.file = "landings.csv".into();
+    error
+}
+
+#[test]
+fn a_table_in_place_of_the_spec_is_told() {
+    let message = message_of(&a_large_file());
+    assert!(
+        message.starts_with("Problem: the spec is larger than 1,048,576 bytes"),
+        "{message}"
+    );
+    assert!(message.contains("landings.csv"), "{message}");
+}
+
+#[test]
+fn deep_nesting_is_refused_and_does_not_exhaust_the_stack() {
+    for text in [
+        "a = ".to_string() + &"[".repeat(100_000),
+        "a = ".to_string() + &"{ a = ".repeat(100_000),
+        "a.".repeat(100_000) + "a = 1",
+        format!("[{}a]", "a.".repeat(100_000)),
+        format!("[[{}a]]", "a.".repeat(100_000)),
+    ] {
+        let error = parse("deep.toml", &text).expect_err("no spec");
+        assert!(
+            render(&error.diagnostics(), Some(&error.source), Look::Plain)
+                .lines()
+                .count()
+                < 80
+        );
     }
 }
 
@@ -86,7 +140,7 @@ fn a_file_that_is_not_there_or_is_a_folder_is_told() {
     let told = |path: &Path| message_of(&read(path).expect_err("not a spec"));
     assert!(told(Path::new("no such file.toml")).contains("no such file.toml"));
     let folder = told(Path::new(env!("CARGO_MANIFEST_DIR")));
-    assert!(folder.contains("[spec-unreadable]"), "{folder}");
+    assert!(folder.contains("(spec-unreadable)"), "{folder}");
 }
 
 #[test]

@@ -25,7 +25,10 @@ fn stated_ranges_come_back() {
     let look = look(&support::spec());
     assert!((look.baseline_rate.lower - 0.5).abs() < 1e-12 && (look.baseline_rate.upper - 50.0).abs() < 1e-12);
     let grooved = &look.rate_ratios[0];
-    assert!((grooved.ratio.lower - 0.33).abs() < 1e-12 && (grooved.ratio.upper - 3.0).abs() < 1e-12, "{grooved:?}");
+    assert!(
+        (grooved.ratio.lower - 0.33).abs() < 1e-12 && (grooved.ratio.upper - 3.0).abs() < 1e-12,
+        "{grooved:?}"
+    );
     // Exponential with P(c > 1) = 0.05: median ln 2 / -ln 0.05.
     let scatter = look.scatter.unwrap();
     assert!((scatter.upper - 1.0).abs() < 1e-12 && (scatter.median - 0.231_378_213_159_759).abs() < 1e-12);
@@ -54,7 +57,10 @@ fn counts_from_earlier_data_are_negative_binomial() {
         span: 0..0,
     };
     let look = look(&spec);
-    assert_eq!((look.count.lower, look.count.median, look.count.upper), (0.0, 2.0, 10.0));
+    assert_eq!(
+        (look.count.lower, look.count.median, look.count.upper),
+        (0.0, 2.0, 10.0)
+    );
     assert!((look.typical_exposure - 15_000.0).abs() < 1e-9);
 }
 
@@ -64,7 +70,11 @@ fn a_provisional_range_wants_a_look() {
     spec.covariates[1].plausible_ratio.standing = Standing::Provisional;
     let look = look(&spec);
     assert_eq!(look.state, PriorState::Look);
-    assert!(look.reasons.len() == 1 && look.reasons[0].contains("provisional"), "{:?}", look.reasons);
+    assert!(
+        look.reasons.len() == 1 && look.reasons[0].contains("provisional"),
+        "{:?}",
+        look.reasons
+    );
 }
 
 #[test]
@@ -90,7 +100,10 @@ fn more_incidents_than_chances_want_a_look() {
     assert_eq!(look(&spec).state, PriorState::Clear);
     spec.exposure.as_mut().unwrap().chances = Chances::OneIncidentEach;
     let look = look(&spec);
-    assert!(look.above_chances.unwrap() > 0.1 && look.reasons[0].contains("chances"), "{look:?}");
+    assert!(
+        look.above_chances.unwrap() > 0.1 && look.reasons[0].contains("chances"),
+        "{look:?}"
+    );
 }
 
 #[test]

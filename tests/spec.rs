@@ -34,16 +34,26 @@ fn the_example_means_what_it_says() {
     assert_eq!(spec.data.unit.value, "landing");
     assert_eq!(spec.data.keep.len(), 1);
     assert_eq!(&EXAMPLE[spec.data.keep[0].column.span.clone()], "season");
-    let KeepOnly::Levels(levels) = &spec.data.keep[0].only else { panic!("levels") };
+    let KeepOnly::Levels(levels) = &spec.data.keep[0].only else {
+        panic!("levels")
+    };
     assert_eq!(levels[1].value, "autumn");
     assert_eq!(&EXAMPLE[levels[1].span.clone()], "\"autumn\"");
     assert_eq!(spec.exposure.as_ref().map(|exposure| exposure.per), Some(10_000.0));
-    let Baseline::PlausibleRate(range) = &spec.baseline else { panic!("a range") };
+    let Baseline::PlausibleRate(range) = &spec.baseline else {
+        panic!("a range")
+    };
     assert_eq!((range.lo, range.hi, range.standing), (0.5, 20.0, Standing::Settled));
     assert_eq!(&EXAMPLE[range.span.clone()], "[0.5, 20.0]");
-    let columns: Vec<&str> = spec.covariates.iter().map(|covariate| covariate.column.value.as_str()).collect();
+    let columns: Vec<&str> = spec
+        .covariates
+        .iter()
+        .map(|covariate| covariate.column.value.as_str())
+        .collect();
     assert_eq!(columns, ["decking", "slope_deg", "staff_hours"]);
-    let CovariateKind::Category { reference, merge } = &spec.covariates[0].kind else { panic!("a category") };
+    let CovariateKind::Category { reference, merge } = &spec.covariates[0].kind else {
+        panic!("a category")
+    };
     assert_eq!(reference.value, "plain");
     assert_eq!(merge[0].into.value, "other");
     assert_eq!(merge[0].levels[1].value, "paint");
@@ -54,7 +64,10 @@ fn the_example_means_what_it_says() {
             step: 2.0
         }
     );
-    assert_eq!(spec.covariates[2].kind, CovariateKind::LogNumber { centre: Centre::Mean });
+    assert_eq!(
+        spec.covariates[2].kind,
+        CovariateKind::LogNumber { centre: Centre::Mean }
+    );
     assert_eq!(spec.covariates[2].plausible_ratio.standing, Standing::Provisional);
     assert_eq!(spec.joints[0].of[1].value, "slope_deg");
     assert_eq!(&EXAMPLE[spec.joints[0].span.clone()], "[[joint]]");
@@ -71,8 +84,58 @@ fn what_is_left_out_has_the_stated_default() {
     assert_eq!((spec.report.interval, spec.report.hide_counts_below), (0.95, 5));
     assert_eq!(spec.report.zero_counts, ZeroCounts::Hidden);
     let with_exposure = SMALLEST.replace("[family]", "[exposure]\ncolumn = \"hours\"\n[family]");
-    let exposure = parse("smallest.toml", &with_exposure).expect("good").exposure.expect("stands");
+    let exposure = parse("smallest.toml", &with_exposure)
+        .expect("good")
+        .exposure
+        .expect("stands");
     assert_eq!((exposure.per, exposure.chances), (1.0, Chances::Many));
+}
+
+#[test]
+fn rows_may_be_kept_by_numbers_with_an_open_end() {
+    let keep = "keep = { slope_deg = { from = -2, to = 9.5 }, boardings = { from = 1 }, age = { to = 3, from = 3 } }";
+    let text = EXAMPLE.replace("keep   = { season = [\"summer\", \"autumn\"] }", keep);
+    let spec = parse("s.toml", &text).expect("good");
+    let kept: Vec<(&str, &KeepOnly)> = spec
+        .data
+        .keep
+        .iter()
+        .map(|keep| (keep.column.value.as_str(), &keep.only))
+        .collect();
+    let numbers = |from, to| KeepOnly::Numbers { from, to };
+    assert_eq!(
+        kept,
+        [
+            ("slope_deg", &numbers(Some(-2.0), Some(9.5))),
+            ("boardings", &numbers(Some(1.0), None)),
+            ("age", &numbers(Some(3.0), Some(3.0))),
+        ]
+    );
+}
+
+#[test]
+fn numbers_may_be_written_in_any_toml_form() {
+    for (written, per) in [
+        ("10_000", 10_000.0),
+        ("1e4", 10_000.0),
+        ("0x10", 16.0),
+        ("+5.5", 5.5),
+        ("9223372036854775808", 9_223_372_036_854_775_808.0),
+    ] {
+        let text = EXAMPLE.replace("= 10000 ", &format!("= {written} "));
+        let spec = parse("s.toml", &text).expect(written);
+        assert_eq!(spec.exposure.map(|exposure| exposure.per), Some(per), "{written}");
+    }
+}
+
+#[test]
+fn a_merged_level_may_keep_the_name_of_a_level_that_it_takes_in() {
+    let text = EXAMPLE.replace("other = [\"mesh\", \"paint\"]", "plain = [\"plain\", \"paint\"]");
+    let spec = parse("s.toml", &text).expect("plain stays the reference");
+    let CovariateKind::Category { merge, .. } = &spec.covariates[0].kind else {
+        panic!("a category")
+    };
+    assert_eq!(merge[0].into.value, "plain");
 }
 
 #[test]
@@ -87,9 +150,10 @@ fn a_byte_order_mark_and_windows_line_ends_change_nothing_but_the_places() {
 
 #[test]
 fn tables_may_be_written_in_any_toml_form() {
-    let dotted = SMALLEST
-        .replace("[incidents]\ncolumn", "")
-        .replacen("\n[study]", "incidents.column = \"falls\"\n[study]", 1);
+    let dotted =
+        SMALLEST
+            .replace("[incidents]\ncolumn", "")
+            .replacen("\n[study]", "incidents.column = \"falls\"\n[study]", 1);
     let dotted = dotted.replace(" = \"falls\"\n[family]", "[family]");
     assert_eq!(parse("s.toml", &dotted).expect("good").incidents.column.value, "falls");
 }
@@ -97,7 +161,9 @@ fn tables_may_be_written_in_any_toml_form() {
 #[test]
 fn priors_follow_from_the_ranges() {
     let spec = parse("example.toml", EXAMPLE).expect("good");
-    let Baseline::PlausibleRate(rate) = &spec.baseline else { panic!("a range") };
+    let Baseline::PlausibleRate(rate) = &spec.baseline else {
+        panic!("a range")
+    };
     // (ln 0.5 + ln 20)/2 = ln(10)/2 and ln(40)/(2 * 1.959963984540054): Python 3 `math.log`, to 17 digits.
     assert!((rate.log_mean() - 1.151_292_546_497_023).abs() < 1e-15);
     assert!((rate.log_sd() - 0.941_057_969_230_900_9).abs() < 1e-15);

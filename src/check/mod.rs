@@ -4,6 +4,7 @@ mod prior;
 mod units;
 
 pub use prior::{
-    MOST_ABOVE_CHANCES, PriorLook, PriorRange, PriorRatio, PriorScatter, PriorState, SIMULATIONS, WIDEST_RATE, prior,
+    MOST_ABOVE_CHANCES, PriorLook, PriorRange, PriorRatio, PriorScatter, PriorState, SIMULATIONS, WIDEST_RATE,
+    is_provisional, prior,
 };
 pub use units::{UnitCheck, UnitState, UnitsCheck, units};

@@ -142,12 +142,15 @@ fn reasons(spec: &Spec, look: &PriorLook) -> Vec<String> {
 }
 
 /// Whether any range of the spec is still as `draft` wrote it.
-fn is_provisional(spec: &Spec) -> bool {
+pub fn is_provisional(spec: &Spec) -> bool {
     let baseline = match &spec.baseline {
         Baseline::PlausibleRate(range) => range.standing,
         Baseline::Earlier { .. } => Standing::Settled,
     };
-    let ratios = spec.covariates.iter().map(|covariate| covariate.plausible_ratio.standing);
+    let ratios = spec
+        .covariates
+        .iter()
+        .map(|covariate| covariate.plausible_ratio.standing);
     let joints = spec.joints.iter().map(|joint| joint.plausible_ratio.standing);
     [baseline, spec.family.standing()]
         .into_iter()

@@ -12,7 +12,7 @@ use super::outcome;
 use super::rows::{self, Reading, Rows, labels, uses};
 use super::types::{Audit, Coding, CovariateCoding, Design, Term};
 use crate::numeric::ln;
-use crate::spec::{NORMAL_975, PlausibleRange, Spec};
+use crate::spec::Spec;
 use crate::table::{Cells, Column, Table, TextCells};
 use std::collections::HashMap;
 use std::ops::Range;
@@ -261,19 +261,13 @@ fn terms_of(spec: &Spec, coding: &Coding) -> Vec<Term> {
             Source::Covariate(place) => &spec.covariates[place].plausible_ratio,
             Source::Joint(place) => &spec.joints[place].plausible_ratio,
         };
-        let (prior_mean, prior_sd) = log_normal(range);
+
         Term {
             name,
             change,
-            prior_mean,
-            prior_sd,
+            prior_mean: range.log_mean(),
+            prior_sd: range.log_sd(),
         }
     };
     words.into_iter().zip(coding.sources()).map(term).collect()
-}
-
-/// Mean and standard deviation, on the log scale, of the log-normal whose central 95 % is `range`.
-fn log_normal(range: &PlausibleRange) -> (f64, f64) {
-    let (lo, hi) = (ln(range.lo), ln(range.hi));
-    ((lo + hi) / 2.0, (hi - lo) / (2.0 * NORMAL_975))
 }

@@ -32,7 +32,10 @@ pub fn first_difference(first: &Path, second: &Path, file: &str) -> Result<Optio
         Some("json") => of_json(&a, &b),
         Some("csv") => of_csv(&a, &b),
         // A file that was altered may be no Parquet any more: then only the bytes differ.
-        Some("parquet") => match (parquet::read_all(&first.join(file)), parquet::read_all(&second.join(file))) {
+        Some("parquet") => match (
+            parquet::read_all(&first.join(file)),
+            parquet::read_all(&second.join(file)),
+        ) {
             (Ok(a), Ok(b)) => of_columns(&a, &b),
             _ => None,
         },
@@ -224,7 +227,10 @@ mod tests {
 
     #[test]
     fn a_text_difference_is_a_line() {
-        assert_eq!(of_lines(b"a\nb\n", b"a\nc\n"), difference("line 2", Some("b"), Some("c")));
+        assert_eq!(
+            of_lines(b"a\nb\n", b"a\nc\n"),
+            difference("line 2", Some("b"), Some("c"))
+        );
         assert_eq!(of_lines(b"a\n", b"a"), difference("line 2", Some(""), None));
     }
 }

@@ -32,13 +32,16 @@ pub enum Look {
 /// `spec_source` is the text that places in the spec point into; without it they are named by
 /// their file alone.
 pub fn render(diagnostics: &[Diagnostic], spec_source: Option<&Source>, look: Look) -> String {
-    let told: Vec<String> = diagnostics.iter().map(|diagnostic| one(diagnostic, spec_source, look)).collect();
+    let told: Vec<String> = diagnostics
+        .iter()
+        .map(|diagnostic| one(diagnostic, spec_source, look))
+        .collect();
     told.join("\n")
 }
 
 fn one(diagnostic: &Diagnostic, spec_source: Option<&Source>, look: Look) -> String {
     let mut out = String::new();
-    let message = format!("{} [{}]", diagnostic.message, diagnostic.code);
+    let message = format!("{} ({})", diagnostic.message, diagnostic.code);
     out.push_str(&paragraph("Problem:", &message, look));
     for place in &diagnostic.places {
         out.push_str(&match (place, spec_source) {
@@ -48,7 +51,10 @@ fn one(diagnostic: &Diagnostic, spec_source: Option<&Source>, look: Look) -> Str
     }
     let more = diagnostic.places_in_all.saturating_sub(diagnostic.places.len());
     if more > 0 {
-        out.push_str(&format!("  and {more} more {}\n", if more == 1 { "place" } else { "places" }));
+        out.push_str(&format!(
+            "  and {more} more {}\n",
+            if more == 1 { "place" } else { "places" }
+        ));
     }
     out.push_str(&paragraph("What to do:", &diagnostic.help, look));
     out
@@ -84,7 +90,11 @@ fn place_in_words(place: &Place) -> String {
 /// The line of a place in the spec, its characters marked and the label beside them.
 fn marked_line(source: &Source, span: &Range<usize>, label: &str, look: Look) -> String {
     // An editor counts columns without the byte-order mark.
-    let mark = if source.text.starts_with('\u{feff}') { '\u{feff}'.len_utf8() } else { 0 };
+    let mark = if source.text.starts_with('\u{feff}') {
+        '\u{feff}'.len_utf8()
+    } else {
+        0
+    };
     let text = &source.text[mark..];
     let span = within_one_line(text, span.start.saturating_sub(mark)..span.end.saturating_sub(mark));
     let line_start = text[..span.start].rfind('\n').map_or(0, |newline| newline + 1);
@@ -93,7 +103,11 @@ fn marked_line(source: &Source, span: &Range<usize>, label: &str, look: Look) ->
     // Beside marks that stand far to the right a label would leave the window: it gets its own line.
     let fits = column + label.chars().count() + 8 <= WIDTH;
     let annotation = AnnotationKind::Primary.span(span);
-    let annotation = if fits && !label.is_empty() { annotation.label(label.as_str()) } else { annotation };
+    let annotation = if fits && !label.is_empty() {
+        annotation.label(label.as_str())
+    } else {
+        annotation
+    };
     let snippet = Snippet::source(text).path(clean(&source.file)).annotation(annotation);
     let renderer = match look {
         Look::Plain => Renderer::plain(),
@@ -119,7 +133,9 @@ fn within_one_line(text: &str, span: Range<usize>) -> Range<usize> {
     while !text.is_char_boundary(end) {
         end -= 1;
     }
-    let line_end = text[start..end].find(['\n', '\r']).map_or(end, |newline| start + newline);
+    let line_end = text[start..end]
+        .find(['\n', '\r'])
+        .map_or(end, |newline| start + newline);
     start..line_end
 }
 

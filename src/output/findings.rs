@@ -1,6 +1,7 @@
 //! Everything that a fit concluded, in one value: every writer reads it, none computes a statistic.
 
 use crate::answer::{Answer, BaselineRate, RateRatio};
+use crate::check::UnitsCheck;
 use crate::design::Audit;
 use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
@@ -34,7 +35,7 @@ pub struct Findings {
     /// The rate at the baseline, per `study.per`.
     pub baseline_rate: BaselineRate,
     /// Predictive check of each unit.
-    pub units: UnitsFinding,
+    pub units: UnitsCheck,
     /// How sampling went and why it stopped.
     pub sampling: SamplingFinding,
     /// The mode, and how far the draws moved from its Laplace approximation.
@@ -109,57 +110,6 @@ pub struct CoefficientFinding {
     pub laplace_sd: f64,
 }
 
-/// The predictive check of every unit.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
-#[serde(deny_unknown_fields)]
-pub struct UnitsFinding {
-    /// One entry for each unit, in order of first appearance.
-    pub units: Vec<UnitFinding>,
-    /// Units whose count lies outside its predictive interval.
-    pub outside: usize,
-    /// How many would, by chance, if the model were right.
-    pub outside_by_chance: f64,
-    /// Posterior draws that the check used.
-    pub draws_used: usize,
-}
-
-/// The predictive check of one unit.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
-#[serde(deny_unknown_fields)]
-pub struct UnitFinding {
-    /// The unit.
-    pub unit: String,
-    /// Its rows (each counted as often as it stands for others).
-    pub rows: f64,
-    /// Its exposure.
-    pub exposure: f64,
-    /// Its count.
-    pub observed: f64,
-    /// Posterior mean of its expected count.
-    pub expected: f64,
-    /// Lower end of the predictive interval.
-    pub lower: f64,
-    /// Upper end of the predictive interval.
-    pub upper: f64,
-    /// Predictive probability of a smaller count plus half that of the same count (mid-p):
-    /// near 0 the count is unusually low, near 1 unusually high.
-    pub tail_probability: f64,
-    /// Where the count lies.
-    pub state: UnitState,
-}
-
-/// Where a unit's count lies in its predictive interval.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
-#[serde(rename_all = "kebab-case")]
-pub enum UnitState {
-    /// Within it, ends included.
-    Inside,
-    /// Below its lower end.
-    Below,
-    /// Above its upper end.
-    Above,
-}
-
 /// How sampling went.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
@@ -207,9 +157,7 @@ pub enum StopReason {
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct ModeFinding {
-    /// Why the search stopped.
-    pub stopped: String,
-    /// Newton steps taken.
+    /// Newton steps taken to it.
     pub steps: u64,
     /// Log posterior density at the mode, all constants kept.
     pub log_density: f64,

@@ -1,13 +1,15 @@
 //! Takes all that a fit found; gives the run folder, terminal text, JSON, CSV and Parquet.
 
 pub mod compare;
+pub mod diagnostic;
 mod error;
 pub mod files;
-pub mod diagnostic;
 pub mod findings;
+pub mod gather;
 pub mod json;
 pub mod manifest;
 pub mod parquet;
+pub mod replaying;
 pub mod run_folder;
 mod schema;
 pub mod shown;

@@ -5,7 +5,8 @@
 //! probability and its state. No total of incidents is shown anywhere, since the one hidden count
 //! would follow from it by subtraction.
 
-use crate::output::findings::{StudyFacts, UnitFinding};
+use crate::check::UnitCheck;
+use crate::output::findings::StudyFacts;
 use crate::spec::ZeroCounts;
 
 /// What people are shown.
@@ -50,7 +51,7 @@ impl Audience {
     }
 
     /// A unit's count as this audience is shown it.
-    pub fn observed(self, unit: &UnitFinding) -> Observed {
+    pub fn observed(self, unit: &UnitCheck) -> Observed {
         let Audience::SmallCountsHidden { below, zero } = self else {
             return Observed::Count(unit.observed);
         };

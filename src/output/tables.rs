@@ -3,8 +3,9 @@
 //! UTF-8, comma, a header line, one line break (`\n`) after each line. Numbers stand in their
 //! shortest form that reads back to the same 64-bit value; what is absent is an empty cell.
 
+use crate::check::UnitState;
 use crate::output::OutputError;
-use crate::output::findings::{Findings, UnitState};
+use crate::output::findings::Findings;
 use crate::output::shown::{Audience, Observed};
 
 /// `coefficients.csv`: every parameter, on the log scale but for the scatter.

@@ -3,8 +3,10 @@
 //! Every figure is read from the findings; nothing is computed here but its rounding.
 
 use crate::answer::{self, Measured, as_written, figure, level, probability, roughly, whole};
+use crate::check::{UnitCheck, UnitState};
 use crate::design::Audit;
-use crate::output::findings::{CoefficientFinding, Findings, SamplingFinding, StopReason, UnitFinding, UnitState};
+use crate::output::findings::{CoefficientFinding, Findings, SamplingFinding, StopReason};
+use crate::output::gather::NOTE_ON_UNITS;
 use crate::output::shown::{Audience, Observed};
 use crate::output::text::{Align, Line, Page, name, shell_word};
 use std::path::Path;
@@ -118,11 +120,11 @@ fn units(page: &mut Page, findings: &Findings, audience: Audience) {
         roughly(check.outside_by_chance)
     ));
 
-    let is_shown = |unit: &&UnitFinding| matches!(audience.observed(unit), Observed::Count(_));
-    let mut by_tail: Vec<&UnitFinding> = check.units.iter().filter(is_shown).collect();
-    let nearness = |unit: &UnitFinding| unit.tail_probability.min(1.0 - unit.tail_probability);
+    let is_shown = |unit: &&UnitCheck| matches!(audience.observed(unit), Observed::Count(_));
+    let mut by_tail: Vec<&UnitCheck> = check.units.iter().filter(is_shown).collect();
+    let nearness = |unit: &UnitCheck| unit.tail_probability.min(1.0 - unit.tail_probability);
     by_tail.sort_by(|a, b| nearness(a).total_cmp(&nearness(b)));
-    let (inside, outside): (Vec<&UnitFinding>, Vec<&UnitFinding>) =
+    let (inside, outside): (Vec<&UnitCheck>, Vec<&UnitCheck>) =
         by_tail.into_iter().partition(|unit| unit.state == UnitState::Inside);
     let nearest = inside.len().min(NEAREST_SHOWN);
     let listed = outside
@@ -158,13 +160,12 @@ fn units(page: &mut Page, findings: &Findings, audience: Audience) {
             findings.study.hide_counts_below
         ));
     }
-    page.paragraph(
-        "Each count is used twice, to fit the model and then to judge it, so this check is conservative: it misses \
-         some misfits, and a count that lies outside all the same deserves a look. It is no ranking of units.",
-    );
+    if let Some(note) = findings.notes.iter().find(|note| note.code == NOTE_ON_UNITS) {
+        page.paragraph(&note.text);
+    }
 }
 
-fn unit_line(unit: &UnitFinding) -> Line {
+fn unit_line(unit: &UnitCheck) -> Line {
     let state = match unit.state {
         UnitState::Below => "below",
         UnitState::Above => "above",
@@ -255,11 +256,15 @@ fn errors_in_words(s: &SamplingFinding) -> String {
 }
 
 fn notes(page: &mut Page, findings: &Findings) {
-    if findings.notes.is_empty() {
-        return;
+    let mut notes = findings
+        .notes
+        .iter()
+        .filter(|note| note.code != NOTE_ON_UNITS)
+        .peekable();
+    if notes.peek().is_some() {
+        page.heading("To bear in mind");
     }
-    page.heading("To bear in mind");
-    for note in &findings.notes {
+    for note in notes {
         page.item(&note.text);
     }
 }

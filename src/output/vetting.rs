@@ -55,7 +55,9 @@ pub fn text(vetting: &Vetting) -> String {
     counts(&mut page, vetting);
     page.heading("Do the priors deserve a second look?");
     match vetting.prior.state {
-        PriorState::Clear => page.paragraph("Nothing here says so. Whether the ranges above are plausible is yours to judge."),
+        PriorState::Clear => {
+            page.paragraph("Nothing here says so. Whether the ranges above are plausible is yours to judge.")
+        }
         PriorState::Look => {
             for reason in &vetting.prior.reasons {
                 page.item(reason);
@@ -74,10 +76,18 @@ fn ranges(page: &mut Page, vetting: &Vetting) {
         ("to", Align::Right),
     ];
     let cells = |label: String, range: &PriorRange| {
-        Line::Cells(vec![label, roughly(range.lower), roughly(range.median), roughly(range.upper)])
+        Line::Cells(vec![
+            label,
+            roughly(range.lower),
+            roughly(range.median),
+            roughly(range.upper),
+        ])
     };
     let prior = &vetting.prior;
-    let mut lines = vec![cells(format!("rate at the baseline, {}", per(vetting)), &prior.baseline_rate)];
+    let mut lines = vec![cells(
+        format!("rate at the baseline, {}", per(vetting)),
+        &prior.baseline_rate,
+    )];
     lines.push(cells("rate over all rows".to_owned(), &prior.expected_rate));
     for ratio in &prior.rate_ratios {
         lines.push(cells(format!("rate ratio, {}", name(&ratio.term)), &ratio.ratio));

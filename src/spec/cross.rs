@@ -4,9 +4,10 @@
 use std::ops::Range;
 
 use super::fault::{AnswerFault, JointFault, SpecFault};
-use super::fields::{Faults, nearest};
+use super::fields::Faults;
 use super::predictor::{CovariateDraft, JointDraft, merged_into};
 use super::study::{At, Data, Exposure, Incidents};
+use super::values::nearest;
 
 /// Parameters that every fit may have: no term can share their name.
 const RESERVED: [&str; 3] = ["baseline", "scatter", "spread"];
@@ -81,12 +82,25 @@ pub(super) fn check_counts_column(
     let Some(counts) = incidents.map(|incidents| &incidents.column.value) else {
         return;
     };
-    let exposure = exposure.and_then(Option::as_ref).map(|exposure| ("`column` in [exposure]", &exposure.column));
+    let exposure = exposure
+        .and_then(Option::as_ref)
+        .map(|exposure| ("`column` in [exposure]", &exposure.column));
     let unit = data.map(|data| ("`unit` in [data]", &data.unit));
-    let stands_for = data.and_then(|data| data.stands_for.as_ref()).map(|column| ("`stands_for` in [data]", column));
+    let period = data
+        .and_then(|data| data.period.as_ref())
+        .map(|column| ("`period` in [data]", column));
+    let stands_for = data
+        .and_then(|data| data.stands_for.as_ref())
+        .map(|column| ("`stands_for` in [data]", column));
     let columns = covariates.iter().filter_map(|covariate| covariate.column.as_ref());
     let covariates = columns.map(|column| ("`column` in [[covariate]]", column));
-    for (key, column) in exposure.into_iter().chain(unit).chain(stands_for).chain(covariates) {
+    for (key, column) in exposure
+        .into_iter()
+        .chain(unit)
+        .chain(period)
+        .chain(stands_for)
+        .chain(covariates)
+    {
         if column.value == *counts {
             faults.push(SpecFault::CountsReused {
                 column: counts.clone(),
@@ -104,7 +118,9 @@ pub(super) fn check_answer(
     joints: &[JointDraft],
     faults: &mut Faults,
 ) {
-    let readable = covariates.iter().all(|covariate| covariate.column.is_some() && covariate.form.is_some());
+    let readable = covariates
+        .iter()
+        .all(|covariate| covariate.column.is_some() && covariate.form.is_some());
     if !readable || joints.iter().any(|joint| joint.of.is_none()) {
         // The term that is meant may be one that could not be read.
         return;
@@ -140,8 +156,15 @@ pub(super) fn check_answer(
         Part::No(why) => Some(why),
         _ => None,
     });
-    let why = refused.unwrap_or_else(|| AnswerFault::Unknown {
-        nearest: nearest(name, terms.iter().map(String::as_str)).map(str::to_string),
+    let why = refused.unwrap_or_else(|| {
+        // Levels are taken as they are spelt, so that the likeness is that of the columns.
+        let level = name
+            .split_once('=')
+            .map_or(ANY_LEVEL, |(_, rest)| rest.split(WITH).next().unwrap_or(rest));
+        let spelt: Vec<String> = terms.iter().map(|term| term.replacen(ANY_LEVEL, level, 1)).collect();
+        AnswerFault::Unknown {
+            nearest: nearest(name, spelt.iter().map(String::as_str)).map(str::to_string),
+        }
     });
     faults.push(SpecFault::NoSuchAnswer {
         answer: answer.clone(),
@@ -161,17 +184,26 @@ enum Part {
 }
 
 fn part(covariate: &CovariateDraft, name: &str) -> Part {
-    let Some(column) = &covariate.column else { return Part::Other };
+    let Some(column) = &covariate.column else {
+        return Part::Other;
+    };
     if covariate.form != Some("category") {
         return if name == column.value { Part::Term } else { Part::Other };
     }
-    let Some(level) = name.strip_prefix(column.value.as_str()).and_then(|rest| rest.strip_prefix('=')) else {
+    let Some(level) = name
+        .strip_prefix(column.value.as_str())
+        .and_then(|rest| rest.strip_prefix('='))
+    else {
         return Part::Other;
     };
     if level.is_empty() {
         return Part::Other;
     }
-    if covariate.reference.as_ref().is_some_and(|reference| reference.value == level) {
+    if covariate
+        .reference
+        .as_ref()
+        .is_some_and(|reference| reference.value == level)
+    {
         return Part::No(AnswerFault::IsReference {
             level: level.to_string(),
         });
@@ -195,5 +227,7 @@ fn pattern(covariate: &CovariateDraft) -> String {
 }
 
 fn of_column<'c>(covariates: &'c [CovariateDraft], column: &str) -> Option<&'c CovariateDraft> {
-    covariates.iter().find(|covariate| covariate.column.as_ref().is_some_and(|known| known.value == column))
+    covariates
+        .iter()
+        .find(|covariate| covariate.column.as_ref().is_some_and(|known| known.value == column))
 }

@@ -22,6 +22,8 @@ pub enum SpecFault {
         /// What the system said.
         reason: String,
     },
+    /// The file is larger than [`MOST_BYTES`](super::MOST_BYTES).
+    TooLarge,
     /// The file holds nothing but white space and comments.
     Empty,
     /// The file is not UTF-8.
@@ -64,7 +66,9 @@ pub enum SpecFault {
         table: String,
         /// The key.
         key: At<String>,
-        /// The deciding key with its value, as in `as = "category"`.
+        /// The key that decides, as in `as`.
+        decided_by: &'static str,
+        /// The value of that key.
         decided: String,
         /// Values of the deciding key that the key goes with.
         goes_with: &'static [&'static str],
@@ -73,8 +77,6 @@ pub enum SpecFault {
     MissingTable {
         /// Its heading.
         table: String,
-        /// What it is for.
-        meaning: &'static str,
     },
     /// A key that its table needs.
     MissingKey {
@@ -332,6 +334,7 @@ impl SpecFault {
     pub fn span(&self) -> Option<Range<usize>> {
         match self {
             SpecFault::Unreadable { .. }
+            | SpecFault::TooLarge
             | SpecFault::Empty
             | SpecFault::NotUtf8 { .. }
             | SpecFault::MissingTable { .. } => None,

@@ -3,12 +3,12 @@
 use std::ops::Range;
 
 use toml::Spanned;
-use toml::de::{DeArray, DeInteger, DeTable, DeValue};
+use toml::de::{DeArray, DeTable, DeValue};
 
 use super::fault::{KeyHint, RangeFault, SpecFault};
 use super::keys::{Bounds, DefaultValue, KeyInfo, Kind, LeftOut, TableInfo};
 use super::study::At;
-use super::tables::TABLES;
+use super::values::{check_ends, key_hint, nearest, plain_number, type_in_words};
 
 /// The faults found so far.
 pub(super) type Faults = Vec<SpecFault>;
@@ -79,7 +79,8 @@ impl<'a> Fields<'a> {
                         value: info.name.to_string(),
                         span: key.span(),
                     },
-                    decided: format!("{deciding} = \"{decided}\""),
+                    decided_by: deciding,
+                    decided: decided.to_string(),
                     goes_with: info.only_with,
                 });
             }
@@ -112,7 +113,8 @@ impl<'a> Fields<'a> {
         match self.table.get(name) {
             Some(value) => Some((info, value)),
             None => {
-                if info.left_out == LeftOut::Refused {
+                // A key that stands misspelt has been told already.
+                if info.left_out == LeftOut::Refused && !self.misspelt(name) {
                     faults.push(SpecFault::MissingKey {
                         table: self.info.heading(),
                         key: name.to_string(),
@@ -134,7 +136,11 @@ impl<'a> Fields<'a> {
     /// A list of texts.
     pub fn texts(&self, name: &str, faults: &mut Faults) -> Option<Vec<At<String>>> {
         let (info, value) = self.value(name, faults)?;
-        let at_least = if let Kind::Texts { at_least } = info.kind { at_least } else { 0 };
+        let at_least = if let Kind::Texts { at_least } = info.kind {
+            at_least
+        } else {
+            0
+        };
         self.texts_of(&self.title(name), &info.kind.in_words(), at_least, value, faults)
     }
 
@@ -186,7 +192,11 @@ impl<'a> Fields<'a> {
                 _ => None,
             };
         };
-        let bounds = if let Kind::Number(bounds) = info.kind { bounds } else { Bounds::POSITIVE };
+        let bounds = if let Kind::Number(bounds) = info.kind {
+            bounds
+        } else {
+            Bounds::POSITIVE
+        };
         self.number_of(&self.title(name), &info.kind.in_words(), bounds, value, faults)
     }
 
@@ -201,7 +211,9 @@ impl<'a> Fields<'a> {
         let DeValue::String(text) = value.get_ref() else {
             return self.wrong_type(&self.title(name), &info.kind.in_words(), value, faults);
         };
-        let Kind::Choice(choices, not_yet) = info.kind else { return None };
+        let Kind::Choice(choices, not_yet) = info.kind else {
+            return None;
+        };
         if let Some(choice) = choices.iter().find(|choice| choice.value == text.as_ref()) {
             return Some(choice.value);
         }
@@ -256,7 +268,10 @@ impl<'a> Fields<'a> {
         array: &DeArray<'_>,
         faults: &mut Faults,
     ) -> Option<Result<[f64; 2], RangeFault>> {
-        let [first, second] = array.get(0).zip(array.get(1)).map_or([None; 2], |(a, b)| [Some(a), Some(b)]);
+        let [first, second] = array
+            .get(0)
+            .zip(array.get(1))
+            .map_or([None; 2], |(a, b)| [Some(a), Some(b)]);
         let (Some(first), Some(second), 2) = (first, second, array.len()) else {
             return Some(Err(RangeFault::NotTwo { ends: array.len() }));
         };
@@ -332,8 +347,10 @@ impl<'a> Fields<'a> {
             });
             return None;
         }
-        let texts: Vec<Option<At<String>>> =
-            array.iter().map(|item| self.text_of(key, wanted, item, faults)).collect();
+        let texts: Vec<Option<At<String>>> = array
+            .iter()
+            .map(|item| self.text_of(key, wanted, item, faults))
+            .collect();
         texts.into_iter().collect()
     }
 
@@ -390,6 +407,18 @@ impl<'a> Fields<'a> {
         }
     }
 
+    /// Whether an unknown key of this table is spelt like the known key `name`.
+    fn misspelt(&self, name: &str) -> bool {
+        let unknown = self
+            .table
+            .keys()
+            .map(|key| key.get_ref().as_ref())
+            .filter(|key| self.info.key(key).is_none());
+        unknown
+            .map(|key| key_hint(self.info, key))
+            .any(|hint| matches!(hint, KeyHint::Nearest(near) if near == name))
+    }
+
     fn default(&self, name: &str) -> Option<DefaultValue> {
         // A key that stands but is at fault has no default: its fault has been told.
         match self.info.key(name)?.left_out {
@@ -397,77 +426,4 @@ impl<'a> Fields<'a> {
             _ => None,
         }
     }
-}
-
-/// Whether two finite ends make a range of positive numbers.
-fn check_ends([lo, hi]: [f64; 2]) -> Result<[f64; 2], RangeFault> {
-    if lo <= 0.0 || hi <= 0.0 {
-        Err(RangeFault::NotPositive {
-            end: if lo <= 0.0 { lo } else { hi },
-        })
-    } else if lo > hi {
-        Err(RangeFault::Reversed { lo, hi })
-    } else if lo == hi {
-        Err(RangeFault::Empty { at: lo })
-    } else {
-        Ok([lo, hi])
-    }
-}
-
-/// A number, whole or not; infinite where it is too large for a float.
-pub(super) fn plain_number(value: &DeValue<'_>) -> Option<f64> {
-    match value {
-        DeValue::Integer(integer) => Some(float_of(integer)),
-        DeValue::Float(float) => float.as_str().parse().ok(),
-        _ => None,
-    }
-}
-
-fn float_of(integer: &DeInteger<'_>) -> f64 {
-    if integer.radix() == 10 {
-        // Through the decimal reader, so that whole numbers beyond 64 bits are read too.
-        integer.as_str().parse().unwrap_or(f64::NAN)
-    } else {
-        i64::from_str_radix(integer.as_str(), integer.radix()).map_or(f64::INFINITY, |n| n as f64)
-    }
-}
-
-/// The type of a value, in words.
-pub(super) fn type_in_words(value: &DeValue<'_>) -> &'static str {
-    match value {
-        DeValue::String(_) => "a text",
-        DeValue::Integer(_) => "a whole number",
-        DeValue::Float(_) => "a number",
-        DeValue::Boolean(_) => "true or false",
-        DeValue::Datetime(_) => "a date",
-        DeValue::Array(_) => "a list",
-        DeValue::Table(_) => "a table",
-    }
-}
-
-/// What an unknown key may have been meant for.
-fn key_hint(info: &TableInfo, name: &str) -> KeyHint {
-    if let Some(near) = nearest(name, info.keys.iter().map(|key| key.name)) {
-        return KeyHint::Nearest(near);
-    }
-    match TABLES.iter().find(|table| table.key(name).is_some()) {
-        Some(table) => KeyHint::BelongsTo(table.heading()),
-        None => KeyHint::Nothing,
-    }
-}
-
-/// The candidate that is spelt most like `word`, if one is near enough to be meant.
-///
-/// Jaro-Winkler similarity of at least 0.8 (from experience with the spec's own words: `steps` and
-/// `step` are 0.96 alike, `colunm` and `column` 0.96, `title` and `tau` 0.58); the first of equals.
-pub(super) fn nearest<'c>(word: &str, candidates: impl Iterator<Item = &'c str>) -> Option<&'c str> {
-    let lowered = word.to_lowercase();
-    let mut best: Option<(&str, f64)> = None;
-    for candidate in candidates {
-        let likeness = strsim::jaro_winkler(&lowered, &candidate.to_lowercase());
-        if likeness >= 0.8 && best.is_none_or(|(_, so_far)| likeness > so_far) {
-            best = Some((candidate, likeness));
-        }
-    }
-    best.map(|(candidate, _)| candidate)
 }

@@ -180,24 +180,29 @@ impl Bounds {
         x.is_finite() && above && below
     }
 
-    /// In words, to follow "a number": `above 0`, `from 0.001 to 0.5`; empty where there is no limit.
+    /// In words: `a finite number above 0`, `a number from 0.001 to 0.5`.
     pub fn in_words(&self) -> String {
-        match (self.lower, self.upper) {
-            (End::Included(from), End::Included(to)) => format!("from {from} to {to}"),
-            (lower, upper) => {
-                let lower = match lower {
-                    End::Unbounded => None,
-                    End::Excluded(end) => Some(format!("above {end}")),
-                    End::Included(end) => Some(format!("{end} or more")),
-                };
-                let upper = match upper {
-                    End::Unbounded => None,
-                    End::Excluded(end) => Some(format!("below {end}")),
-                    End::Included(end) => Some(format!("{end} at most")),
-                };
-                lower.into_iter().chain(upper).collect::<Vec<_>>().join(" and ")
-            }
+        if let (End::Included(from), End::Included(to)) = (self.lower, self.upper) {
+            return format!("a number from {from} to {to}");
         }
+        let lower = match self.lower {
+            End::Unbounded => None,
+            End::Excluded(end) => Some(format!("above {end}")),
+            End::Included(end) => Some(format!("from {end} on")),
+        };
+        let upper = match self.upper {
+            End::Unbounded => None,
+            End::Excluded(end) => Some(format!("below {end}")),
+            End::Included(end) => Some(format!("up to {end}")),
+        };
+        // Infinity is above 0 too, so where an end is open the words must shut it out.
+        let number = if lower.is_some() && upper.is_some() {
+            "a number"
+        } else {
+            "a finite number"
+        };
+        let ends: Vec<String> = lower.into_iter().chain(upper).collect();
+        format!("{number} {}", ends.join(" and ")).trim_end().to_string()
     }
 }
 
@@ -207,12 +212,12 @@ impl TableInfo {
         self.keys.iter().find(|key| key.name == name)
     }
 
-    /// As it stands in a spec: `[study]`, `[[covariate]]`, or `earlier`.
+    /// As it stands in a spec: `[study]`, `[[covariate]]`; the key in backticks for a table written in place.
     pub fn heading(&self) -> String {
         match self.times {
             Times::Once | Times::AtMostOnce => format!("[{}]", self.name),
             Times::Many => format!("[[{}]]", self.name),
-            Times::Inline => self.name.to_string(),
+            Times::Inline => format!("`{}`", self.name),
         }
     }
 }
@@ -226,11 +231,11 @@ impl Kind {
             Kind::Texts { at_least } => format!("a list of at least {at_least} texts in quotes"),
             Kind::TwoTexts => "a list of two texts in quotes".into(),
             Kind::Whole { from, to } => format!("a whole number from {} to {}", grouped(*from), grouped(*to)),
-            Kind::Number(bounds) => format!("a number {}", bounds.in_words()).trim_end().to_string(),
+            Kind::Number(bounds) => bounds.in_words(),
             Kind::Choice(choices, _) => one_of(&choices.iter().map(|choice| choice.value).collect::<Vec<_>>()),
             Kind::Switch => "true or false".into(),
             Kind::Range => "two numbers above 0, the smaller first".into(),
-            Kind::Centre => "a number, or \"mean\"".into(),
+            Kind::Centre => "a finite number, or \"mean\"".into(),
             Kind::Merge => "a table of new level names, each with a list of levels".into(),
             Kind::Keep => "a table of columns, each with a list of levels or { from = …, to = … }".into(),
             Kind::Inline(info) => {

@@ -11,15 +11,21 @@ mod keys;
 mod predictor;
 mod prior;
 mod read;
+mod reference;
+mod schema;
 mod sections;
 mod study;
 mod tables;
 mod told;
+mod values;
+mod words;
 
 pub use fault::{
     AnswerFault, EarlierFault, Encoding, JointFault, KeyHint, MergeFault, RangeFault, SpecError, SpecFault,
 };
 pub use keys::{Bounds, Choice, DefaultValue, End, KeyInfo, Kind, LeftOut, NotYet, TableInfo, Times};
-pub use read::{parse, read};
+pub use read::{MOST_BYTES, parse, read};
+pub use reference::{EXAMPLE, reference_markdown};
+pub use schema::json_schema;
 pub use study::*;
 pub use tables::{TABLES, TABLES_NOT_YET};

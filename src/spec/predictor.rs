@@ -73,11 +73,11 @@ pub(super) fn read_covariate(fields: &Fields<'_>, faults: &mut Faults) -> Covari
         Some("number") => {
             let centre = read_centre(fields, Bounds::NONE, faults);
             let step = fields.number("step", faults);
-            centre.zip(step).map(|(centre, step)| CovariateKind::Number { centre, step })
+            centre
+                .zip(step)
+                .map(|(centre, step)| CovariateKind::Number { centre, step })
         }
-        Some(_) => {
-            read_centre(fields, Bounds::POSITIVE, faults).map(|centre| CovariateKind::LogNumber { centre })
-        }
+        Some(_) => read_centre(fields, Bounds::POSITIVE, faults).map(|centre| CovariateKind::LogNumber { centre }),
         None => None,
     };
     CovariateDraft {
@@ -107,9 +107,11 @@ fn read_centre(fields: &Fields<'_>, bounds: Bounds, faults: &mut Faults) -> Opti
     let wanted = if bounds == Bounds::NONE {
         info.kind.in_words()
     } else {
-        format!("a number {}, or \"mean\"", bounds.in_words())
+        format!("{}, or \"mean\"", bounds.in_words())
     };
-    fields.number_of(&fields.title("centre"), &wanted, bounds, value, faults).map(Centre::Value)
+    fields
+        .number_of(&fields.title("centre"), &wanted, bounds, value, faults)
+        .map(Centre::Value)
 }
 
 /// The merges of a category, each level taken in once and the reference left.
@@ -126,10 +128,7 @@ fn read_merge(
     for (into, value) in in_order(table) {
         let key = format!("`merge.{}` in {}", into.get_ref(), fields.info.heading());
         if into.get_ref().trim().is_empty() {
-            faults.push(SpecFault::Blank {
-                key,
-                span: into.span(),
-            });
+            faults.push(SpecFault::Blank { key, span: into.span() });
             continue;
         }
         if let Some(levels) = fields.texts_of(&key, "a list of levels in quotes", 1, value, faults) {

@@ -1,12 +1,14 @@
 //! From a file or a text to a checked [`Spec`], or to all that is wrong with it.
 
+use std::fs::File;
+use std::io::Read;
 use std::path::Path;
 
 use toml::de::{DeTable, DeValue};
 
 use super::cross::{check_answer, check_counts_column, check_terms};
 use super::fault::{Encoding, KeyHint, SpecError, SpecFault};
-use super::fields::{Faults, Fields, nearest, type_in_words};
+use super::fields::{Faults, Fields};
 use super::keys::{TableInfo, Times};
 use super::predictor::{CovariateDraft, JointDraft, read_covariate, read_joint};
 use super::sections::{
@@ -14,11 +16,16 @@ use super::sections::{
 };
 use super::study::{At, Source, Spec};
 use super::tables::{TABLES, TABLES_NOT_YET};
+use super::values::{nearest, type_in_words};
+
+/// The largest spec that is read, in bytes. A table named where the spec is meant would otherwise be
+/// taken in whole, only to be refused line by line.
+pub const MOST_BYTES: u64 = 1 << 20;
 
 /// Reads and checks a spec file.
 ///
 /// # Errors
-/// The file cannot be read, is not UTF-8 (a byte-order mark of UTF-8 is accepted), or [`parse`]
+/// The file cannot be read, is larger than [`MOST_BYTES`], is not UTF-8 (a byte-order mark of UTF-8 is accepted), or [`parse`]
 /// refuses its text.
 pub fn read(path: &Path) -> Result<Spec, SpecError> {
     let file = path.display().to_string();
@@ -29,11 +36,17 @@ pub fn read(path: &Path) -> Result<Spec, SpecError> {
         },
         faults: vec![fault],
     };
-    let bytes = std::fs::read(path).map_err(|error| {
-        refuse(SpecFault::Unreadable {
-            reason: error.to_string(),
-        })
-    })?;
+    let mut bytes = Vec::new();
+    File::open(path)
+        .and_then(|file| file.take(MOST_BYTES + 1).read_to_end(&mut bytes))
+        .map_err(|error| {
+            refuse(SpecFault::Unreadable {
+                reason: error.to_string(),
+            })
+        })?;
+    if bytes.len() as u64 > MOST_BYTES {
+        return Err(refuse(SpecFault::TooLarge));
+    }
     match String::from_utf8(bytes) {
         Ok(text) => parse(&file, &text),
         Err(error) => {
@@ -96,19 +109,40 @@ fn read_root(source: &Source, root: &DeTable<'_>, faults: &mut Faults) -> Option
         nothing: &DeTable::new(),
         text: &source.text,
     };
-    let study = tables.one("study", faults).and_then(|fields| read_study(&fields, faults));
+    let study = tables
+        .one("study", faults)
+        .and_then(|fields| read_study(&fields, faults));
     let data = tables.one("data", faults).and_then(|fields| read_data(&fields, faults));
-    let incidents = tables.one("incidents", faults).and_then(|fields| read_incidents(&fields, faults));
-    let exposure = tables.one("exposure", faults).map(|fields| read_exposure(&fields, faults));
-    let family = tables.one("family", faults).map(|fields| read_family(&fields, faults)).unwrap_or_default();
-    let baseline = tables.one("baseline", faults).and_then(|fields| read_baseline(&fields, family.kind, faults));
+    let incidents = tables
+        .one("incidents", faults)
+        .and_then(|fields| read_incidents(&fields, faults));
+    let exposure = tables
+        .one("exposure", faults)
+        .map(|fields| read_exposure(&fields, faults));
+    let family = tables
+        .one("family", faults)
+        .map(|fields| read_family(&fields, faults))
+        .unwrap_or_default();
+    let baseline = tables
+        .one("baseline", faults)
+        .and_then(|fields| read_baseline(&fields, family.kind, faults));
     let covariates = tables.many("covariate", faults, |fields, faults| read_covariate(fields, faults));
     let joints = tables.many("joint", faults, |fields, faults| read_joint(fields, faults));
-    let sampling = tables.or_defaults("sampling", faults).and_then(|fields| read_sampling(&fields, faults));
-    let report = tables.or_defaults("report", faults).and_then(|fields| read_report(&fields, faults));
+    let sampling = tables
+        .or_defaults("sampling", faults)
+        .and_then(|fields| read_sampling(&fields, faults));
+    let report = tables
+        .or_defaults("report", faults)
+        .and_then(|fields| read_report(&fields, faults));
 
     check_terms(&covariates, &joints, faults);
-    check_counts_column(incidents.as_ref(), exposure.as_ref(), data.as_ref(), &covariates, faults);
+    check_counts_column(
+        incidents.as_ref(),
+        exposure.as_ref(),
+        data.as_ref(),
+        &covariates,
+        faults,
+    );
     if let Some(study) = &study {
         check_answer(&study.answer, &covariates, &joints, faults);
     }
@@ -123,7 +157,10 @@ fn read_root(source: &Source, root: &DeTable<'_>, faults: &mut Faults) -> Option
         },
         family: family.family?,
         baseline: baseline?,
-        covariates: covariates.into_iter().map(CovariateDraft::finish).collect::<Option<_>>()?,
+        covariates: covariates
+            .into_iter()
+            .map(CovariateDraft::finish)
+            .collect::<Option<_>>()?,
         joints: joints.into_iter().map(JointDraft::finish).collect::<Option<_>>()?,
         sampling: sampling?,
         report: report?,
@@ -151,11 +188,13 @@ impl<'a> Tables<'a> {
                 }
             },
             None => {
-                if info.times == Times::Once {
-                    faults.push(SpecFault::MissingTable {
-                        table: info.heading(),
-                        meaning: info.meaning,
-                    });
+                // A table that stands misspelt has been told already.
+                let misspelt = self
+                    .root
+                    .keys()
+                    .any(|key| info_of(key.get_ref()).is_none() && meant(key.get_ref()) == Some(name));
+                if info.times == Times::Once && !misspelt {
+                    faults.push(SpecFault::MissingTable { table: info.heading() });
                 }
                 None
             }
@@ -197,12 +236,17 @@ fn info_of(name: &str) -> Option<&'static TableInfo> {
     TABLES.iter().find(|info| info.name == name)
 }
 
+/// The table that is spelt like an unknown name.
+fn meant(name: &str) -> Option<&'static str> {
+    nearest(name, TABLES.iter().map(|table| table.name))
+}
+
 /// `[covariate]` for `[[covariate]]`, `study = 3` for `[study]`.
 fn wrong_shape(info: &TableInfo, found: &DeValue<'_>, span: std::ops::Range<usize>) -> SpecFault {
     SpecFault::WrongType {
         key: format!("`{}`", info.name),
         wanted: match info.times {
-            Times::Many => format!("a table under the heading {}, one for each", info.heading()),
+            Times::Many => format!("tables under the heading {}", info.heading()),
             _ => format!("one table under the heading {}", info.heading()),
         },
         found: type_in_words(found),
@@ -232,7 +276,7 @@ fn tell_unknown_tables(root: &DeTable<'_>, faults: &mut Faults) {
         }
         let hint = match TABLES.iter().find(|table| table.key(name).is_some()) {
             Some(table) => KeyHint::BelongsTo(table.heading()),
-            None => match nearest(name, TABLES.iter().map(|table| table.name)) {
+            None => match meant(name) {
                 Some(near) => KeyHint::Nearest(near),
                 None => KeyHint::Nothing,
             },

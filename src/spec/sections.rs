@@ -139,7 +139,11 @@ pub(super) fn read_exposure(fields: &Fields<'_>, faults: &mut Faults) -> Option<
     Some(Exposure {
         column: column?,
         per: per?,
-        chances: if one_each? { Chances::OneIncidentEach } else { Chances::Many },
+        chances: if one_each? {
+            Chances::OneIncidentEach
+        } else {
+            Chances::Many
+        },
     })
 }
 
@@ -162,10 +166,12 @@ pub(super) fn read_family(fields: &Fields<'_>, faults: &mut Faults) -> FamilyDra
         Some(_) => {
             let scatter_up_to = fields.number("scatter_up_to", faults);
             let standing = read_standing(fields, faults);
-            scatter_up_to.zip(standing).map(|(scatter_up_to, standing)| Family::NegativeBinomial {
-                scatter_up_to,
-                standing,
-            })
+            scatter_up_to
+                .zip(standing)
+                .map(|(scatter_up_to, standing)| Family::NegativeBinomial {
+                    scatter_up_to,
+                    standing,
+                })
         }
         None => None,
     };
@@ -173,11 +179,7 @@ pub(super) fn read_family(fields: &Fields<'_>, faults: &mut Faults) -> FamilyDra
 }
 
 /// Reads `[baseline]`; `kind` is that of the family, where it is known.
-pub(super) fn read_baseline(
-    fields: &Fields<'_>,
-    kind: Option<&'static str>,
-    faults: &mut Faults,
-) -> Option<Baseline> {
+pub(super) fn read_baseline(fields: &Fields<'_>, kind: Option<&'static str>, faults: &mut Faults) -> Option<Baseline> {
     let standing = read_standing(fields, faults);
     match (fields.place("plausible_rate"), fields.place("earlier")) {
         (Some(range), Some(earlier)) => {
@@ -252,7 +254,11 @@ pub(super) fn read_report(fields: &Fields<'_>, faults: &mut Faults) -> Option<Re
     Some(Reporting {
         interval: interval?,
         hide_counts_below: u64::try_from(hide_counts_below?).ok()?,
-        zero_counts: if show_zero? { ZeroCounts::Shown } else { ZeroCounts::Hidden },
+        zero_counts: if show_zero? {
+            ZeroCounts::Shown
+        } else {
+            ZeroCounts::Hidden
+        },
     })
 }
 

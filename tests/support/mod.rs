@@ -2,6 +2,7 @@
 #![allow(dead_code, missing_docs)]
 
 use ratewright::answer::{Answer, BaselineRate, RateRatio};
+use ratewright::check::{UnitCheck, UnitState, UnitsCheck};
 use ratewright::design::{Audit, Coding, ColumnCoding, CovariateCoding};
 use ratewright::fit::Draws;
 use ratewright::output::findings::*;
@@ -70,7 +71,7 @@ pub fn findings() -> Findings {
             upper: 20.19,
             at: vec!["decking is plain".into(), "slope_deg is 8".into()],
         },
-        units: UnitsFinding {
+        units: UnitsCheck {
             units: vec![
                 unit("North quay", 31.0, 22.4, (11.0, 37.0), 0.91, UnitState::Inside),
                 unit("=Heron stairs", 58.0, 24.1, (12.0, 40.0), 0.9991, UnitState::Above),
@@ -101,18 +102,18 @@ pub fn findings() -> Findings {
             reference: "normal with Laplace's shape, widened by 1.1".into(),
         },
         mode: ModeFinding {
-            stopped: "gradient vanished".into(),
             steps: 6,
             log_density: -231.25,
             scatter_mode: Some("inside".into()),
             furthest_move: 0.118,
             furthest_term: "scatter".into(),
         },
-        notes: vec![Note {
-            code: "association".into(),
-            text: "A rate ratio tells that rates differ together with a column, not that the column is the cause."
-                .into(),
-        }],
+        notes: ["association", "units-in-sample"]
+            .map(|code| Note {
+                code: code.into(),
+                text: format!("Text of the note {code}."),
+            })
+            .to_vec(),
     }
 }
 
@@ -135,8 +136,8 @@ fn coefficient(term: &str, median: f64, sd: f64) -> CoefficientFinding {
     }
 }
 
-fn unit(name: &str, observed: f64, expected: f64, ends: (f64, f64), tail: f64, state: UnitState) -> UnitFinding {
-    UnitFinding {
+fn unit(name: &str, observed: f64, expected: f64, ends: (f64, f64), tail: f64, state: UnitState) -> UnitCheck {
+    UnitCheck {
         unit: name.to_owned(),
         rows: 1.0,
         exposure: 15_000.0,

@@ -1,0 +1,251 @@
+//! A starter spec for a table that nobody prepared.
+//!
+//! In: a table. Out: the text of a spec that parses and builds with that table as it stands, every
+//! guess told in a comment beside it, for the evaluator to correct.
+
+mod entries;
+mod look;
+mod roles;
+mod write;
+
+use super::build::build;
+use super::fault::{BadCell, DesignError, DesignFault};
+use super::types::Design;
+use crate::diagnostic::{Diagnostic, Place};
+use crate::spec::{self, Spec, SpecError};
+use crate::table::Table;
+use entries::{Entry, LeftOut};
+use roles::NoRole;
+use std::fmt;
+use write::Sheet;
+
+/// A starter spec.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Draft {
+    /// Its text.
+    pub text: String,
+    /// The text as it parses.
+    pub spec: Spec,
+    /// The design that it makes of the table.
+    pub design: Design,
+}
+
+/// A table for which no spec can be drafted.
+#[derive(Debug, Clone, PartialEq)]
+pub struct DraftError {
+    /// The table as the person named it.
+    pub table_file: String,
+    /// Why.
+    pub fault: DraftFault,
+}
+
+/// Why no spec can be drafted.
+#[derive(Debug, Clone, PartialEq)]
+pub enum DraftFault {
+    /// No column could be a count.
+    NoCount {
+        /// The first cell that is no count of each column that is named like one.
+        spoilt: Vec<BadCell>,
+    },
+    /// No column could name the unit of each row.
+    NoUnit,
+    /// Even without covariates the draft is no spec.
+    NoSpec(SpecError),
+    /// Even without covariates the draft does not fit the table.
+    NoDesign(DesignError),
+}
+
+/// Why a text was refused.
+enum Refusal {
+    Spec(SpecError),
+    Design(DesignError),
+}
+
+/// Drafts a spec for `table`, which the spec names as `table.file`.
+///
+/// The draft is checked as a person's spec would be, and covariates that fail are left out with a
+/// comment, until it passes. The same table gives the same text.
+///
+/// # Errors
+/// A table in which no column could be a count, or none could name the unit; or whose rows no
+/// spec fits.
+pub fn draft(table: &Table) -> Result<Draft, DraftError> {
+    let refused = |fault| DraftError {
+        table_file: table.file.clone(),
+        fault,
+    };
+    let facts = look::facts(table);
+    let roles = roles::roles(table, &facts).map_err(|missing| match missing {
+        NoRole::Unit => refused(DraftFault::NoUnit),
+        NoRole::Incidents => {
+            let spoilt = roles::spoilt_counts(table, &facts)
+                .into_iter()
+                .map(|(column, row)| BadCell {
+                    line: table.lines[row],
+                    column: column.name.clone(),
+                    value: column.label(row).into_owned(),
+                });
+            refused(DraftFault::NoCount {
+                spoilt: spoilt.collect(),
+            })
+        }
+    })?;
+    let (mut entries, mut left_out) = entries::entries(&facts, &roles, table.rows());
+    loop {
+        let sheet = Sheet {
+            table,
+            facts: &facts,
+            roles: &roles,
+            entries: &entries,
+            left_out: &left_out,
+        };
+        let refusal = match finished(&sheet) {
+            Ok(draft) => return Ok(draft),
+            Err(refusal) => refusal,
+        };
+        if entries.is_empty() {
+            return Err(refused(match refusal {
+                Refusal::Spec(error) => DraftFault::NoSpec(error),
+                Refusal::Design(error) => DraftFault::NoDesign(error),
+            }));
+        }
+        leave_out(&refusal, &mut entries, &mut left_out);
+    }
+}
+
+/// Writes the draft and checks it: first with the baseline as its answer, then, once the levels
+/// have given the terms their names, with the first term.
+fn finished(sheet: &Sheet) -> Result<Draft, Refusal> {
+    let first = checked(sheet.text(&[]), sheet.table)?;
+    if first.design.terms.is_empty() {
+        return Ok(first);
+    }
+    checked(sheet.text(&first.design.coding.terms), sheet.table)
+}
+
+fn checked(text: String, table: &Table) -> Result<Draft, Refusal> {
+    let spec = spec::parse("draft", &text).map_err(Refusal::Spec)?;
+    let design = build(&spec, table).map_err(Refusal::Design)?;
+    Ok(Draft { text, spec, design })
+}
+
+/// Leaves out the covariates that a refusal names; the last one where it names none.
+fn leave_out(refusal: &Refusal, entries: &mut Vec<Entry>, left_out: &mut Vec<LeftOut>) {
+    let mut at_fault: Vec<LeftOut> = match refusal {
+        Refusal::Spec(_) => Vec::new(),
+        Refusal::Design(error) => error
+            .faults
+            .iter()
+            .flat_map(|fault| columns_at_fault(fault, entries))
+            .collect(),
+    };
+    at_fault.retain(|fault| entries.iter().any(|entry| entry.column == fault.column));
+    if at_fault.is_empty()
+        && let Some(entry) = entries.last()
+    {
+        at_fault.push(LeftOut {
+            column: entry.column.clone(),
+            because: "the spec does not hold with it".to_owned(),
+        });
+    }
+    entries.retain(|entry| at_fault.iter().all(|fault| fault.column != entry.column));
+    for fault in at_fault {
+        // One column may have several faults; the first says enough.
+        if left_out.iter().all(|known| known.column != fault.column) {
+            left_out.push(fault);
+        }
+    }
+}
+
+fn columns_at_fault(fault: &DesignFault, entries: &[Entry]) -> Vec<LeftOut> {
+    let left = |column: &str, because: String| LeftOut {
+        column: column.to_owned(),
+        because,
+    };
+    let of_term = |name: &str| {
+        let makes = |entry: &&Entry| name == entry.column || name.starts_with(&format!("{}=", entry.column));
+        entries
+            .iter()
+            .rfind(makes)
+            .map(|entry| entry.column.clone())
+            .unwrap_or_default()
+    };
+    let few_rows_left = || "the rows without gaps leave too little of it".to_owned();
+    match fault {
+        DesignFault::Collinear { terms } => terms
+            .iter()
+            .map(|term| {
+                left(
+                    &of_term(&term.name),
+                    format!("it follows from {}", term.follows_from.join(", ")),
+                )
+            })
+            .collect(),
+        DesignFault::TakenName { name, .. } => vec![left(&of_term(name), format!("another parameter is named {name}"))],
+        DesignFault::OneLevel { column, .. }
+        | DesignFault::ConstantNumber { column, .. }
+        | DesignFault::ManyLevels { column, .. } => vec![left(column, few_rows_left())],
+        DesignFault::UnknownLevels { unknown, .. } => unknown
+            .iter()
+            .map(|level| left(&level.column, few_rows_left()))
+            .collect(),
+        DesignFault::Cells { rule, cells } => cells
+            .iter()
+            .take(1)
+            .map(|cell| left(&cell.column, rule.message(cells.len())))
+            .collect(),
+        _ => Vec::new(),
+    }
+}
+
+impl DraftError {
+    /// The fault in words.
+    pub fn diagnostics(&self) -> Vec<Diagnostic> {
+        let file = Place::File {
+            file: self.table_file.clone(),
+        };
+        match &self.fault {
+            DraftFault::NoCount { spoilt } => {
+                let place = |cell: &BadCell| Place::Cell {
+                    file: self.table_file.clone(),
+                    line: Some(cell.line),
+                    column: Some(cell.column.clone()),
+                    value: Some(cell.value.clone()),
+                };
+                let places = if spoilt.is_empty() {
+                    vec![file]
+                } else {
+                    spoilt.iter().map(place).collect()
+                };
+                vec![Diagnostic::new(
+                    "draft-no-count",
+                    "no column could be the incident counts",
+                    places,
+                    "a count column holds whole numbers from 0 in every cell that is not empty; correct its cells, or \
+                     write the spec by hand",
+                )]
+            }
+            DraftFault::NoUnit => vec![Diagnostic::new(
+                "draft-no-unit",
+                "no column could say which unit (place, team, school) each row belongs to",
+                vec![file],
+                "add a column with a name or number for each row's unit",
+            )],
+            DraftFault::NoSpec(error) => error.diagnostics(),
+            DraftFault::NoDesign(error) => error.diagnostics(),
+        }
+    }
+}
+
+impl fmt::Display for DraftError {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        let messages: Vec<String> = self
+            .diagnostics()
+            .into_iter()
+            .map(|diagnostic| diagnostic.message)
+            .collect();
+        write!(f, "{}: {}", self.table_file, messages.join("; "))
+    }
+}
+
+impl std::error::Error for DraftError {}

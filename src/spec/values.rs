@@ -1,0 +1,82 @@
+//! Single values: numbers and types as TOML has them, ends of ranges, and names that are spelt alike.
+
+use toml::de::{DeInteger, DeValue};
+
+use super::fault::{KeyHint, RangeFault};
+use super::keys::TableInfo;
+use super::tables::TABLES;
+
+/// Whether two finite ends make a range of positive numbers.
+pub(super) fn check_ends([lo, hi]: [f64; 2]) -> Result<[f64; 2], RangeFault> {
+    if lo <= 0.0 || hi <= 0.0 {
+        Err(RangeFault::NotPositive {
+            end: if lo <= 0.0 { lo } else { hi },
+        })
+    } else if lo > hi {
+        Err(RangeFault::Reversed { lo, hi })
+    } else if lo == hi {
+        Err(RangeFault::Empty { at: lo })
+    } else {
+        Ok([lo, hi])
+    }
+}
+
+/// A number, whole or not; infinite where it is too large for a float.
+pub(super) fn plain_number(value: &DeValue<'_>) -> Option<f64> {
+    match value {
+        DeValue::Integer(integer) => Some(float_of(integer)),
+        DeValue::Float(float) => float.as_str().parse().ok(),
+        _ => None,
+    }
+}
+
+fn float_of(integer: &DeInteger<'_>) -> f64 {
+    if integer.radix() == 10 {
+        // Through the decimal reader, so that whole numbers beyond 64 bits are read too.
+        integer.as_str().parse().unwrap_or(f64::NAN)
+    } else {
+        i64::from_str_radix(integer.as_str(), integer.radix()).map_or(f64::INFINITY, |n| n as f64)
+    }
+}
+
+/// The type of a value, in words.
+pub(super) fn type_in_words(value: &DeValue<'_>) -> &'static str {
+    match value {
+        DeValue::String(_) => "a text",
+        DeValue::Integer(_) => "a whole number",
+        DeValue::Float(_) => "a number",
+        DeValue::Boolean(_) => "true or false",
+        DeValue::Datetime(_) => "a date",
+        DeValue::Array(_) => "a list",
+        DeValue::Table(_) => "a table",
+    }
+}
+
+/// What an unknown key may have been meant for.
+pub(super) fn key_hint(info: &TableInfo, name: &str) -> KeyHint {
+    // The exact name of a key of another table says more than a likeness: `per` is not `period`.
+    if let Some(table) = TABLES.iter().find(|table| table.key(name).is_some()) {
+        return KeyHint::BelongsTo(table.heading());
+    }
+    match nearest(name, info.keys.iter().map(|key| key.name)) {
+        Some(near) => KeyHint::Nearest(near),
+        None => KeyHint::Nothing,
+    }
+}
+
+/// The candidate that is spelt most like `word`, if one is near enough to be meant; the first of
+/// equals.
+///
+/// Near enough is a Jaro-Winkler similarity of at least 0.85: `setp` and `step` are 0.93 alike,
+/// `hide_below` and `hide_counts_below` 0.88, but `colour` and `column`, no slip of the hand, 0.84.
+pub(super) fn nearest<'c>(word: &str, candidates: impl Iterator<Item = &'c str>) -> Option<&'c str> {
+    let lowered = word.to_lowercase();
+    let mut best: Option<(&str, f64)> = None;
+    for candidate in candidates {
+        let likeness = strsim::jaro_winkler(&lowered, &candidate.to_lowercase());
+        if likeness >= 0.85 && best.is_none_or(|(_, so_far)| likeness > so_far) {
+            best = Some((candidate, likeness));
+        }
+    }
+    best.map(|(candidate, _)| candidate)
+}

@@ -1,0 +1,387 @@
+//! The program as it is run: exit codes, streams, runs, replays.
+#![allow(missing_docs)]
+
+use assert_cmd::Command;
+use std::fs;
+use std::path::{Path, PathBuf};
+use std::process::{Output, Stdio};
+use std::sync::OnceLock;
+use tempfile::TempDir;
+
+/// A folder with the invented study of the landings in it.
+fn place() -> TempDir {
+    let place = tempfile::tempdir().unwrap();
+    for file in ["landings.toml", "landings.csv"] {
+        let from = Path::new(env!("CARGO_MANIFEST_DIR"))
+            .join("tests/command_line")
+            .join(file);
+        fs::copy(from, place.path().join(file)).unwrap();
+    }
+    place
+}
+
+fn ratewright(place: &Path, arguments: &[&str]) -> Output {
+    let mut command = Command::cargo_bin("ratewright").unwrap();
+    command.current_dir(place).args(arguments).output().unwrap()
+}
+
+/// A place with a finished run, made once: a fit is the slow part.
+fn finished() -> &'static Path {
+    static PLACE: OnceLock<TempDir> = OnceLock::new();
+    PLACE
+        .get_or_init(|| {
+            let place = place();
+            let output = ratewright(place.path(), &["fit", "landings.toml", "--quiet"]);
+            assert_eq!(output.status.code(), Some(0), "{}", err(&output));
+            fs::write(place.path().join("told.txt"), &output.stdout).unwrap();
+            place
+        })
+        .path()
+}
+
+/// A copy of the finished run, to be tampered with.
+fn copied() -> (TempDir, PathBuf) {
+    let place = place();
+    let run = place.path().join("landings.run");
+    fs::create_dir(&run).unwrap();
+    for entry in fs::read_dir(finished().join("landings.run")).unwrap() {
+        let entry = entry.unwrap();
+        fs::copy(entry.path(), run.join(entry.file_name())).unwrap();
+    }
+    (place, run)
+}
+
+fn out(output: &Output) -> String {
+    String::from_utf8(output.stdout.clone()).unwrap()
+}
+
+fn err(output: &Output) -> String {
+    String::from_utf8(output.stderr.clone()).unwrap()
+}
+
+fn names(folder: &Path) -> Vec<String> {
+    let mut names: Vec<String> = fs::read_dir(folder)
+        .unwrap()
+        .map(|entry| entry.unwrap().file_name().to_string_lossy().into_owned())
+        .collect();
+    names.sort();
+    names
+}
+
+fn replaced(path: &Path, from: &str, to: &str) {
+    let text = fs::read_to_string(path).unwrap();
+    assert!(text.contains(from), "{} has no {from}", path.display());
+    fs::write(path, text.replacen(from, to, 1)).unwrap();
+}
+
+#[test]
+fn fit_tells_the_answer_and_leaves_a_run_beside_the_spec() {
+    let place = finished();
+    let told = fs::read_to_string(place.join("told.txt")).unwrap();
+    let answer = told
+        .find("Where decking is grooved")
+        .or(told.find("The data do not settle"))
+        .unwrap();
+    assert!(answer < told.find("Rate ratios").unwrap());
+    assert!(told.contains("ratewright replay landings.run"), "{told}");
+    assert!(!told.contains('\u{1b}'), "escapes in a file: {told}");
+    assert!(place.join("landings.run/findings.json").is_file());
+}
+
+#[test]
+fn findings_of_a_fit_obey_the_printed_schema() {
+    let output = ratewright(finished(), &["schema", "findings"]);
+    let schema = serde_json::from_slice(&output.stdout).unwrap();
+    let findings = fs::read(finished().join("landings.run/findings.json")).unwrap();
+    let findings: serde_json::Value = serde_json::from_slice(&findings).unwrap();
+    let validator = jsonschema::validator_for(&schema).unwrap();
+    assert!(
+        validator.is_valid(&findings),
+        "{:?}",
+        validator.iter_errors(&findings).next()
+    );
+}
+
+#[test]
+fn json_prints_the_findings_and_nothing_else() {
+    let place = place();
+    let output = ratewright(place.path(), &["fit", "landings.toml", "--json", "--into", "x.run"]);
+    assert_eq!(
+        out(&output),
+        fs::read_to_string(place.path().join("x.run/findings.json")).unwrap()
+    );
+    assert_eq!(err(&output), "");
+}
+
+#[test]
+fn the_bytes_depend_on_no_thread_and_no_kernel_of_the_linear_algebra() {
+    let manifest = fs::read_to_string(finished().join("landings.run/manifest.json")).unwrap();
+    for (threads, kernel) in [("1", "Prescott"), ("2", "Haswell"), ("3", "Nehalem")] {
+        let place = place();
+        let mut command = Command::cargo_bin("ratewright").unwrap();
+        command
+            .current_dir(place.path())
+            .env("OPENBLAS_CORETYPE", kernel)
+            .args(["fit", "landings.toml", "--quiet", "--threads", threads]);
+        command.assert().success();
+        assert_eq!(
+            fs::read_to_string(place.path().join("landings.run/manifest.json")).unwrap(),
+            manifest
+        );
+    }
+}
+
+#[test]
+fn whole_shows_small_counts_and_its_replay_agrees() {
+    let place = place();
+    let output = ratewright(place.path(), &["fit", "landings.toml", "--whole", "--quiet"]);
+    assert_eq!(output.status.code(), Some(0), "{}", err(&output));
+    let whole = fs::read_to_string(place.path().join("landings.run/units.csv")).unwrap();
+    let hidden = fs::read_to_string(finished().join("landings.run/units.csv")).unwrap();
+    assert!(hidden.contains(",hidden\n") && !whole.contains(",hidden\n"), "{hidden}");
+    let replay = ratewright(place.path(), &["replay", "landings.run"]);
+    assert_eq!(replay.status.code(), Some(0), "{}", out(&replay));
+}
+
+#[test]
+fn a_replay_needs_the_run_alone() {
+    let (place, _) = copied();
+    fs::remove_file(place.path().join("landings.toml")).unwrap();
+    fs::remove_file(place.path().join("landings.csv")).unwrap();
+    let replay = ratewright(place.path(), &["replay", "landings.run"]);
+    assert_eq!(replay.status.code(), Some(0), "{}{}", out(&replay), err(&replay));
+    insta::assert_snapshot!(out(&replay), @"The replay agrees: all 8 hashed files came out again to the last byte.");
+    assert_eq!(names(place.path()), ["landings.run"]);
+}
+
+#[test]
+fn a_replay_tells_an_altered_table_by_its_cell() {
+    let (place, run) = copied();
+    replaced(&run.join("units.csv"), "North quay,2,", "North quay,3,");
+    let replay = ratewright(place.path(), &["replay", "landings.run"]);
+    assert_eq!(replay.status.code(), Some(3));
+    insta::assert_snapshot!(out(&replay));
+}
+
+#[test]
+fn a_replay_tells_altered_findings_by_their_pointer() {
+    let (place, run) = copied();
+    replaced(&run.join("findings.json"), "\"chains\": 4", "\"chains\": 5");
+    let replay = ratewright(place.path(), &["replay", "landings.run"]);
+    assert_eq!(replay.status.code(), Some(3));
+    insta::assert_snapshot!(out(&replay));
+}
+
+#[test]
+fn a_replay_tells_an_altered_start_without_running_it() {
+    for file in ["spec.toml", "rows.parquet"] {
+        let (place, run) = copied();
+        fs::write(run.join(file), "nothing of use").unwrap();
+        let replay = ratewright(place.path(), &["replay", "landings.run"]);
+        assert_eq!(replay.status.code(), Some(3), "{}", err(&replay));
+        assert!(out(&replay).contains(&format!("file: {file}")), "{}", out(&replay));
+        let words: Vec<String> = out(&replay).split_whitespace().map(str::to_owned).collect();
+        assert!(
+            words.join(" ").contains("was altered after the run"),
+            "{}",
+            out(&replay)
+        );
+    }
+}
+
+#[test]
+fn a_replay_tells_an_altered_manifest() {
+    let (place, run) = copied();
+    replaced(&run.join("manifest.json"), "\"seed\": 48151", "\"seed\": 48152");
+    let replay = ratewright(place.path(), &["replay", "landings.run"]);
+    assert_eq!(replay.status.code(), Some(3));
+    assert!(out(&replay).contains("place: /seed"), "{}", out(&replay));
+    assert!(
+        out(&replay).contains("manifest.json was altered after the run"),
+        "{}",
+        out(&replay)
+    );
+}
+
+#[test]
+fn a_replay_of_data_that_moved_on_tells_the_row() {
+    let (place, _) = copied();
+    let same = ratewright(place.path(), &["replay", "landings.run", "--data", "landings.csv"]);
+    assert_eq!(same.status.code(), Some(0), "{}{}", out(&same), err(&same));
+    let table = fs::read_to_string(place.path().join("landings.csv")).unwrap();
+    let second_row = table.lines().nth(2).unwrap().to_owned();
+    let moved = second_row.replace(",autumn,", ",autumn,1");
+    fs::write(place.path().join("landings.csv"), table.replace(&second_row, &moved)).unwrap();
+    let replay = ratewright(place.path(), &["replay", "landings.run", "--data", "landings.csv"]);
+    assert_eq!(replay.status.code(), Some(3));
+    insta::assert_snapshot!(out(&replay));
+}
+
+#[test]
+fn a_replay_of_something_else_is_wrong_input() {
+    let place = place();
+    for run in [".", "landings.csv", "no such.run"] {
+        let replay = ratewright(place.path(), &["replay", run]);
+        assert_eq!(replay.status.code(), Some(2), "{run}: {}", err(&replay));
+        assert!(err(&replay).contains("manifest.json"), "{}", err(&replay));
+    }
+}
+
+#[test]
+fn vet_shows_what_the_priors_imply_and_no_count() {
+    let output = ratewright(place().path(), &["vet", "landings.toml"]);
+    assert_eq!(output.status.code(), Some(0), "{}", err(&output));
+    insta::assert_snapshot!(out(&output));
+}
+
+#[test]
+fn vet_says_the_same_whatever_the_outcome() {
+    let place = place();
+    let before = out(&ratewright(place.path(), &["vet", "landings.toml"]));
+    let path = place.path().join("landings.csv");
+    let table = fs::read_to_string(&path).unwrap();
+    let doubled: Vec<String> = table
+        .lines()
+        .map(|line| {
+            let mut cells: Vec<String> = line.split(',').map(str::to_owned).collect();
+            if let Ok(count) = cells[3].parse::<u64>() {
+                cells[3] = (2 * count + 1).to_string();
+            }
+            cells.join(",")
+        })
+        .collect();
+    fs::write(&path, doubled.join("\n")).unwrap();
+    assert_ne!(fs::read_to_string(&path).unwrap(), table);
+    assert_eq!(out(&ratewright(place.path(), &["vet", "landings.toml"])), before);
+}
+
+#[test]
+fn vet_as_json_is_json() {
+    let output = ratewright(place().path(), &["vet", "landings.toml", "--json"]);
+    let vetting: serde_json::Value = serde_json::from_slice(&output.stdout).unwrap();
+    assert_eq!(vetting["data"]["rows_used"], 24);
+    assert_eq!(vetting["prior"]["state"], "clear");
+}
+
+#[test]
+fn a_draft_passes_vet_and_is_never_written_over() {
+    let place = place();
+    fs::create_dir(place.path().join("specs")).unwrap();
+    let draft = ratewright(place.path(), &["draft", "landings.csv", "--into", "specs/new.toml"]);
+    assert_eq!(draft.status.code(), Some(0), "{}", err(&draft));
+    assert_eq!(out(&draft), "");
+    let vet = ratewright(place.path(), &["vet", "specs/new.toml"]);
+    assert_eq!(vet.status.code(), Some(0), "{}", err(&vet));
+    assert!(out(&vet).contains("provisional"), "{}", out(&vet));
+    let again = ratewright(place.path(), &["draft", "landings.csv", "--into", "specs/new.toml"]);
+    assert_eq!(again.status.code(), Some(1), "{}", err(&again));
+    assert!(err(&again).contains("exists"), "{}", err(&again));
+    let printed = ratewright(place.path(), &["draft", "landings.csv"]);
+    assert!(out(&printed).contains("file = \"landings.csv\""), "{}", out(&printed));
+}
+
+#[test]
+fn wrong_input_is_told_on_standard_error_and_nothing_is_written() {
+    let place = place();
+    replaced(
+        &place.path().join("landings.toml"),
+        "reference = \"plain\"",
+        "reference = \"plane\"",
+    );
+    let output = ratewright(place.path(), &["fit", "landings.toml"]);
+    assert_eq!((output.status.code(), out(&output).as_str()), (Some(2), ""));
+    assert!(
+        err(&output).contains("landings.toml:") && err(&output).contains("plane"),
+        "{}",
+        err(&output)
+    );
+    assert_eq!(names(place.path()), ["landings.csv", "landings.toml"]);
+    assert_eq!(
+        ratewright(place.path(), &["fit", "no such.toml"]).status.code(),
+        Some(2)
+    );
+    assert_eq!(ratewright(place.path(), &["fit"]).status.code(), Some(2));
+    assert_eq!(ratewright(place.path(), &["--help"]).status.code(), Some(0));
+}
+
+#[test]
+fn no_place_to_write_is_told_before_the_slow_part() {
+    let place = place();
+    let output = ratewright(place.path(), &["fit", "landings.toml", "--into", "no such/x.run"]);
+    assert_eq!(output.status.code(), Some(1), "{}", err(&output));
+    assert!(err(&output).contains("no such"), "{}", err(&output));
+    fs::create_dir(place.path().join("photos")).unwrap();
+    fs::write(place.path().join("photos/quay.jpg"), "x").unwrap();
+    let output = ratewright(place.path(), &["fit", "landings.toml", "--into", "photos", "--replace"]);
+    assert_eq!(output.status.code(), Some(1), "{}", err(&output));
+    assert_eq!(names(&place.path().join("photos")), ["quay.jpg"]);
+}
+
+#[test]
+fn bold_is_for_terminals_and_yields_to_no_color() {
+    let told = |variables: &[(&str, &str)]| {
+        let mut command = Command::cargo_bin("ratewright").unwrap();
+        command.current_dir(finished()).args(["vet", "landings.toml"]);
+        command.env_remove("NO_COLOR").env_remove("CLICOLOR_FORCE");
+        command.envs(variables.iter().copied());
+        out(&command.output().unwrap())
+    };
+    assert!(told(&[("CLICOLOR_FORCE", "1")]).contains("\u{1b}[1m"));
+    assert!(!told(&[("CLICOLOR_FORCE", "1"), ("NO_COLOR", "1")]).contains('\u{1b}'));
+    assert!(!told(&[]).contains('\u{1b}'));
+}
+
+#[cfg(unix)]
+mod signals {
+    use super::*;
+    use std::process::Command as Process;
+    use std::time::{Duration, Instant};
+
+    fn spawned(place: &Path, arguments: &[&str]) -> std::process::Child {
+        Process::new(env!("CARGO_BIN_EXE_ratewright"))
+            .current_dir(place)
+            .args(arguments)
+            .stdout(Stdio::piped())
+            .stderr(Stdio::piped())
+            .spawn()
+            .unwrap()
+    }
+
+    #[test]
+    fn a_closed_pipe_ends_quietly() {
+        for arguments in [&["schema", "spec"][..], &["vet", "landings.toml"]] {
+            let mut child = spawned(finished(), arguments);
+            drop(child.stdout.take());
+            let output = child.wait_with_output().unwrap();
+            assert_eq!((output.status.code(), err(&output).as_str()), (Some(0), ""));
+        }
+    }
+
+    #[test]
+    fn an_interrupted_fit_leaves_nothing() {
+        let place = place();
+        // A precision that takes minutes.
+        let spec = place.path().join("landings.toml");
+        replaced(
+            &spec,
+            "precision = 0.05",
+            "precision = 0.001\nmost_draws = 50000000\nsteps = \"walk\"",
+        );
+        let child = spawned(place.path(), &["fit", "landings.toml"]);
+        let begun = Instant::now();
+        // The temporary folder appears when the slow part is about to begin.
+        while names(place.path()).len() < 3 {
+            assert!(begun.elapsed() < Duration::from_secs(60), "no fit began");
+            std::thread::sleep(Duration::from_millis(20));
+        }
+        let sent = Process::new("sh")
+            .args(["-c", &format!("kill -INT {}", child.id())])
+            .status()
+            .unwrap();
+        assert!(sent.success());
+        let output = child.wait_with_output().unwrap();
+        assert_eq!(output.status.code(), Some(130), "{}", err(&output));
+        assert_eq!(err(&output), "Interrupted: nothing was written.\n");
+        assert_eq!(names(place.path()), ["landings.csv", "landings.toml"]);
+    }
+}

@@ -1,0 +1,134 @@
+//! Starter specs for tables that nobody prepared: each must hold as it is written.
+
+use proptest::prelude::*;
+use ratewright::design::{DraftFault, draft};
+use ratewright::table::{Table, parse_csv, read_csv};
+use std::path::PathBuf;
+
+fn table(text: &str) -> Table {
+    parse_csv("counts.csv", text.as_bytes()).expect("a table that can be read")
+}
+
+fn untidy() -> Table {
+    let path = PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("tests/drafts/untidy.csv");
+    read_csv("untidy.csv", &path).expect("a table that can be read")
+}
+
+/// The lines of a draft that hold one of its keys.
+fn value<'t>(text: &'t str, key: &str) -> Vec<&'t str> {
+    let start = format!("{key} = ");
+    text.lines().filter_map(|line| line.strip_prefix(&start)).collect()
+}
+
+#[test]
+fn an_untidy_table_gets_a_spec_that_holds() {
+    let drafted = draft(&untidy()).unwrap_or_else(|error| panic!("{error}"));
+    insta::assert_snapshot!(drafted.text);
+    let names: Vec<&str> = drafted.design.terms.iter().map(|term| term.name.as_str()).collect();
+    insta::assert_snapshot!("terms_of_the_untidy_table", names.join("\n"));
+    assert_eq!(drafted.design.audit.rows_not_kept, 1);
+    assert_eq!(draft(&untidy()).unwrap(), drafted);
+}
+
+#[test]
+fn what_can_be_seen_in_the_names_and_cells_is_used() {
+    let text = "site,month,incidents,population,programme\nA,1,4,1500,0\nA,2,3,1400,1\nB,1,0,800,0\nB,2,1,900,1\nC,1,2,700,0\nC,2,2,650,1\n\
+                D,1,2,700,0\nD,2,0,650,1\nE,1,1,700,0\nE,2,1,650,1\n";
+    let drafted = draft(&table(text)).unwrap();
+    assert_eq!(drafted.spec.incidents.column.value, "incidents");
+    assert_eq!(drafted.spec.data.unit.value, "site");
+    assert_eq!(
+        drafted.spec.data.period.as_ref().map(|period| period.value.as_str()),
+        Some("month")
+    );
+    let exposure = drafted.spec.exposure.as_ref().unwrap();
+    // 16 incidents in 9,450 people: 1.7 in a thousand, by hand.
+    assert_eq!((exposure.column.value.as_str(), exposure.per), ("population", 1000.0));
+    assert_eq!(value(&drafted.text, "plausible_rate"), ["[0.056, 51]"]);
+    assert_eq!(drafted.spec.study.answer.value, "programme=1");
+}
+
+#[test]
+fn without_a_name_that_helps_whole_numbers_are_counts_and_rows_their_own_exposure() {
+    let drafted = draft(&table("who,q1,q2\nred,3,0.5\nblue,0,1.5\ngreen,2,2.5\ngrey,4,2.1\n")).unwrap();
+    assert_eq!(drafted.spec.incidents.column.value, "q1");
+    assert!(drafted.text.contains("a guess: whole numbers from 0"));
+    assert_eq!(drafted.spec.exposure, None);
+    assert_eq!(drafted.spec.study.answer.value, "baseline");
+}
+
+#[test]
+fn years_row_numbers_and_labels_are_no_counts() {
+    let drafted = draft(&table("row,year,code,events\n1,2030,7,0\n2,2031,9,3\n3,2032,8,1\n")).unwrap();
+    assert_eq!(drafted.spec.incidents.column.value, "events");
+    assert_eq!(drafted.spec.data.unit.value, "code");
+}
+
+#[test]
+fn names_that_need_quoting_are_quoted() {
+    let text = "\"site \"\"A\"\"\",\"falls\nin all\",\"visits\\\"\nx,1,10\ny,0,30\nz,2,20\n";
+    let drafted = draft(&table(text)).unwrap();
+    assert_eq!(drafted.spec.data.unit.value, "site \"A\"");
+    assert_eq!(drafted.spec.incidents.column.value, "falls\nin all");
+    assert_eq!(drafted.spec.exposure.unwrap().column.value, "visits\\");
+}
+
+#[test]
+fn incidents_without_exposure_are_told_aloud() {
+    let drafted = draft(&table("site,falls,visits\na,1,0\nb,0,0\nc,3,50\nd,1,20\n")).unwrap();
+    assert!(
+        drafted.text.contains("# 1 of them have incidents all the same"),
+        "{}",
+        drafted.text
+    );
+    assert_eq!(drafted.design.audit.rows_not_kept, 2);
+}
+
+#[test]
+fn a_table_without_an_incident_still_gets_a_range() {
+    let drafted = draft(&table("site,falls,visits\na,0,100\nb,0,50\nc,0,50\n")).unwrap();
+    // Half an incident in 200 visits: 2.5 in a thousand, a thirtieth and thirty times it, by hand.
+    assert_eq!(value(&drafted.text, "plausible_rate"), ["[0.083, 75]"]);
+}
+
+#[test]
+fn a_table_without_counts_is_refused_with_what_spoils_them() {
+    let error = draft(&table("site,falls,score\na,<5,0.5\nb,12,1.5\n")).unwrap_err();
+    match &error.fault {
+        DraftFault::NoCount { spoilt } => {
+            assert_eq!((spoilt[0].line, spoilt[0].value.as_str()), (2, "<5"));
+        }
+        other => panic!("{other:?}"),
+    }
+    assert_eq!(error.diagnostics()[0].code, "draft-no-count");
+    let error = draft(&table("falls\n3\n1\n")).unwrap_err();
+    assert_eq!(error.diagnostics()[0].code, "draft-no-unit");
+}
+
+proptest! {
+    #![proptest_config(ProptestConfig { cases: 400, failure_persistence: None, ..ProptestConfig::default() })]
+
+    /// Whatever the table, the draft holds (it checks itself), or a message says why there is none.
+    #[test]
+    fn any_table_gets_a_draft_or_a_reason(
+        names in proptest::collection::hash_set("[a-c]{1,2}|falls|visits|site|month|n|scatter|a=b|[\"'#\\\\]{1,3}", 1..7),
+        cells in proptest::collection::vec(
+            prop_oneof!["[0-9]{1,2}", "[a-c]", "0", "-?[0-9]\\.[0-9]", "NA", "", "1e300", "-"], 1..120),
+    ) {
+        let names: Vec<String> = names.into_iter().collect();
+        let mut text = names.iter().map(|name| format!("\"{}\"", name.replace('"', "\"\""))).collect::<Vec<String>>().join(",");
+        text.push('\n');
+        for row in cells.chunks_exact(names.len()) {
+            text.push_str(&row.iter().map(|cell| format!("\"{cell}\"")).collect::<Vec<String>>().join(","));
+            text.push('\n');
+        }
+        let Ok(table) = parse_csv("any.csv", text.as_bytes()) else { return Ok(()) };
+        match draft(&table) {
+            Ok(drafted) => prop_assert!(drafted.text.contains("provisional = true")),
+            Err(error) => {
+                prop_assert!(matches!(error.fault, DraftFault::NoCount { .. } | DraftFault::NoUnit | DraftFault::NoDesign(_)), "{error}");
+                prop_assert!(!error.diagnostics().is_empty());
+            }
+        }
+    }
+}
