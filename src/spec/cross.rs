@@ -4,10 +4,9 @@
 use std::ops::Range;
 
 use super::fault::{AnswerFault, JointFault, SpecFault};
-use super::fields::Faults;
+use super::fields::{Faults, nearest};
 use super::predictor::{CovariateDraft, JointDraft, merged_into};
 use super::study::{At, Data, Exposure, Incidents};
-use super::values::nearest;
 
 /// Parameters that every fit may have: no term can share their name.
 const RESERVED: [&str; 3] = ["baseline", "scatter", "spread"];
@@ -86,21 +85,12 @@ pub(super) fn check_counts_column(
         .and_then(Option::as_ref)
         .map(|exposure| ("`column` in [exposure]", &exposure.column));
     let unit = data.map(|data| ("`unit` in [data]", &data.unit));
-    let period = data
-        .and_then(|data| data.period.as_ref())
-        .map(|column| ("`period` in [data]", column));
     let stands_for = data
         .and_then(|data| data.stands_for.as_ref())
         .map(|column| ("`stands_for` in [data]", column));
     let columns = covariates.iter().filter_map(|covariate| covariate.column.as_ref());
     let covariates = columns.map(|column| ("`column` in [[covariate]]", column));
-    for (key, column) in exposure
-        .into_iter()
-        .chain(unit)
-        .chain(period)
-        .chain(stands_for)
-        .chain(covariates)
-    {
+    for (key, column) in exposure.into_iter().chain(unit).chain(stands_for).chain(covariates) {
         if column.value == *counts {
             faults.push(SpecFault::CountsReused {
                 column: counts.clone(),
@@ -156,15 +146,8 @@ pub(super) fn check_answer(
         Part::No(why) => Some(why),
         _ => None,
     });
-    let why = refused.unwrap_or_else(|| {
-        // Levels are taken as they are spelt, so that the likeness is that of the columns.
-        let level = name
-            .split_once('=')
-            .map_or(ANY_LEVEL, |(_, rest)| rest.split(WITH).next().unwrap_or(rest));
-        let spelt: Vec<String> = terms.iter().map(|term| term.replacen(ANY_LEVEL, level, 1)).collect();
-        AnswerFault::Unknown {
-            nearest: nearest(name, spelt.iter().map(String::as_str)).map(str::to_string),
-        }
+    let why = refused.unwrap_or_else(|| AnswerFault::Unknown {
+        nearest: nearest(name, terms.iter().map(String::as_str)).map(str::to_string),
     });
     faults.push(SpecFault::NoSuchAnswer {
         answer: answer.clone(),
