@@ -159,16 +159,16 @@ fn units(page: &mut Page, findings: &Findings, audience: Audience) {
     }
     if outside.len() > OUTSIDE_SHOWN {
         page.paragraph(&format!(
-            "{} more outside are in units.csv.",
+            "Not listed: {} more outside; see units.csv.",
             whole((outside.len() - OUTSIDE_SHOWN) as f64)
         ));
     }
     let hidden = check.units.len() - check.units.iter().filter(is_shown).count();
     if hidden > 0 {
         page.paragraph(&format!(
-            "{} of the units are not named here or judged one by one, because their counts are below {} and could \
-             identify a person.",
+            "{} of the units {} not named here or judged one by one: a count below {} could identify a person.",
             whole(hidden as f64),
+            if hidden == 1 { "is" } else { "are" },
             findings.study.hide_counts_below
         ));
     }
@@ -205,7 +205,8 @@ pub(super) fn rows(page: &mut Page, audit: &Audit) {
         whole(audit.rows_read as f64)
     ));
     if audit.rows_not_kept > 0 {
-        page.paragraph(&format!("{} were left out by keep.", whole(audit.rows_not_kept as f64)));
+        let rows = audit.rows_not_kept;
+        page.paragraph(&format!("{} {} left out by keep.", whole(rows as f64), was(rows)));
     }
     if !audit.lines_dropped.is_empty() {
         const LINES_SHOWN: usize = 10;
@@ -216,8 +217,9 @@ pub(super) fn rows(page: &mut Page, audit: &Audit) {
             more => format!(" and {more} more, all in manifest.json"),
         };
         page.paragraph(&format!(
-            "{} were dropped because a value is missing: line {}{more}.",
+            "{} {} dropped because a value is missing: line {}{more}.",
             whole(lines.len() as f64),
+            was(lines.len()),
             shown.join(", ")
         ));
     }
@@ -290,6 +292,11 @@ fn the_run(page: &mut Page, run: &Path) {
     page.verbatim(&run.display().to_string());
     page.paragraph("To repeat it to the last digit:");
     page.verbatim(&format!("ratewright replay {}", shell_word(run)));
+}
+
+/// `was` for one, `were` for any other number.
+fn was(number: usize) -> &'static str {
+    if number == 1 { "was" } else { "were" }
 }
 
 fn parameter<'a>(findings: &'a Findings, term: &str) -> Option<&'a CoefficientFinding> {
