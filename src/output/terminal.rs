@@ -76,9 +76,14 @@ fn rate_ratios(page: &mut Page, findings: &Findings) {
 }
 
 fn rate_and_scatter(page: &mut Page, findings: &Findings) {
-    page.heading("The rate itself");
     let study = &findings.study;
-    if let Some(baseline) = parameter(findings, "baseline") {
+    let scatter = parameter(findings, "scatter");
+    // The answer has told it already where it is the answer.
+    let baseline = parameter(findings, "baseline").filter(|baseline| findings.answer.term != baseline.term);
+    if baseline.is_some() || scatter.is_some() {
+        page.heading("The rate itself");
+    }
+    if let Some(baseline) = baseline {
         let evidence = answer::Evidence {
             measured: measured(baseline).exp_times(study.per),
             interval: study.interval,
@@ -93,7 +98,7 @@ fn rate_and_scatter(page: &mut Page, findings: &Findings) {
             &evidence,
         ));
     }
-    if let Some(scatter) = parameter(findings, "scatter") {
+    if let Some(scatter) = scatter {
         let told = measured(scatter).told();
         page.paragraph(&format!(
             "The scatter is {} ({} interval {} to {}): rows that look alike in every column of the model differ in \
@@ -122,12 +127,19 @@ fn units(page: &mut Page, findings: &Findings, audience: Audience) {
         units => format!(" ({} with small counts left open)", whole(units as f64)),
     };
     page.paragraph(&format!(
-        "Of {} units (column {}), {} {} outside the {} interval that the model predicts{not_judged}; if the model \
+        "Of {} (column {}), {} outside the {} interval that the model predicts{not_judged}; if the model \
          were right, about {} would by chance.",
-        whole(check.units.len() as f64),
+        if check.units.len() == 1 {
+            "1 unit".to_owned()
+        } else {
+            format!("{} units", whole(check.units.len() as f64))
+        },
         findings.study.unit_column,
-        whole(outside as f64),
-        if outside == 1 { "lies" } else { "lie" },
+        match outside {
+            0 => "none lies".to_owned(),
+            1 => "1 lies".to_owned(),
+            more => format!("{} lie", whole(more as f64)),
+        },
         level(findings.study.interval),
         roughly(check.outside_by_chance)
     ));
