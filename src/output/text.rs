@@ -103,7 +103,11 @@ impl Page {
     fn wrapped(&mut self, indent: &str, words: &str) {
         let mut line = String::from(indent);
         let mut is_empty = true;
-        for word in plain(words).split_whitespace() {
+        // A percent sign stays on the line of its number.
+        let words = plain(words).replace(" %", "\u{1}%");
+        for word in words.split_whitespace() {
+            let word = word.replace('\u{1}', " ");
+            let word = word.as_str();
             if !is_empty && width(&line) + 1 + width(word) > WIDTH {
                 self.text.push_str(&line);
                 self.text.push('\n');
@@ -166,6 +170,16 @@ mod tests {
         page.paragraph(&"word ".repeat(60));
         page.item(&"other ".repeat(40));
         assert!(page.finish().lines().all(|line| line.chars().count() <= WIDTH));
+    }
+
+    #[test]
+    fn a_percent_sign_stays_with_its_number() {
+        for filler in 60..80 {
+            let mut page = Page::default();
+            page.paragraph(&format!("{} 95 % interval", "x".repeat(filler)));
+            let text = page.finish();
+            assert!(text.contains("95 %"), "{text}");
+        }
     }
 
     #[test]
