@@ -136,13 +136,8 @@ fn read_root(source: &Source, root: &DeTable<'_>, faults: &mut Faults) -> Option
         .and_then(|fields| read_report(&fields, faults));
 
     check_terms(&covariates, &joints, faults);
-    check_counts_column(
-        incidents.as_ref(),
-        exposure.as_ref(),
-        data.as_ref(),
-        &covariates,
-        faults,
-    );
+    let exposure_read = exposure.as_ref().and_then(Option::as_ref);
+    check_counts_column(incidents.as_ref(), exposure_read, data.as_ref(), &covariates, faults);
     if let Some(study) = &study {
         check_answer(&study.answer, &covariates, &joints, faults);
     }

@@ -147,23 +147,33 @@ pub(super) fn read_exposure(fields: &Fields<'_>, faults: &mut Faults) -> Option<
     })
 }
 
+/// The value of `kind` in `[family]`.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum FamilyKind {
+    Poisson,
+    NegativeBinomial,
+}
+
 /// `[family]` as far as it could be read.
 #[derive(Default)]
 pub(super) struct FamilyDraft {
-    /// The value of `kind`, which `[baseline]` needs to know.
-    pub kind: Option<&'static str>,
+    /// Which family, as `[baseline]` needs to know.
+    pub kind: Option<FamilyKind>,
     /// The whole, where nothing was at fault.
     pub family: Option<Family>,
 }
 
 pub(super) fn read_family(fields: &Fields<'_>, faults: &mut Faults) -> FamilyDraft {
-    let kind = fields.choice("kind", faults);
-    if let Some(kind) = kind {
+    let kind = fields.choice("kind", faults).map(|kind| {
         fields.tell_misplaced(kind, faults);
-    }
+        match kind {
+            "poisson" => FamilyKind::Poisson,
+            _ => FamilyKind::NegativeBinomial,
+        }
+    });
     let family = match kind {
-        Some("poisson") => Some(Family::Poisson),
-        Some(_) => {
+        Some(FamilyKind::Poisson) => Some(Family::Poisson),
+        Some(FamilyKind::NegativeBinomial) => {
             let scatter_up_to = fields.number("scatter_up_to", faults);
             let standing = read_standing(fields, faults);
             scatter_up_to
@@ -179,7 +189,7 @@ pub(super) fn read_family(fields: &Fields<'_>, faults: &mut Faults) -> FamilyDra
 }
 
 /// Reads `[baseline]`; `kind` is that of the family, where it is known.
-pub(super) fn read_baseline(fields: &Fields<'_>, kind: Option<&'static str>, faults: &mut Faults) -> Option<Baseline> {
+pub(super) fn read_baseline(fields: &Fields<'_>, kind: Option<FamilyKind>, faults: &mut Faults) -> Option<Baseline> {
     let standing = read_standing(fields, faults);
     match (fields.place("plausible_rate"), fields.place("earlier")) {
         (Some(range), Some(earlier)) => {
@@ -208,13 +218,13 @@ pub(super) fn read_baseline(fields: &Fields<'_>, kind: Option<&'static str>, fau
     }
 }
 
-fn read_earlier(fields: &Fields<'_>, kind: Option<&'static str>, faults: &mut Faults) -> Option<Baseline> {
+fn read_earlier(fields: &Fields<'_>, kind: Option<FamilyKind>, faults: &mut Faults) -> Option<Baseline> {
     let earlier = fields.open_inline(&EARLIER, "earlier", faults)?;
     let incidents = earlier.number("incidents", faults);
     let exposure = earlier.number("exposure", faults);
     let at_reference = earlier.switch("at_reference", faults);
     let refused = match (kind, at_reference) {
-        (Some(kind), _) if kind != "poisson" => Some(EarlierFault::NotPoisson),
+        (Some(FamilyKind::NegativeBinomial), _) => Some(EarlierFault::NotPoisson),
         (_, Some(false)) => Some(EarlierFault::NotAtReference),
         _ => None,
     };
