@@ -300,6 +300,8 @@ pub enum EarlierFault {
     NotPoisson,
     /// They were not seen at the reference.
     NotAtReference,
+    /// They are marked as provisional.
+    Provisional,
 }
 
 /// Why an answer is no term.

@@ -2,6 +2,7 @@
 
 use std::fs::File;
 use std::io::Read;
+use std::ops::Range;
 use std::path::Path;
 
 use toml::de::{DeTable, DeValue};
@@ -126,8 +127,8 @@ fn read_root(source: &Source, root: &DeTable<'_>, faults: &mut Faults) -> Option
     let baseline = tables
         .one("baseline", faults)
         .and_then(|fields| read_baseline(&fields, family.kind, faults));
-    let covariates = tables.many("covariate", faults, |fields, faults| read_covariate(fields, faults));
-    let joints = tables.many("joint", faults, |fields, faults| read_joint(fields, faults));
+    let covariates = tables.many("covariate", faults, read_covariate);
+    let joints = tables.many("joint", faults, read_joint);
     let sampling = tables
         .or_defaults("sampling", faults)
         .and_then(|fields| read_sampling(&fields, faults));
@@ -237,7 +238,7 @@ fn meant(name: &str) -> Option<&'static str> {
 }
 
 /// `[covariate]` for `[[covariate]]`, `study = 3` for `[study]`.
-fn wrong_shape(info: &TableInfo, found: &DeValue<'_>, span: std::ops::Range<usize>) -> SpecFault {
+fn wrong_shape(info: &TableInfo, found: &DeValue<'_>, span: Range<usize>) -> SpecFault {
     SpecFault::WrongType {
         key: format!("`{}`", info.name),
         wanted: match info.times {

@@ -1,7 +1,7 @@
 //! One function for each table of the spec but the covariates and joints.
 
 use toml::Spanned;
-use toml::de::{DeTable, DeValue};
+use toml::de::{DeString, DeTable, DeValue};
 
 use super::fault::{EarlierFault, RangeFault, SpecFault};
 use super::fields::{Faults, Fields};
@@ -196,7 +196,7 @@ pub(super) fn read_baseline(fields: &Fields<'_>, kind: Option<FamilyKind>, fault
             faults.push(SpecFault::TwoBaselines { range, earlier });
             None
         }
-        (None, Some(_)) => read_earlier(fields, kind, faults),
+        (None, Some(_)) => read_earlier(fields, kind, standing, faults),
         (Some(_), None) => {
             let range = fields.range("plausible_rate", faults);
             Some(Baseline::PlausibleRate(plausible_range(range?, standing?)))
@@ -218,14 +218,20 @@ pub(super) fn read_baseline(fields: &Fields<'_>, kind: Option<FamilyKind>, fault
     }
 }
 
-fn read_earlier(fields: &Fields<'_>, kind: Option<FamilyKind>, faults: &mut Faults) -> Option<Baseline> {
+fn read_earlier(
+    fields: &Fields<'_>,
+    kind: Option<FamilyKind>,
+    standing: Option<Standing>,
+    faults: &mut Faults,
+) -> Option<Baseline> {
     let earlier = fields.open_inline(&EARLIER, "earlier", faults)?;
     let incidents = earlier.number("incidents", faults);
     let exposure = earlier.number("exposure", faults);
     let at_reference = earlier.switch("at_reference", faults);
-    let refused = match (kind, at_reference) {
-        (Some(FamilyKind::NegativeBinomial), _) => Some(EarlierFault::NotPoisson),
-        (_, Some(false)) => Some(EarlierFault::NotAtReference),
+    let refused = match (kind, at_reference, standing) {
+        (Some(FamilyKind::NegativeBinomial), _, _) => Some(EarlierFault::NotPoisson),
+        (_, Some(false), _) => Some(EarlierFault::NotAtReference),
+        (_, _, Some(Standing::Provisional)) => Some(EarlierFault::Provisional),
         _ => None,
     };
     if let Some(why) = refused {
@@ -294,9 +300,7 @@ pub(super) fn plausible_range(ends: At<[f64; 2]>, standing: Standing) -> Plausib
 }
 
 /// Entries of a table in the order of the text: the TOML reader keeps them by name.
-pub(super) fn in_order<'t, 'a>(
-    table: &'t DeTable<'a>,
-) -> Vec<(&'t Spanned<std::borrow::Cow<'a, str>>, &'t Spanned<DeValue<'a>>)> {
+pub(super) fn in_order<'t, 'a>(table: &'t DeTable<'a>) -> Vec<(&'t Spanned<DeString<'a>>, &'t Spanned<DeValue<'a>>)> {
     let mut entries: Vec<_> = table.iter().collect();
     entries.sort_by_key(|(key, _)| key.span().start);
     entries

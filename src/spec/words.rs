@@ -260,12 +260,16 @@ fn earlier_refused(why: EarlierFault) -> Told {
             "earlier data must have been seen at the reference",
             "not at the reference",
         ),
+        EarlierFault::Provisional => (
+            "earlier data cannot be provisional: they were seen",
+            "marked as provisional",
+        ),
     };
     Told {
         message: message.into(),
         label: label.into(),
         help: "Write what the earlier data suggest as a range instead, plausible_rate = [low, high] per `per`; widen \
-               it where they were seen in other conditions."
+               it where they were seen in other conditions or are in doubt."
             .into(),
     }
 }
