@@ -194,6 +194,11 @@ fn bad_range(key: &str, why: &RangeFault) -> Told {
             format!("both ends are {at}"),
             "Let the ends differ: a range of one value leaves nothing to learn.",
         ),
+        RangeFault::TooNarrow { lo, hi } => (
+            "is too narrow",
+            format!("from {lo} to {hi} only"),
+            "Let the ends differ by 0.01 % at least: a narrower range leaves nothing to learn.",
+        ),
         RangeFault::NoEnds => (
             "has no ends",
             "neither `from` nor `to`".into(),
