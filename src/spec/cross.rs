@@ -4,9 +4,10 @@
 use std::ops::Range;
 
 use super::fault::{AnswerFault, JointFault, SpecFault};
-use super::fields::{Faults, nearest};
-use super::predictor::{CovariateDraft, JointDraft, merged_into};
+use super::fields::Faults;
+use super::predictor::{CovariateDraft, Form, JointDraft, merged_into};
 use super::study::{At, Data, Exposure, Incidents};
+use super::values::nearest;
 
 /// Parameters that every fit may have: no term can share their name.
 const RESERVED: [&str; 3] = ["baseline", "scatter", "spread"];
@@ -22,7 +23,7 @@ pub(super) fn check_terms(covariates: &[CovariateDraft], joints: &[JointDraft], 
     let mut seen: Vec<(&str, Range<usize>)> = Vec::new();
     for covariate in covariates {
         let Some(column) = &covariate.column else { continue };
-        if covariate.form != Some("category") && RESERVED.contains(&column.value.as_str()) {
+        if covariate.form != Some(Form::Category) && RESERVED.contains(&column.value.as_str()) {
             faults.push(SpecFault::DuplicateTerm {
                 term: column.value.clone(),
                 first: None,
@@ -73,7 +74,7 @@ pub(super) fn check_terms(covariates: &[CovariateDraft], joints: &[JointDraft], 
 /// Tells a column of counts that has another role too: counts explained by themselves mean nothing.
 pub(super) fn check_counts_column(
     incidents: Option<&Incidents>,
-    exposure: Option<&Option<Exposure>>,
+    exposure: Option<&Exposure>,
     data: Option<&Data>,
     covariates: &[CovariateDraft],
     faults: &mut Faults,
@@ -81,16 +82,23 @@ pub(super) fn check_counts_column(
     let Some(counts) = incidents.map(|incidents| &incidents.column.value) else {
         return;
     };
-    let exposure = exposure
-        .and_then(Option::as_ref)
-        .map(|exposure| ("`column` in [exposure]", &exposure.column));
+    let exposure = exposure.map(|exposure| ("`column` in [exposure]", &exposure.column));
     let unit = data.map(|data| ("`unit` in [data]", &data.unit));
+    let period = data
+        .and_then(|data| data.period.as_ref())
+        .map(|column| ("`period` in [data]", column));
     let stands_for = data
         .and_then(|data| data.stands_for.as_ref())
         .map(|column| ("`stands_for` in [data]", column));
     let columns = covariates.iter().filter_map(|covariate| covariate.column.as_ref());
     let covariates = columns.map(|column| ("`column` in [[covariate]]", column));
-    for (key, column) in exposure.into_iter().chain(unit).chain(stands_for).chain(covariates) {
+    for (key, column) in exposure
+        .into_iter()
+        .chain(unit)
+        .chain(period)
+        .chain(stands_for)
+        .chain(covariates)
+    {
         if column.value == *counts {
             faults.push(SpecFault::CountsReused {
                 column: counts.clone(),
@@ -146,8 +154,15 @@ pub(super) fn check_answer(
         Part::No(why) => Some(why),
         _ => None,
     });
-    let why = refused.unwrap_or_else(|| AnswerFault::Unknown {
-        nearest: nearest(name, terms.iter().map(String::as_str)).map(str::to_string),
+    let why = refused.unwrap_or_else(|| {
+        // Levels are taken as they are spelt, so that the likeness is that of the columns.
+        let level = name
+            .split_once('=')
+            .map_or(ANY_LEVEL, |(_, rest)| rest.split(WITH).next().unwrap_or(rest));
+        let spelt: Vec<String> = terms.iter().map(|term| term.replacen(ANY_LEVEL, level, 1)).collect();
+        AnswerFault::Unknown {
+            nearest: nearest(name, spelt.iter().map(String::as_str)).map(str::to_string),
+        }
     });
     faults.push(SpecFault::NoSuchAnswer {
         answer: answer.clone(),
@@ -170,7 +185,7 @@ fn part(covariate: &CovariateDraft, name: &str) -> Part {
     let Some(column) = &covariate.column else {
         return Part::Other;
     };
-    if covariate.form != Some("category") {
+    if covariate.form != Some(Form::Category) {
         return if name == column.value { Part::Term } else { Part::Other };
     }
     let Some(level) = name
@@ -204,7 +219,7 @@ fn part(covariate: &CovariateDraft, name: &str) -> Part {
 fn pattern(covariate: &CovariateDraft) -> String {
     let column = covariate.column.as_ref().map_or("", |column| &column.value);
     match covariate.form {
-        Some("category") => format!("{column}={ANY_LEVEL}"),
+        Some(Form::Category) => format!("{column}={ANY_LEVEL}"),
         _ => column.to_string(),
     }
 }
