@@ -161,6 +161,21 @@ fn whole_shows_small_counts_and_its_replay_agrees() {
 }
 
 #[test]
+fn the_plainest_study_fits_and_replays() {
+    let place = place();
+    let spec = "[study]\ntitle = \"Falls\"\nquestion = \"How many?\"\nanswer = \"baseline\"\nseed = 7\n\
+                [data]\nfile = \"landings.csv\"\nunit = \"landing\"\n[incidents]\ncolumn = \"falls\"\n\
+                [family]\nkind = \"poisson\"\n[baseline]\nplausible_rate = [1, 30]\n[sampling]\nprecision = 0.1\n";
+    fs::write(place.path().join("plain.toml"), spec).unwrap();
+    let output = ratewright(place.path(), &["fit", "plain.toml"]);
+    assert_eq!(output.status.code(), Some(0), "{}", err(&output));
+    assert!(out(&output).contains("falls per row"), "{}", out(&output));
+    assert!(!out(&output).contains("Rate ratios"), "{}", out(&output));
+    let replay = ratewright(place.path(), &["replay", "plain.run"]);
+    assert_eq!(replay.status.code(), Some(0), "{}{}", out(&replay), err(&replay));
+}
+
+#[test]
 fn a_replay_needs_the_run_alone() {
     let (place, _) = copied();
     fs::remove_file(place.path().join("landings.toml")).unwrap();

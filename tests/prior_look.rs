@@ -4,6 +4,7 @@
 mod support;
 
 use ratewright::check::{PriorState, prior};
+use ratewright::numeric::ln;
 use ratewright::spec::{Baseline, Chances, Family, Spec, Standing};
 
 fn look(spec: &Spec) -> ratewright::check::PriorLook {
@@ -40,9 +41,9 @@ fn the_expected_rate_without_covariates_is_the_baseline() {
     let look = look(&bare());
     // The 2.5 % point of 20,000 draws of a log-normal with log sd 1.1748: its standard error on the
     // log scale is sqrt(0.025 * 0.975 / 20000) / (0.0584 / 1.1748), about 0.022.
-    assert!((look.expected_rate.lower / 0.5).ln().abs() < 0.1, "{look:?}");
-    assert!((look.expected_rate.upper / 50.0).ln().abs() < 0.1, "{look:?}");
-    assert!((look.expected_rate.median / 5.0).ln().abs() < 0.05, "{look:?}");
+    assert!(ln(look.expected_rate.lower / 0.5).abs() < 0.1, "{look:?}");
+    assert!(ln(look.expected_rate.upper / 50.0).abs() < 0.1, "{look:?}");
+    assert!(ln(look.expected_rate.median / 5.0).abs() < 0.05, "{look:?}");
 }
 
 #[test]

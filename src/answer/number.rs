@@ -1,10 +1,17 @@
 //! How figures are rounded for people: the one place where digits are dropped.
 //!
-//! Two rules. A figure never shows a digit that the simulation could not hold: one unit in its
-//! last place is at least its simulation error. And the three figures of an interval share their
-//! last place, about a tenth of the interval's width, so that they can be compared at a glance;
-//! only where the interval spans a factor of ten or more does each have its own two digits.
+//! Two rules. A figure never shows a digit that the simulation could not hold: its simulation error
+//! is at most one and a half units of its last place. And the three figures of an interval share
+//! that place, about a tenth of the interval's width, so that they can be compared at a glance;
+//! only where the ends are a factor of three or more apart does each figure have its own two digits.
 //! Files for machines (CSV, JSON, Parquet) are not rounded at all.
+
+/// An interval whose ends are this factor apart has no last place that suits both of them.
+const WIDE: f64 = 3.0;
+/// Simulation error, in units of the last place shown, that a figure may have.
+const UNITS_OF_ERROR: f64 = 1.5;
+/// No figure is told finer than this place.
+const FINEST_SHOWN: Place = -6;
 
 /// The last place shown, as a power of ten: -2 is hundredths, 0 ones, 3 thousands.
 type Place = i32;
@@ -63,32 +70,40 @@ impl Measured {
     }
 
     fn told_from(self, landmark: Option<f64>) -> Told {
+        let shares_places = self.lower <= 0.0 || self.upper < WIDE * self.lower;
+        let width = place_at_or_below((self.upper - self.lower) / 10.0);
         let error = self.error_of_lower.max(self.error_of_upper);
-        if self.lower > 0.0 && self.upper >= 10.0 * self.lower {
-            let own = |value: f64, error: f64| two_digits(value).max(place_at_or_above(error));
-            let place = own(self.estimate, self.error_of_lower);
-            return Told {
-                estimate: figure(self.estimate, place),
-                lower: figure(self.lower, own(self.lower, self.error_of_lower)),
-                upper: figure(self.upper, own(self.upper, self.error_of_upper)),
-                place,
-            };
-        }
-        let finest = place_at_or_above(error);
-        let mut place = place_at_or_below((self.upper - self.lower) / 10.0)
-            .unwrap_or_else(|| two_digits(self.estimate))
-            .max(finest);
+        let common = width.unwrap_or_else(|| two_digits(self.estimate));
+        let place = |value: f64, own_error: f64| {
+            if shares_places {
+                common.max(finest(error))
+            } else {
+                two_digits(value).max(finest(own_error))
+            }
+        };
+        let mut places = [
+            place(self.estimate, self.error_of_lower),
+            place(self.lower, self.error_of_lower),
+            place(self.upper, self.error_of_upper),
+        ];
         if let Some(landmark) = landmark {
             let hits = |value: f64, place: Place| value != landmark && figure(value, place) == figure(landmark, place);
-            while place > finest.max(-6) && (hits(self.lower, place) || hits(self.upper, place)) {
-                place -= 1;
+            let ends = [(self.lower, self.error_of_lower), (self.upper, self.error_of_upper)];
+            for (end, (value, own_error)) in ends.into_iter().enumerate() {
+                let last = finest(if shares_places { error } else { own_error }).max(FINEST_SHOWN);
+                while hits(value, places[end + 1]) && places[end + 1] > last {
+                    places[end + 1] -= 1;
+                }
+            }
+            if shares_places {
+                places = [places[1].min(places[2]); 3];
             }
         }
         Told {
-            estimate: figure(self.estimate, place),
-            lower: figure(self.lower, place),
-            upper: figure(self.upper, place),
-            place,
+            estimate: figure(self.estimate, places[0]),
+            lower: figure(self.lower, places[1]),
+            upper: figure(self.upper, places[2]),
+            place: places[0],
         }
     }
 }
@@ -187,12 +202,13 @@ fn place_at_or_below(value: f64) -> Option<Place> {
         .and_then(|text| text.split_once('e').and_then(|(_, exponent)| exponent.parse().ok()))
 }
 
-/// The smallest power of ten at or above a value; far below everything shown where it is 0.
-fn place_at_or_above(value: f64) -> Place {
+/// The last place that a simulation error supports: the error is at most [`UNITS_OF_ERROR`] units
+/// of it. Far below everything shown where the error is 0.
+fn finest(error: f64) -> Place {
     const FAR_BELOW: Place = -12;
-    match place_at_or_below(value) {
+    match place_at_or_below(error) {
         None => FAR_BELOW,
-        Some(place) if power_of_ten(place) == value => place,
+        Some(place) if error <= UNITS_OF_ERROR * power_of_ten(place) => place,
         Some(place) => place + 1,
     }
 }
@@ -267,20 +283,23 @@ mod tests {
 
     #[test]
     fn no_digit_is_finer_than_the_simulation_error() {
-        assert_eq!(told(0.7612, 0.6117, 0.9389, 0.02), "0.8 (0.6 to 0.9)");
+        assert_eq!(told(0.7612, 0.6117, 0.9389, 0.014), "0.76 (0.61 to 0.94)");
+        assert_eq!(told(0.7612, 0.6117, 0.9389, 0.016), "0.8 (0.6 to 0.9)");
         assert_eq!(told(16.3419, 13.1888, 20.1203, 0.4), "16 (13 to 20)");
     }
 
     #[test]
     fn a_very_wide_interval_gives_each_figure_two_digits() {
         assert_eq!(told(12.41, 0.9012, 171.3, 1e-3), "12 (0.90 to 170)");
+        assert_eq!(told(0.931, 0.524, 1.701, 1e-2), "0.93 (0.52 to 1.7)");
+        assert_eq!(told(1.94, 1.02, 6.13, 1e-2), "1.9 (1.02 to 6.1)");
     }
 
     #[test]
     fn an_end_beside_one_gets_the_digits_that_set_it_apart() {
         assert_eq!(told(0.8477, 0.7204, 0.9981, 1e-4), "0.848 (0.720 to 0.998)");
         // Not where the simulation does not hold that digit.
-        assert_eq!(told(0.8477, 0.7204, 0.9981, 4e-3), "0.85 (0.72 to 1.00)");
+        assert_eq!(told(0.8477, 0.7204, 0.9981, 2e-3), "0.85 (0.72 to 1.00)");
     }
 
     #[test]

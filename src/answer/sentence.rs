@@ -171,10 +171,7 @@ pub fn baseline_sentence(
     evidence: &Evidence,
 ) -> String {
     let told = evidence.measured.told();
-    let unit = match exposure {
-        Some(exposure) => format!("{incidents} per {} {exposure}", as_written(per)),
-        None => format!("{incidents} per row"),
-    };
+    let unit = format!("{incidents} {}", per_exposure(exposure, per));
     let place = if at.is_empty() {
         String::new()
     } else {
@@ -188,6 +185,15 @@ pub fn baseline_sentence(
         told.lower,
         told.upper
     )
+}
+
+/// What a rate is told per: `per 10,000 boardings`, `per unit of boardings`, `per row`.
+pub fn per_exposure(exposure: Option<&str>, per: f64) -> String {
+    match exposure {
+        None => "per row".to_owned(),
+        Some(exposure) if per == 1.0 => format!("per unit of {exposure}"),
+        Some(exposure) => format!("per {} {exposure}", as_written(per)),
+    }
 }
 
 /// `a`, `a and b`, `a, b and c`.
@@ -358,6 +364,8 @@ mod tests {
             "Where decking is plain and slope_deg is 8, the rate is 16.3 falls per 10,000 boardings (95 % interval \
              13.2 to 20.1)."
         );
+        let plain = baseline_sentence("falls", Some("hours"), 1.0, &[], &evidence(3.2, 2.9, 3.6, 0.0));
+        assert!(plain.contains("3.20 falls per unit of hours"), "{plain}");
         let bare = baseline_sentence("falls", None, 1.0, &[], &evidence(3.2, 2.9, 3.6, 0.0));
         assert_eq!(bare, "The rate is 3.20 falls per row (95 % interval 2.90 to 3.60).");
     }

@@ -179,12 +179,14 @@ fn notes(spec: &Spec, design: &Design, stopped: StopReason) -> Vec<Note> {
                 .to_owned(),
         );
     }
-    note(
+    if !design.terms.is_empty() {
+        note(
         "association",
         "These are associations: rates that differ together with a column. That the column is the cause follows only \
          from how the study was set up, for instance from a draw by lot."
             .to_owned(),
     );
+    }
     if design.units.len() < design.counts.len() {
         note(
             "rows-independent",

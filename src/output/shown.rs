@@ -5,7 +5,7 @@
 //! probability and its state. No total of incidents is shown anywhere, since the one hidden count
 //! would follow from it by subtraction.
 
-use crate::check::UnitCheck;
+use crate::check::{UnitCheck, UnitState};
 use crate::output::findings::StudyFacts;
 use crate::spec::ZeroCounts;
 
@@ -67,5 +67,83 @@ impl Audience {
         } else {
             Observed::Count(unit.observed)
         }
+    }
+
+    /// Whether a unit's count lies outside its predictive interval, as far as this audience may
+    /// know: `None` where a hidden count decides it, since the answer would narrow that count down.
+    pub fn is_outside(self, unit: &UnitCheck) -> Option<bool> {
+        match self.observed(unit) {
+            Observed::Count(_) => Some(unit.state != UnitState::Inside),
+            Observed::Hidden { from, to } => {
+                let (from, to) = (from as f64, to as f64);
+                if to < unit.lower || from > unit.upper {
+                    Some(true)
+                } else if from >= unit.lower && to <= unit.upper {
+                    Some(false)
+                } else {
+                    None
+                }
+            }
+        }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn unit(observed: f64, lower: f64, upper: f64) -> UnitCheck {
+        UnitCheck {
+            unit: "Weir".into(),
+            rows: 1.0,
+            exposure: 1.0,
+            observed,
+            expected: 5.0,
+            lower,
+            upper,
+            tail_probability: 0.5,
+            state: if observed < lower {
+                UnitState::Below
+            } else if observed > upper {
+                UnitState::Above
+            } else {
+                UnitState::Inside
+            },
+        }
+    }
+
+    const HIDDEN: Audience = Audience::SmallCountsHidden {
+        below: 5,
+        zero: ZeroCounts::Hidden,
+    };
+
+    #[test]
+    fn the_threshold_is_the_first_count_that_is_shown() {
+        assert_eq!(
+            HIDDEN.observed(&unit(4.0, 0.0, 9.0)),
+            Observed::Hidden { from: 0, to: 4 }
+        );
+        assert_eq!(HIDDEN.observed(&unit(5.0, 0.0, 9.0)), Observed::Count(5.0));
+        assert_eq!(Audience::Whole.observed(&unit(0.0, 0.0, 9.0)), Observed::Count(0.0));
+    }
+
+    #[test]
+    fn nothing_is_hidden_below_a_threshold_of_nothing() {
+        let audience = Audience::SmallCountsHidden {
+            below: 0,
+            zero: ZeroCounts::Hidden,
+        };
+        assert_eq!(audience.observed(&unit(0.0, 0.0, 9.0)), Observed::Count(0.0));
+    }
+
+    #[test]
+    fn what_would_narrow_a_hidden_count_down_is_not_told() {
+        // Any count from 0 to 4 is inside, or outside: that tells nothing of this one.
+        assert_eq!(HIDDEN.is_outside(&unit(2.0, 0.0, 9.0)), Some(false));
+        assert_eq!(HIDDEN.is_outside(&unit(2.0, 5.0, 9.0)), Some(true));
+        // Here only 0 to 2 are outside, or only 4.
+        assert_eq!(HIDDEN.is_outside(&unit(2.0, 3.0, 9.0)), None);
+        assert_eq!(HIDDEN.is_outside(&unit(2.0, 0.0, 3.0)), None);
+        assert_eq!(Audience::Whole.is_outside(&unit(2.0, 3.0, 9.0)), Some(true));
     }
 }

@@ -76,9 +76,14 @@ fn rate_ratios(page: &mut Page, findings: &Findings) {
 }
 
 fn rate_and_scatter(page: &mut Page, findings: &Findings) {
-    page.heading("The rate itself");
     let study = &findings.study;
-    if let Some(baseline) = parameter(findings, "baseline") {
+    let scatter = parameter(findings, "scatter");
+    // The answer has told it already where it is the answer.
+    let baseline = parameter(findings, "baseline").filter(|baseline| findings.answer.term != baseline.term);
+    if baseline.is_some() || scatter.is_some() {
+        page.heading("The rate itself");
+    }
+    if let Some(baseline) = baseline {
         let evidence = answer::Evidence {
             measured: measured(baseline).exp_times(study.per),
             interval: study.interval,
@@ -93,7 +98,7 @@ fn rate_and_scatter(page: &mut Page, findings: &Findings) {
             &evidence,
         ));
     }
-    if let Some(scatter) = parameter(findings, "scatter") {
+    if let Some(scatter) = scatter {
         let told = measured(scatter).told();
         page.paragraph(&format!(
             "The scatter is {} ({} interval {} to {}): rows that look alike in every column of the model differ in \
@@ -109,13 +114,32 @@ fn rate_and_scatter(page: &mut Page, findings: &Findings) {
 fn units(page: &mut Page, findings: &Findings, audience: Audience) {
     let check = &findings.units;
     page.heading("Does each count fit the model?");
+    let judged = |wanted: Option<bool>| {
+        check
+            .units
+            .iter()
+            .filter(|unit| audience.is_outside(unit) == wanted)
+            .count()
+    };
+    let outside = judged(Some(true));
+    let not_judged = match judged(None) {
+        0 => String::new(),
+        units => format!(" ({} with small counts left open)", whole(units as f64)),
+    };
     page.paragraph(&format!(
-        "Of {} units (column {}), {} {} outside the {} interval that the model predicts; if the model were right, \
-         about {} would by chance.",
-        whole(check.units.len() as f64),
+        "Of {} (column {}), {} outside the {} interval that the model predicts{not_judged}; if the model \
+         were right, about {} would by chance.",
+        if check.units.len() == 1 {
+            "1 unit".to_owned()
+        } else {
+            format!("{} units", whole(check.units.len() as f64))
+        },
         findings.study.unit_column,
-        whole(check.outside as f64),
-        if check.outside == 1 { "lies" } else { "lie" },
+        match outside {
+            0 => "none lies".to_owned(),
+            1 => "1 lies".to_owned(),
+            more => format!("{} lie", whole(more as f64)),
+        },
         level(findings.study.interval),
         roughly(check.outside_by_chance)
     ));
@@ -147,16 +171,16 @@ fn units(page: &mut Page, findings: &Findings, audience: Audience) {
     }
     if outside.len() > OUTSIDE_SHOWN {
         page.paragraph(&format!(
-            "{} more outside are in units.csv.",
+            "Not listed: {} more outside; see units.csv.",
             whole((outside.len() - OUTSIDE_SHOWN) as f64)
         ));
     }
     let hidden = check.units.len() - check.units.iter().filter(is_shown).count();
     if hidden > 0 {
         page.paragraph(&format!(
-            "{} of the units are not named here or judged one by one, because their counts are below {} and could \
-             identify a person.",
+            "{} of the units {} not named here or judged one by one: a count below {} could identify a person.",
             whole(hidden as f64),
+            if hidden == 1 { "is" } else { "are" },
             findings.study.hide_counts_below
         ));
     }
@@ -193,7 +217,8 @@ pub(super) fn rows(page: &mut Page, audit: &Audit) {
         whole(audit.rows_read as f64)
     ));
     if audit.rows_not_kept > 0 {
-        page.paragraph(&format!("{} were left out by keep.", whole(audit.rows_not_kept as f64)));
+        let rows = audit.rows_not_kept;
+        page.paragraph(&format!("{} {} left out by keep.", whole(rows as f64), was(rows)));
     }
     if !audit.lines_dropped.is_empty() {
         const LINES_SHOWN: usize = 10;
@@ -204,8 +229,9 @@ pub(super) fn rows(page: &mut Page, audit: &Audit) {
             more => format!(" and {more} more, all in manifest.json"),
         };
         page.paragraph(&format!(
-            "{} were dropped because a value is missing: line {}{more}.",
+            "{} {} dropped because a value is missing: line {}{more}.",
             whole(lines.len() as f64),
+            was(lines.len()),
             shown.join(", ")
         ));
     }
@@ -278,6 +304,11 @@ fn the_run(page: &mut Page, run: &Path) {
     page.verbatim(&run.display().to_string());
     page.paragraph("To repeat it to the last digit:");
     page.verbatim(&format!("ratewright replay {}", shell_word(run)));
+}
+
+/// `was` for one, `were` for any other number.
+fn was(number: usize) -> &'static str {
+    if number == 1 { "was" } else { "were" }
 }
 
 fn parameter<'a>(findings: &'a Findings, term: &str) -> Option<&'a CoefficientFinding> {

@@ -1,6 +1,6 @@
 //! What `vet` tells: the rows, what is to be known about them, and what the priors imply.
 
-use crate::answer::{as_written, roughly, whole};
+use crate::answer::{as_written, per_exposure, roughly, whole};
 use crate::check::{PriorLook, PriorRange, PriorState};
 use crate::design::Audit;
 use crate::output::findings::Note;
@@ -85,7 +85,10 @@ fn ranges(page: &mut Page, vetting: &Vetting) {
     };
     let prior = &vetting.prior;
     let mut lines = vec![cells(
-        format!("rate at the baseline, {}", per(vetting)),
+        format!(
+            "rate at the baseline, {}",
+            per_exposure(vetting.exposure_column.as_deref(), vetting.per)
+        ),
         &prior.baseline_rate,
     )];
     lines.push(cells("rate over all rows".to_owned(), &prior.expected_rate));
@@ -122,12 +125,5 @@ fn counts(page: &mut Page, vetting: &Vetting) {
             "{} % of the simulated counts are above their exposure, which cannot be.",
             roughly(100.0 * share)
         ));
-    }
-}
-
-fn per(vetting: &Vetting) -> String {
-    match &vetting.exposure_column {
-        Some(column) => format!("per {} {column}", as_written(vetting.per)),
-        None => "per row".to_owned(),
     }
 }

@@ -5,6 +5,7 @@ use ratewright::answer::{Answer, BaselineRate, RateRatio};
 use ratewright::check::{UnitCheck, UnitState, UnitsCheck};
 use ratewright::design::{Audit, Coding, ColumnCoding, CovariateCoding};
 use ratewright::fit::Draws;
+use ratewright::numeric::exp;
 use ratewright::output::findings::*;
 use ratewright::output::manifest::FileFact;
 use ratewright::spec::*;
@@ -20,9 +21,9 @@ pub fn findings() -> Findings {
     let ratio = |k: usize, change: &str, prob_below_one: f64| RateRatio {
         term: coefficients[k].term.clone(),
         change: change.to_owned(),
-        rate_ratio: coefficients[k].median.exp(),
-        lower: coefficients[k].lower.exp(),
-        upper: coefficients[k].upper.exp(),
+        rate_ratio: exp(coefficients[k].median),
+        lower: exp(coefficients[k].lower),
+        upper: exp(coefficients[k].upper),
         prob_below_one,
     };
     let rate_ratios = vec![
