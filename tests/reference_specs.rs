@@ -1,6 +1,8 @@
 //! The specs of the reference cases say what the reference fits were made of: the same rows, terms
 //! and priors.
 
+#![allow(clippy::unwrap_used, clippy::panic)]
+
 use ratewright::design::{self, Design};
 use ratewright::spec::{self, Baseline, Family, Spec};
 use ratewright::table;
