@@ -7,7 +7,8 @@ mod support;
 use proptest::prelude::*;
 use ratewright::design;
 use ratewright::diagnostic::{Diagnostic, Place};
-use ratewright::spec::{At, Centre, Chances, Covariate, RowsWithGaps, Spec};
+use ratewright::output::diagnostic;
+use ratewright::spec::{self, At, Centre, Chances, Covariate, RowsWithGaps, Spec};
 use ratewright::table::{Table, TableError, parse_csv, read_csv};
 use std::collections::BTreeSet;
 use std::path::PathBuf;
@@ -259,6 +260,19 @@ fn rows_kept_by_what_is_no_number_and_rows_all_left_out() {
     insta::assert_snapshot!("no_row_left", unfit("keep.csv", &spec));
 }
 
+/// The same messages as a person reads them: each place shows the characters of the spec.
+#[test]
+fn places_in_the_spec_are_the_characters_at_fault() {
+    let text = std::fs::read_to_string(path("misfit.toml")).unwrap();
+    let spec = spec::parse("misfit.toml", &text).unwrap_or_else(|error| panic!("{error}"));
+    let error = design::build(&spec, &read("levels.csv").unwrap()).unwrap_err();
+    insta::assert_snapshot!(diagnostic::render(
+        &error.diagnostics(),
+        Some(&spec.source),
+        diagnostic::Look::Plain
+    ));
+}
+
 #[test]
 fn every_code_has_an_entry_in_the_docs() {
     let docs =
@@ -274,7 +288,7 @@ fn every_code_has_an_entry_in_the_docs() {
     }
     assert!(codes.len() > 30, "snapshots are missing: {codes:?}");
     for code in codes {
-        assert!(docs.contains(&format!("### {code}\n")), "no entry for {code}");
+        assert!(docs.contains(&format!("### `{code}`\n")), "no entry for {code}");
     }
 }
 

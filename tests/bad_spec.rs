@@ -5,6 +5,7 @@ use std::io::Write;
 use std::path::{Path, PathBuf};
 
 use proptest::prelude::*;
+use proptest::test_runner::FileFailurePersistence;
 use ratewright::output::diagnostic::{Look, render};
 use ratewright::spec::{SpecError, parse, read};
 
@@ -166,7 +167,11 @@ fn survives(text: &str) {
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig { cases: 2000, failure_persistence: None, ..ProptestConfig::default() })]
+    #![proptest_config(ProptestConfig {
+        cases: 2000,
+        failure_persistence: Some(Box::new(FileFailurePersistence::WithSource("regressions"))),
+        ..ProptestConfig::default()
+    })]
 
     #[test]
     fn no_text_makes_it_panic(text in "\\PC{0,200}") {

@@ -103,6 +103,23 @@ fn findings_of_a_fit_obey_the_printed_schema() {
 }
 
 #[test]
+fn a_rate_ratio_is_the_exponential_of_its_coefficient() {
+    let cells = |file: &str, line: usize| -> Vec<String> {
+        let text = fs::read_to_string(finished().join("landings.run").join(file)).unwrap();
+        text.lines().nth(line).unwrap().split(',').map(str::to_owned).collect()
+    };
+    let (coefficient, ratio) = (cells("coefficients.csv", 2), cells("rate_ratios.csv", 1));
+    assert_eq!(
+        (coefficient[0].as_str(), ratio[0].as_str()),
+        ("decking=grooved", "decking=grooved")
+    );
+    for (log, factor) in coefficient[1..4].iter().zip(&ratio[2..5]) {
+        let log: f64 = log.parse().unwrap();
+        assert_eq!(ratewright::numeric::exp(log), factor.parse::<f64>().unwrap());
+    }
+}
+
+#[test]
 fn json_prints_the_findings_and_nothing_else() {
     let place = place();
     let output = ratewright(place.path(), &["fit", "landings.toml", "--json", "--into", "x.run"]);
@@ -355,6 +372,22 @@ mod signals {
             let output = child.wait_with_output().unwrap();
             assert_eq!((output.status.code(), err(&output).as_str()), (Some(0), ""));
         }
+    }
+
+    #[test]
+    fn a_full_disk_is_told_with_the_file_and_leaves_nothing() {
+        let place = place();
+        // Files of at most 8 blocks: the draws need more. The signal that would end the process
+        // is ignored, so that the write itself fails, as it does on a full disk.
+        let script = "trap '' XFSZ; ulimit -f 8; exec \"$0\" fit landings.toml --quiet";
+        let output = Process::new("sh")
+            .current_dir(place.path())
+            .args(["-c", script, env!("CARGO_BIN_EXE_ratewright")])
+            .output()
+            .unwrap();
+        assert_eq!(output.status.code(), Some(1), "{}", err(&output));
+        assert!(err(&output).contains("landings.run/draws.parquet"), "{}", err(&output));
+        assert_eq!(names(place.path()), ["landings.csv", "landings.toml"]);
     }
 
     #[test]

@@ -3,6 +3,7 @@
 #[path = "support/study.rs"]
 mod support;
 
+use proptest::prelude::*;
 use ratewright::design::{self, Audit, CellRule, ColumnCoding, Design, DesignFault};
 use ratewright::spec::{Centre, Data, RowsWithGaps, Spec, Standing};
 use ratewright::table::{Cells, Table};
@@ -324,4 +325,38 @@ fn a_study_in_order_calls_for_no_remark() {
     };
     let design = built(&spec, &original);
     assert_eq!(design::remarks(&spec, &original, &design), []);
+}
+
+proptest! {
+    #![proptest_config(ProptestConfig { cases: 500, failure_persistence: None, ..ProptestConfig::default() })]
+
+    /// Whatever rows are kept, dropped or full of gaps: where a study can be built, the rows that it
+    /// used build it again, to the last bit.
+    #[test]
+    fn the_rows_used_always_make_the_same_design(
+        rows in proptest::collection::vec(
+            (0_usize..6, "[0-9]|NA|", "[1-9]{1,4}|0|", prop_oneof!["plain", "grooved", "mesh", "-", ""],
+             "-?[0-9]{1,3}(\\.[0-9]{1,3})?|NA", "[1-9][0-9]{0,3}(\\.5)?", prop_oneof!["spring", "summer", "winter"]),
+            12..40),
+        centre in prop_oneof![Just(Centre::Mean), Just(Centre::Value(3.0))],
+    ) {
+        let mut text = "landing,falls,boardings,decking,slope,queue,season\n".to_owned();
+        for (unit, falls, boardings, decking, slope, queue, season) in &rows {
+            text.push_str(&format!("L{unit},{falls},{boardings},{decking},{slope},{queue},{season}\n"));
+        }
+        let original = table(&text);
+        let mut spec = study();
+        spec.data.rows_with_gaps = RowsWithGaps::Drop;
+        spec.data.gap_marks = vec!["NA".to_owned(), "-".to_owned()];
+        spec.data.keep = vec![keep_levels("season", &["spring", "summer"]), keep_numbers("boardings", Some(1.0), None)];
+        spec.covariates = vec![category("decking", "plain"), number("slope", centre, 10.0), log_number("queue", centre)];
+        spec.joints = vec![joint("slope", "decking")];
+        if let Ok(design) = design::build(&spec, &original) {
+            let used = design::used_rows(&spec, &original).unwrap();
+            let again = Design { audit: design.audit.clone(), ..built(&spec, &used) };
+            prop_assert_eq!(&again, &design);
+            let audit = &design.audit;
+            prop_assert_eq!(audit.rows_used + audit.rows_not_kept + audit.lines_dropped.len(), audit.rows_read);
+        }
+    }
 }

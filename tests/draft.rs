@@ -42,10 +42,32 @@ fn what_can_be_seen_in_the_names_and_cells_is_used() {
         Some("month")
     );
     let exposure = drafted.spec.exposure.as_ref().unwrap();
-    // 16 incidents in 9,450 people: 1.7 in a thousand, by hand.
+    // 16 incidents in 8,650 people: 1.85 in a thousand, by hand.
     assert_eq!((exposure.column.value.as_str(), exposure.per), ("population", 1000.0));
-    assert_eq!(value(&drafted.text, "plausible_rate"), ["[0.056, 51]"]);
+    assert_eq!(value(&drafted.text, "plausible_rate"), ["[0.062, 55]"]);
     assert_eq!(drafted.spec.study.answer.value, "programme=1");
+}
+
+#[test]
+fn the_classic_tables_are_read_as_meant() {
+    for (file, unit, incidents, exposure) in [
+        ("ships.csv", "cell", "incidents", Some("service")),
+        ("insurance.csv", "cell", "Claims", Some("Holders")),
+        ("quine.csv", "pupil", "Days", None),
+        ("clinic.csv", "unit", "events", Some("years")),
+    ] {
+        let path = PathBuf::from(env!("CARGO_MANIFEST_DIR"))
+            .join("tests/reference")
+            .join(file);
+        let drafted = draft(&read_csv(file, &path).unwrap()).unwrap_or_else(|error| panic!("{file}: {error}"));
+        assert_eq!(drafted.spec.data.unit.value, unit);
+        assert_eq!(drafted.spec.incidents.column.value, incidents);
+        assert_eq!(
+            drafted.spec.exposure.map(|exposure| exposure.column.value).as_deref(),
+            exposure
+        );
+        insta::assert_snapshot!(format!("terms_of_{file}"), drafted.design.coding.terms.join("\n"));
+    }
 }
 
 #[test]
@@ -77,7 +99,7 @@ fn names_that_need_quoting_are_quoted() {
 fn incidents_without_exposure_are_told_aloud() {
     let drafted = draft(&table("site,falls,visits\na,1,0\nb,0,0\nc,3,50\nd,1,20\n")).unwrap();
     assert!(
-        drafted.text.contains("# 1 of them have incidents all the same"),
+        drafted.text.contains("# Of them with incidents all the same: 1."),
         "{}",
         drafted.text
     );
@@ -103,6 +125,11 @@ fn a_table_without_counts_is_refused_with_what_spoils_them() {
     assert_eq!(error.diagnostics()[0].code, "draft-no-count");
     let error = draft(&table("falls\n3\n1\n")).unwrap_err();
     assert_eq!(error.diagnostics()[0].code, "draft-no-unit");
+    let docs =
+        std::fs::read_to_string(PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("docs/problems-data.md")).unwrap();
+    for code in ["draft-no-count", "draft-no-unit"] {
+        assert!(docs.contains(&format!("### `{code}`\n")), "no entry for {code}");
+    }
 }
 
 proptest! {

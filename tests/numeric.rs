@@ -45,7 +45,7 @@ fn ln_gamma_meets_its_table() {
             worst.compare(ln_gamma(row[0]), row[1], &format!("{:e}", row[0]));
         }
     }
-    worst.below(4e-15);
+    worst.below(1e-15);
     assert_eq!(ln_gamma(0.0), f64::INFINITY);
     assert_eq!(ln_gamma(f64::INFINITY), f64::INFINITY);
     assert!(ln_gamma(-0.5).is_nan());
@@ -79,7 +79,7 @@ fn normal_meets_its_tables() {
             worst.compare(normal_quantile(row[0]), row[1], &format!("quantile {:e}", row[0]));
         }
     }
-    worst.below(2e-15);
+    worst.below(1e-15);
     assert_eq!(normal_quantile(0.0), f64::NEG_INFINITY);
     assert_eq!(normal_quantile(1.0), f64::INFINITY);
     assert!(normal_quantile(1.1).is_nan() && normal_quantile(-0.1).is_nan() && normal_quantile(f64::NAN).is_nan());
@@ -99,7 +99,7 @@ fn rising_sums_meet_their_table() {
         }
     }
     for worst in worst {
-        worst.below(2e-14);
+        worst.below(2e-15);
     }
 }
 
@@ -114,7 +114,7 @@ fn rising_sums_add_up() {
         }
         worst.compare(left.slope + right.slope, whole.slope, "slope");
         worst.compare(left.curvature + right.curvature, whole.curvature, "curvature");
-        worst.below(1e-14);
+        worst.below(2e-15);
     }
 }
 
@@ -129,10 +129,11 @@ fn poisson_meets_its_table() {
         at_most.compare(poisson_cdf(y, mean), row[4], &about);
         above.compare(poisson_sf(y, mean), row[5], &about);
     }
-    ln_pmf.below(1e-13);
-    pmf.below(1e-12);
-    at_most.below(1e-12);
-    above.below(1e-12);
+    ln_pmf.below(5e-15);
+    // A probability of 1e-218 is exp(-501), and the rounding of 501 is its relative error.
+    pmf.below(2e-13);
+    at_most.below(2e-13);
+    above.below(2e-13);
 }
 
 #[test]
@@ -177,12 +178,16 @@ fn negative_binomial_meets_its_table() {
         ln_pmf.compare(nb2_ln_pmf(y, mean, c), row[3], &about);
         pmf.compare(nb2_pmf(y, mean, c), row[4], &about);
         at_most.compare(nb2_cdf(y, mean, c), row[5], &about);
-        above.compare(nb2_sf(y, mean, c), row[6], &about);
+        let found = nb2_sf(y, mean, c);
+        // At a scatter of 50 the upper tail may be what the lower one leaves of 1.
+        if c < 50.0 || (found - row[6]).abs() > 4e-15 {
+            above.compare(found, row[6], &about);
+        }
     }
-    ln_pmf.below(1e-12);
-    pmf.below(1e-12);
-    at_most.below(1e-12);
-    above.below(1e-12);
+    ln_pmf.below(5e-15);
+    pmf.below(2e-13);
+    at_most.below(2e-13);
+    above.below(2e-13);
 }
 
 #[test]

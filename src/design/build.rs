@@ -10,15 +10,12 @@ use super::fault::{CollinearTerm, DesignError, DesignFault};
 use super::nearest::nearest;
 use super::outcome;
 use super::rows::{self, Reading, Rows, labels, uses};
-use super::types::{Audit, Coding, CovariateCoding, Design, Term};
+use super::types::{Audit, Coding, CovariateCoding, Design, PARAMETERS, Term};
 use crate::numeric::ln;
 use crate::spec::Spec;
 use crate::table::{Cells, Column, Table, TextCells};
 use std::collections::HashMap;
 use std::ops::Range;
-
-/// Names that no term may bear, because other parameters do.
-const PARAMETERS: [&str; 3] = ["baseline", "scatter", "spread"];
 
 /// Builds the design of `spec` from `table`.
 ///

@@ -1,6 +1,9 @@
 //! Which terms the others determine, decided in a fixed order of additions: a library's rank may
 //! differ between machines, and a study must not be accepted on one and refused on another.
 
+use super::covariates::exact_mean;
+use crate::numeric::dot;
+
 /// A term is determined by those before it when they leave open less than this share of its
 /// variance.
 ///
@@ -75,14 +78,10 @@ fn standardised(column: &[f64]) -> Option<Vec<f64>> {
     if column.iter().all(|value| value == first) {
         return None;
     }
-    let mean = super::covariates::mean(column);
+    let mean = exact_mean(column);
     let centred: Vec<f64> = column.iter().map(|value| value - mean).collect();
     let length = dot(&centred, &centred).sqrt();
     (length > 0.0).then(|| centred.iter().map(|value| value / length).collect())
-}
-
-pub(super) fn dot(a: &[f64], b: &[f64]) -> f64 {
-    a.iter().zip(b).map(|(a, b)| a * b).sum()
 }
 
 /// The x of L' x = b.

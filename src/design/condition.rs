@@ -2,7 +2,7 @@
 //!
 //! For remarks only: whether a study is refused is `collinear`'s to decide.
 
-use super::collinear::dot;
+use crate::numeric::dot;
 
 /// Sweeps of Jacobi rotations after which the eigenvalues stand, whatever is left; each sweep
 /// after the fourth or so squares what is left, so that this is never reached.
@@ -65,18 +65,17 @@ impl Scaled {
 
     /// The leverage of each row: x (X'X)^-1 x'.
     pub fn leverage(&self) -> Vec<f64> {
-        let rows = self.columns[0].len();
-        let mut leverage = vec![0.0; rows];
+        let mut leverage = vec![0.0; self.columns[0].len()];
+        let mut along = leverage.clone();
         for (value, vector) in self.values.iter().zip(&self.vectors) {
-            for (row, leverage) in leverage.iter_mut().enumerate() {
-                let along: f64 = self
-                    .columns
-                    .iter()
-                    .zip(vector)
-                    .map(|(column, part)| column[row] * part)
-                    .sum();
-                *leverage += along * along / value;
+            along.fill(0.0);
+            for (column, part) in self.columns.iter().zip(vector) {
+                along.iter_mut().zip(column).for_each(|(along, x)| *along += part * x);
             }
+            leverage
+                .iter_mut()
+                .zip(&along)
+                .for_each(|(leverage, along)| *leverage += along * along / value);
         }
         leverage
     }

@@ -6,7 +6,7 @@ use super::nearest::nearest;
 use super::outcome::numbers;
 use super::rows::{Rows, labels};
 use super::types::ColumnCoding;
-use crate::numeric::{exp, ln};
+use crate::numeric::{exp, ln, mean};
 use crate::spec::{Centre, Covariate, CovariateKind, Merge};
 
 /// A category with more levels than this is a mistake, whatever the number of rows.
@@ -123,7 +123,7 @@ pub(super) fn coding_of(covariate: &Covariate, values: &Values, faults: &mut Vec
             constant(covariate, numbers, faults);
             let centre = match centre {
                 Centre::Value(centre) => *centre,
-                Centre::Mean => mean(numbers),
+                Centre::Mean => exact_mean(numbers),
             };
             ColumnCoding::Number { centre, step: *step }
         }
@@ -131,7 +131,9 @@ pub(super) fn coding_of(covariate: &Covariate, values: &Values, faults: &mut Vec
             constant(covariate, numbers, faults);
             let centre = match centre {
                 Centre::Value(centre) => *centre,
-                Centre::Mean => exp(mean(&numbers.iter().map(|&number| ln(number)).collect::<Vec<f64>>())),
+                Centre::Mean => exp(exact_mean(
+                    &numbers.iter().map(|&number| ln(number)).collect::<Vec<f64>>(),
+                )),
             };
             ColumnCoding::LogNumber { centre }
         }
@@ -149,13 +151,12 @@ pub(super) fn merged<'a>(merge: &'a [(String, String)], level: &'a str) -> &'a s
         .map_or(level, |(_, into)| into)
 }
 
-/// The mean, in the order of the rows, with a second pass that takes up the first one's rounding.
-/// Each number is divided before it is added, so that sums of very large numbers stay finite.
-pub(super) fn mean(numbers: &[f64]) -> f64 {
-    let rows = numbers.len() as f64;
-    let first: f64 = numbers.iter().map(|number| number / rows).sum();
-    let rest: f64 = numbers.iter().map(|number| (number - first) / rows).sum();
-    first + rest
+/// The mean, with a second pass that takes up the rounding of the first: the centre of a number is
+/// written into the run, and should be the mean to the last digits however long the column.
+pub(super) fn exact_mean(numbers: &[f64]) -> f64 {
+    let first = mean(numbers);
+    let rest: Vec<f64> = numbers.iter().map(|number| number - first).collect();
+    first + mean(&rest)
 }
 
 fn constant(covariate: &Covariate, numbers: &[f64], faults: &mut Vec<DesignFault>) {

@@ -78,11 +78,12 @@ pub enum Remark {
 pub fn remarks(spec: &Spec, table: &Table, design: &Design) -> Vec<Remark> {
     let mut remarks = Vec::new();
     sparse_levels(design, &mut remarks);
-    near_collinear(design, &mut remarks);
+    let scaled = Scaled::new(&design.columns, design.counts.len());
+    near_collinear(design, &scaled, &mut remarks);
     // The study has been built, so that choosing its rows again finds no fault.
     let rows = choose(spec, table, &mut Vec::new()).used.rows;
     far_centres(design, table, &rows, &mut remarks);
-    leverage(design, &mut remarks);
+    leverage(design, &scaled, &mut remarks);
     repeated_periods(spec, table, &rows, &mut remarks);
     wide_exposure(design, &mut remarks);
     provisional(spec, &mut remarks);
@@ -114,8 +115,7 @@ fn sparse_levels(design: &Design, remarks: &mut Vec<Remark>) {
     }
 }
 
-fn near_collinear(design: &Design, remarks: &mut Vec<Remark>) {
-    let scaled = Scaled::new(&design.columns, design.counts.len());
+fn near_collinear(design: &Design, scaled: &Scaled, remarks: &mut Vec<Remark>) {
     let condition = scaled.number();
     if condition > HIGH_CONDITION {
         let name = |column: usize| match column {
@@ -151,8 +151,8 @@ fn far_centres(design: &Design, table: &Table, rows: &[usize], remarks: &mut Vec
     }
 }
 
-fn leverage(design: &Design, remarks: &mut Vec<Remark>) {
-    let leverage = Scaled::new(&design.columns, design.counts.len()).leverage();
+fn leverage(design: &Design, scaled: &Scaled, remarks: &mut Vec<Remark>) {
+    let leverage = scaled.leverage();
     let high = leverage
         .iter()
         .zip(&design.lines)

@@ -163,7 +163,11 @@ impl DesignError {
             .collect();
         let mut help = Vec::new();
         for level in unknown {
-            let line = format!("`{}` has {}", level.column, listed(&level.present));
+            let among = match role {
+                LevelRole::Keep => "",
+                LevelRole::Merge | LevelRole::Reference => "in the rows used ",
+            };
+            let line = format!("{among}`{}` has {}", level.column, listed(&level.present));
             if !help.contains(&line) {
                 help.push(line);
             }

@@ -32,6 +32,9 @@ pub struct Design {
 /// The largest count that is accepted: beyond it a count is a mistake in the file.
 pub const LARGEST_COUNT: f64 = 1e9;
 
+/// Names that no term may bear, because other parameters do.
+pub(super) const PARAMETERS: [&str; 3] = ["baseline", "scatter", "spread"];
+
 /// One coefficient of the linear predictor.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Term {

@@ -206,7 +206,10 @@ fn advance_group(group: &mut [Chain], target: &impl Target, proposal: &Proposal,
         target.log_densities(&proposed, &mut log_densities);
         for (k, chain) in group.iter_mut().enumerate() {
             let point = &proposed[k * d..(k + 1) * d];
-            let log_reference = proposal.reference.as_ref().map_or(0.0, |reference| reference.log_density(point));
+            let log_reference = proposal
+                .reference
+                .as_ref()
+                .map_or(0.0, |reference| reference.log_density(point));
             chain.decide(kinds[k], point, log_densities[k], log_reference);
         }
     }

@@ -82,8 +82,12 @@ pub fn choose(laplace: &Laplace, history: &History, scatter: Option<usize>) -> O
     let d = laplace.mean.len();
     let mut best: Option<(f64, Correction, Tails, f64)> = None;
     for correction in CORRECTIONS {
-        let Some(shape) = corrected(laplace, history, scatter, correction, &|row| history.fits(row)) else { continue };
-        let Ok(plain) = Reference::new(&shape, Tails::Normal, 1.0) else { continue };
+        let Some(shape) = corrected(laplace, history, scatter, correction, &|row| history.fits(row)) else {
+            continue;
+        };
+        let Ok(plain) = Reference::new(&shape, Tails::Normal, 1.0) else {
+            continue;
+        };
         let judged: Vec<(f64, [Option<f64>; 2])> = history
             .log_densities
             .iter()
@@ -121,7 +125,11 @@ fn mean_absolute_change(judged: &[(f64, [Option<f64>; 2])], kernel: Kernel, infl
         .collect();
     ratios.sort_unstable_by(f64::total_cmp);
     let n = ratios.len() as f64;
-    let sum: f64 = ratios.iter().enumerate().map(|(i, r)| (2.0 * i as f64 - n + 1.0) * r).sum();
+    let sum: f64 = ratios
+        .iter()
+        .enumerate()
+        .map(|(i, r)| (2.0 * i as f64 - n + 1.0) * r)
+        .sum();
     2.0 * sum / (n * n)
 }
 
@@ -142,7 +150,12 @@ pub fn corrected(
         Correction::Diagonal(share) | Correction::Moments(share) => share,
         Correction::None => 0.0,
     };
-    let moved: Vec<f64> = laplace.mean.iter().zip(&mean).map(|(from, to)| from + share * (to - from)).collect();
+    let moved: Vec<f64> = laplace
+        .mean
+        .iter()
+        .zip(&mean)
+        .map(|(from, to)| from + share * (to - from))
+        .collect();
     let mut shape = vec![0.0; d * d];
     match correction {
         Correction::Moments(_) => {
@@ -180,7 +193,12 @@ fn moments(
     let mut sums = vec![0.0; d];
     let mut squares = vec![0.0; d * d];
     let mut off = vec![0.0; d];
-    for (row, point) in history.points.chunks_exact(d).enumerate().filter(|(row, _)| taken(*row)) {
+    for (row, point) in history
+        .points
+        .chunks_exact(d)
+        .enumerate()
+        .filter(|(row, _)| taken(*row))
+    {
         if !history.log_densities[row].is_finite() {
             continue;
         }

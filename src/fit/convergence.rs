@@ -180,7 +180,12 @@ impl Ordered {
         let mut start = 0;
         while start < kept.len() {
             let value = self.sorted[kept[start]];
-            let tied = kept[start..].iter().take_while(|k| self.sorted[**k] == value).count();
+            // At least itself: a NaN, which is not meant, equals nothing and would end no loop.
+            let tied = kept[start..]
+                .iter()
+                .take_while(|k| self.sorted[**k] == value)
+                .count()
+                .max(1);
             // Ranks from 1: the tied ones are start + 1 to start + tied.
             let rank = start as f64 + 0.5 * (tied as f64 + 1.0);
             let score = normal_quantile((rank - 0.375) / (size + 0.25));

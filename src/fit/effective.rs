@@ -6,7 +6,7 @@ use crate::numeric::{Fourier, dot, ln, mean, sum};
 ///
 /// A chain that mixes is judged within a few lags. One that is stuck needs as many lags as it has
 /// draws, which at a million draws would take minutes lag by lag.
-const DIRECT_LAGS: usize = 128;
+const DIRECT_LAGS: usize = 512;
 
 /// Chains of equal length, one after another.
 #[derive(Debug, Clone, Copy)]
@@ -180,4 +180,59 @@ pub(super) fn centre(values: &[f64]) -> f64 {
 pub(super) fn squares_about(values: &[f64], centre: f64) -> f64 {
     let squares: Vec<f64> = values.iter().map(|value| (value - centre) * (value - centre)).collect();
     sum(&squares)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::numeric::{Purpose, Stream};
+
+    /// Two routes to one figure, for odd and even numbers of chains and lengths that are no power of two.
+    #[test]
+    fn the_transform_gives_the_sums_lag_by_lag() {
+        for (count, length) in [(1, 700), (3, 601), (8, 513), (2, 4)] {
+            let mut stream = Stream::new(count as u64, Purpose::Simulation, 0);
+            let mut x = 0.0;
+            let values: Vec<f64> = (0..count * length)
+                .map(|_| {
+                    x = 0.99 * x + stream.normal();
+                    x + 1e3
+                })
+                .collect();
+            let mut covariances = Autocovariances::of(Chains::new(&values, count));
+            let transformed = all_lags(covariances.chains, &covariances.centred);
+            let size = covariances.at(0);
+            for lag in 0..length.min(DIRECT_LAGS + 1) {
+                let difference = covariances.at(lag) - transformed[lag];
+                assert!(
+                    difference.abs() < 1e-13 * size,
+                    "{count} x {length}, lag {lag}: {difference:e} of {size:e}"
+                );
+            }
+        }
+    }
+
+    /// A chain so slow that the sum goes on past the direct lags: the two parts must join without a step.
+    #[test]
+    fn a_trend_uses_lags_past_the_direct_ones() {
+        let length = 4000;
+        let values: Vec<f64> = (0..2 * length).map(|k| f64::from(k % length)).collect();
+        let found = Chains::new(&values, 2).effective();
+        // Geyer's sum by definition, every lag summed directly.
+        let n = f64::from(length);
+        let middle = 0.5 * (n - 1.0);
+        let covariance = |lag: i32| {
+            (0..length - lag)
+                .map(|k| (f64::from(k) - middle) * (f64::from(k + lag) - middle))
+                .sum::<f64>()
+                / n
+        };
+        let rho = |lag: usize| {
+            let (within, total) = (covariance(0) * n / (n - 1.0), covariance(0));
+            1.0 - (within - covariance(lag as i32)) / total
+        };
+        let expected = 2.0 * n / autocorrelation_time(length as usize, rho);
+        assert!((found / expected - 1.0).abs() < 1e-10, "{found} for {expected}");
+        assert!(found < 12.0, "{found}");
+    }
 }

@@ -68,7 +68,13 @@ pub fn laplace(model: &Model) -> Result<(Mode, Laplace), ClimbFailed> {
         scatter: None,
         steps: reached.steps,
     };
-    Ok((mode, Laplace { mean: reached.coefficients, covariance }))
+    Ok((
+        mode,
+        Laplace {
+            mean: reached.coefficients,
+            covariance,
+        },
+    ))
 }
 
 fn by_profile(model: &Model) -> Result<(Mode, Laplace), ClimbFailed> {
@@ -103,7 +109,11 @@ fn mode_at(section: &Section, steps: u64) -> Mode {
         point,
         log_density: section.height,
         covariance,
-        scatter: Some(if inside { ScatterMode::Inside } else { ScatterMode::AtZero }),
+        scatter: Some(if inside {
+            ScatterMode::Inside
+        } else {
+            ScatterMode::AtZero
+        }),
         steps,
     }
 }
@@ -117,7 +127,10 @@ const MOST_EXTENSIONS: usize = 60;
 
 /// Sections at the nodes of the quadrature over the scatter, each with its log weight.
 fn nodes(model: &Model, peaks: &[Peak]) -> Result<Vec<(Section, f64)>, ClimbFailed> {
-    let top = peaks.iter().map(|peak| peak.section.log_mass).fold(f64::NEG_INFINITY, f64::max);
+    let top = peaks
+        .iter()
+        .map(|peak| peak.section.log_mass)
+        .fold(f64::NEG_INFINITY, f64::max);
     let mut edges: Vec<f64> = Vec::new();
     for peak in peaks.iter().filter(|peak| peak.section.log_mass > top - NEGLIGIBLE) {
         edges.extend(EDGES.iter().map(|t| (peak.section.scatter + t * peak.width).max(0.0)));
@@ -135,7 +148,10 @@ fn nodes(model: &Model, peaks: &[Peak]) -> Result<Vec<(Section, f64)>, ClimbFail
     let mut width = edges[edges.len() - 1] - edges[edges.len() - 2];
     let mut end = edges[edges.len() - 1];
     for _ in 0..MOST_EXTENSIONS {
-        if nodes.last().is_none_or(|(s, _)| s.log_mass < largest(&nodes) - NEGLIGIBLE) {
+        if nodes
+            .last()
+            .is_none_or(|(s, _)| s.log_mass < largest(&nodes) - NEGLIGIBLE)
+        {
             break;
         }
         width *= 2.0;
@@ -147,7 +163,10 @@ fn nodes(model: &Model, peaks: &[Peak]) -> Result<Vec<(Section, f64)>, ClimbFail
     let mut width = edges[1] - edges[0];
     let mut left: Vec<(Section, f64)> = Vec::new();
     while start > 0.0 {
-        let outermost = left.iter().chain(&nodes).min_by(|a, b| a.0.scatter.total_cmp(&b.0.scatter));
+        let outermost = left
+            .iter()
+            .chain(&nodes)
+            .min_by(|a, b| a.0.scatter.total_cmp(&b.0.scatter));
         match outermost {
             Some((section, _)) if section.log_mass >= largest(&nodes) - NEGLIGIBLE => known = section.clone(),
             _ => break,
@@ -203,11 +222,14 @@ fn moments(nodes: &[(Section, f64)]) -> Laplace {
             .collect();
         for i in 0..d {
             for j in 0..d {
-                let within = if i < size && j < size { section.covariance[i * size + j] } else { 0.0 };
+                let within = if i < size && j < size {
+                    section.covariance[i * size + j]
+                } else {
+                    0.0
+                };
                 covariance[i * d + j] += share * (within + off[i] * off[j]);
             }
         }
     }
     Laplace { mean, covariance }
 }
-

@@ -23,3 +23,6 @@ pub use run::{Fit, FitError, Machine, run};
 pub use sampler::{Plan, Sampled, SamplingFailed, sample, warm_up_iterations};
 pub use stopping::{FEWEST_EFFECTIVE, Goal, INTERVAL_END, LARGEST_R_HAT, Verdict};
 pub use watch::{Stage, Unwatched, Watch};
+
+#[cfg(test)]
+mod law_tests;

@@ -61,14 +61,21 @@ pub fn climb(model: &Model, scatter: Option<f64>, start: &[f64]) -> Result<Climb
         .timer(false)
         .run();
     // The operator never fails and the solver reports through its own fields.
-    let Ok(outcome) = outcome else { return Err(ClimbFailed::BadStart) };
+    let Ok(outcome) = outcome else {
+        return Err(ClimbFailed::BadStart);
+    };
     let steps = outcome.state().get_iter();
     let newton = outcome.solver;
     match (newton.failure, newton.reached, newton.finished) {
         (Some(failure), _, _) => Err(failure),
         (None, Some((coefficients, derivatives)), true) => {
             let factor = negative_hessian(&derivatives, coefficients.len())?;
-            Ok(Climb { coefficients, derivatives, factor, steps })
+            Ok(Climb {
+                coefficients,
+                derivatives,
+                factor,
+                steps,
+            })
         }
         _ => Err(ClimbFailed::StepLimit),
     }
@@ -134,7 +141,9 @@ impl<'a> Solver<Slice<'a>, Steps> for Newton {
     }
 
     fn next_iter(&mut self, problem: &mut Problem<Slice<'a>>, state: Steps) -> Result<(Steps, Option<KV>), Error> {
-        let Some((place, here)) = self.reached.take() else { return Ok((state, None)) };
+        let Some((place, here)) = self.reached.take() else {
+            return Ok((state, None));
+        };
         let size = place.len();
         let factor = match negative_hessian(&here, size) {
             Ok(factor) => factor,

@@ -77,7 +77,12 @@ pub fn section(model: &Model, scatter: f64, start: &[f64]) -> Result<Section, Cl
 /// The section at a scatter near a known one: the search starts where the drift points.
 pub fn section_near(model: &Model, known: &Section, scatter: f64) -> Result<Section, ClimbFailed> {
     let ahead = scatter - known.scatter;
-    let start: Vec<f64> = known.coefficients.iter().zip(&known.drift).map(|(b, s)| b + ahead * s).collect();
+    let start: Vec<f64> = known
+        .coefficients
+        .iter()
+        .zip(&known.drift)
+        .map(|(b, s)| b + ahead * s)
+        .collect();
     // Far ahead the straight line may leave the region where the density is above 0.
     section(model, scatter, &start).or_else(|_| section(model, scatter, &known.coefficients))
 }

@@ -49,7 +49,11 @@ impl Shape {
     /// a signed scatter then.
     pub fn of_moments(mean: &[f64], covariance: &[f64], scatter: Option<usize>) -> Self {
         let d = mean.len();
-        let mut shape = Shape { centre: mean.to_vec(), covariance: covariance.to_vec(), scatter };
+        let mut shape = Shape {
+            centre: mean.to_vec(),
+            covariance: covariance.to_vec(),
+            scatter,
+        };
         if let Some(s) = scatter {
             let variance = covariance[s * d + s];
             if mean[s] < 2.5 * variance.sqrt() {
@@ -175,9 +179,8 @@ impl Kernel {
     /// The kernel in `dimension` dimensions for a shape with this half log determinant.
     pub fn new(dimension: usize, tails: Tails, half_log_determinant: f64) -> Self {
         let d = dimension as f64;
-        let t_constant = |degrees: f64| {
-            ln_gamma(0.5 * (degrees + d)) - ln_gamma(0.5 * degrees) - 0.5 * d * (ln(degrees) + LN_PI)
-        };
+        let t_constant =
+            |degrees: f64| ln_gamma(0.5 * (degrees + d)) - ln_gamma(0.5 * degrees) - 0.5 * d * (ln(degrees) + LN_PI);
         let main = match tails {
             Tails::Normal => -0.5 * d * LN_TWO_PI,
             Tails::T(degrees) => t_constant(degrees),
@@ -206,7 +209,10 @@ impl Kernel {
         }
         let images = if distances[1].is_some() { 2.0 } else { 1.0 };
         let top = parts.iter().copied().fold(f64::NEG_INFINITY, f64::max);
-        let sum: f64 = parts.iter().map(|part| if *part > top - 60.0 { exp(part - top) } else { 0.0 }).sum();
+        let sum: f64 = parts
+            .iter()
+            .map(|part| if *part > top - 60.0 { exp(part - top) } else { 0.0 })
+            .sum();
         top + ln(sum / images)
     }
 }

@@ -60,7 +60,12 @@ pub enum SamplingFailed {
 ///
 /// # Errors
 /// [`SamplingFailed`] says why there are no draws.
-pub fn sample(target: &impl Target, laplace: &Laplace, plan: &Plan, watch: &dyn Watch) -> Result<Sampled, SamplingFailed> {
+pub fn sample(
+    target: &impl Target,
+    laplace: &Laplace,
+    plan: &Plan,
+    watch: &dyn Watch,
+) -> Result<Sampled, SamplingFailed> {
     let start = Cholesky::factor(&laplace.covariance, target.dimension()).map_err(|_| SamplingFailed::NoCovariance)?;
     let mut chains: Vec<Chain> = (0..plan.chains)
         .map(|index| Chain::start(target, laplace, &start, plan.seed, index as u64))
@@ -93,17 +98,23 @@ fn warm_up(
     let mut done = 0;
     for until in [plan.warm_up / 4, plan.warm_up / 2, plan.warm_up] {
         let proposal = chosen.proposal(plan.steps).ok_or(SamplingFailed::NoCovariance)?;
-        move_watched(chains, target, &proposal, until - done, plan, watch, &|moved| Stage::WarmUp {
-            done: done + moved,
-            of: plan.warm_up,
+        move_watched(chains, target, &proposal, until - done, plan, watch, &|moved| {
+            Stage::WarmUp {
+                done: done + moved,
+                of: plan.warm_up,
+            }
         })?;
         done = until;
         let history = history(chains, target.dimension());
         let next = match plan.steps {
             Steps::Mixed => choose(laplace, &history, scatter),
             // Haario et al. 2001, frozen after warm-up.
-            Steps::Walk => corrected(laplace, &history, scatter, Correction::Moments(0.5), &|_| true)
-                .map(|shape| Chosen { covariance: shape.covariance, ..chosen.clone() }),
+            Steps::Walk => {
+                corrected(laplace, &history, scatter, Correction::Moments(0.5), &|_| true).map(|shape| Chosen {
+                    covariance: shape.covariance,
+                    ..chosen.clone()
+                })
+            }
         };
         // A stage in which no chain moved gives no covariance: keep what there was.
         if let Some(next) = next.filter(|next| next.proposal(plan.steps).is_some()) {
@@ -117,10 +128,15 @@ fn warm_up(
 /// The chains' points since they were last forgotten, iteration by iteration.
 fn history(chains: &[Chain], d: usize) -> History {
     let iterations = chains.first().map_or(0, |chain| chain.log_densities.len());
-    let mut history = History { chains: chains.len(), ..History::default() };
+    let mut history = History {
+        chains: chains.len(),
+        ..History::default()
+    };
     for iteration in 0..iterations {
         for chain in chains {
-            history.points.extend_from_slice(&chain.points[iteration * d..(iteration + 1) * d]);
+            history
+                .points
+                .extend_from_slice(&chain.points[iteration * d..(iteration + 1) * d]);
             history.log_densities.push(chain.log_densities[iteration]);
         }
     }
@@ -141,16 +157,20 @@ fn draw(
     let mut per_chain = 0;
     let mut next = plan.goal.first_per_chain(plan.chains);
     loop {
-        move_watched(chains, target, proposal, next - per_chain, plan, watch, &|moved| Stage::Drawing {
-            done: (per_chain + moved) * plan.chains,
-            next: next * plan.chains,
-            most: most * plan.chains,
+        move_watched(chains, target, proposal, next - per_chain, plan, watch, &|moved| {
+            Stage::Drawing {
+                done: (per_chain + moved) * plan.chains,
+                next: next * plan.chains,
+                most: most * plan.chains,
+            }
         })?;
         per_chain = next;
         let values = by_parameter(chains, d, target.scatter_place());
         let (assessments, verdict) = plan.goal.judge(&values, plan.chains, plan.threads);
         match verdict {
-            Verdict::More { worth } if per_chain < most => next = plan.goal.next_per_chain(per_chain, worth, plan.chains),
+            Verdict::More { worth } if per_chain < most => {
+                next = plan.goal.next_per_chain(per_chain, worth, plan.chains)
+            }
             _ => {
                 let accepted: usize = chains.iter().map(|chain| chain.accepted).sum();
                 return Ok(Sampled {
@@ -170,7 +190,9 @@ fn draw(
 fn by_parameter(chains: &[Chain], d: usize, scatter: Option<usize>) -> Vec<Vec<f64>> {
     (0..d)
         .map(|place| {
-            let values = chains.iter().flat_map(|chain| chain.points.chunks_exact(d).map(move |point| point[place]));
+            let values = chains
+                .iter()
+                .flat_map(|chain| chain.points.chunks_exact(d).map(move |point| point[place]));
             if scatter == Some(place) {
                 values.map(f64::abs).collect()
             } else {

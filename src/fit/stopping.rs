@@ -46,11 +46,11 @@ impl Goal {
     }
 
     /// Draws of each chain before the next look: a whole number of rounds. Looks that cannot succeed
-    /// are left out, since each costs a sort of all draws: the next one is at nine tenths of what
+    /// are left out, since each costs a sort of all draws: the next one is just beyond what
     /// the last one asked for, and at most four times as far.
     pub fn next_per_chain(&self, per_chain: usize, worth: f64, chains: usize) -> usize {
         let round = ROUND.div_ceil(chains);
-        let asked = (per_chain as f64 * (0.9 * worth).min(4.0)) as usize;
+        let asked = (per_chain as f64 * (1.02 * worth).min(4.0)) as usize;
         let next = (asked / round * round).max(per_chain + round);
         next.min(self.most_per_chain(chains))
     }
@@ -59,7 +59,11 @@ impl Goal {
     pub fn judge(&self, values: &[Vec<f64>], chains: usize, threads: usize) -> (Vec<Assessment>, Verdict) {
         let assessments = assess_all(values, chains, self.interval, threads);
         let worth = assessments.iter().map(|a| self.worth(a)).fold(0.0, f64::max);
-        let verdict = if worth <= 1.0 { Verdict::Met } else { Verdict::More { worth } };
+        let verdict = if worth <= 1.0 {
+            Verdict::Met
+        } else {
+            Verdict::More { worth }
+        };
         (assessments, verdict)
     }
 
@@ -98,9 +102,16 @@ fn assess_all(values: &[Vec<f64>], chains: usize, interval: f64, threads: usize)
         let parts: Vec<_> = values
             .chunks(share)
             .map(|part| {
-                scope.spawn(move || part.iter().map(|values| assess(values, chains, interval)).collect::<Vec<_>>())
+                scope.spawn(move || {
+                    part.iter()
+                        .map(|values| assess(values, chains, interval))
+                        .collect::<Vec<_>>()
+                })
             })
             .collect();
-        parts.into_iter().flat_map(|part| part.join().unwrap_or_default()).collect()
+        parts
+            .into_iter()
+            .flat_map(|part| part.join().unwrap_or_default())
+            .collect()
     })
 }

@@ -40,7 +40,10 @@ impl CountTable {
         for (count, weight) in counts.iter().zip(weights) {
             *occurrences.entry(*count as u64).or_insert(0.0) += weight;
         }
-        let longest = occurrences.keys().next_back().map_or(0, |count| (*count as usize).min(TABLE));
+        let longest = occurrences
+            .keys()
+            .next_back()
+            .map_or(0, |count| (*count as usize).min(TABLE));
         let mut above = vec![0.0; longest];
         for (count, times) in &occurrences {
             for entry in &mut above[..(*count as usize).min(longest)] {
@@ -68,7 +71,11 @@ impl CountTable {
 
     /// The part and its derivatives at a = c^2.
     pub fn derivatives(&self, a: f64) -> CountPart {
-        let mut part = CountPart { value: self.value(a), first: 0.0, second: 0.0 };
+        let mut part = CountPart {
+            value: self.value(a),
+            first: 0.0,
+            second: 0.0,
+        };
         for (j, rows) in self.above.iter().enumerate() {
             let j = j as f64;
             let share = j / (1.0 + a * j);

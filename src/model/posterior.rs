@@ -60,9 +60,12 @@ impl Model {
                 mean: range.log_mean() - ln(design.coding.per),
                 sd: range.log_sd(),
             }),
-            Baseline::Earlier { incidents, exposure, .. } => {
-                BaselinePrior::Earlier { incidents: *incidents, exposure: *exposure }
-            }
+            Baseline::Earlier {
+                incidents, exposure, ..
+            } => BaselinePrior::Earlier {
+                incidents: *incidents,
+                exposure: *exposure,
+            },
         };
         let scatter_prior = match spec.family {
             Family::Poisson => None,
@@ -71,7 +74,10 @@ impl Model {
         let term_priors = design
             .terms
             .iter()
-            .map(|term| NormalPrior { mean: term.prior_mean, sd: term.prior_sd })
+            .map(|term| NormalPrior {
+                mean: term.prior_mean,
+                sd: term.prior_sd,
+            })
             .collect();
         Model::with_priors(design, baseline_prior, term_priors, scatter_prior)
     }
@@ -83,7 +89,12 @@ impl Model {
         term_priors: Vec<NormalPrior>,
         scatter_prior: Option<ScatterPrior>,
     ) -> Self {
-        let weighted: Vec<f64> = design.counts.iter().zip(&design.stands_for).map(|(y, w)| y * w).collect();
+        let weighted: Vec<f64> = design
+            .counts
+            .iter()
+            .zip(&design.stands_for)
+            .map(|(y, w)| y * w)
+            .collect();
         let mut count_sums = vec![weighted.iter().sum()];
         for column in &design.columns {
             count_sums.push(column.iter().zip(&weighted).map(|(x, y)| x * y).sum());
@@ -234,7 +245,9 @@ impl Model {
             return None;
         }
         let dispersion = self.dispersion(point);
-        let rows = self.blocks.derivatives(point, self.scatter.as_ref().map(|_| dispersion.unwrap_or(0.0)));
+        let rows = self
+            .blocks
+            .derivatives(point, self.scatter.as_ref().map(|_| dispersion.unwrap_or(0.0)));
         let mut value = self.constant + self.log_prior(point) + rows.value;
         let mut gradient = vec![0.0; d];
         let mut hessian = vec![0.0; d * d];
@@ -270,6 +283,10 @@ impl Model {
                 hessian[last * d + i] = mixed;
             }
         }
-        value.is_finite().then_some(Derivatives { value, gradient, hessian })
+        value.is_finite().then_some(Derivatives {
+            value,
+            gradient,
+            hessian,
+        })
     }
 }

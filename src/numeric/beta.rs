@@ -18,7 +18,7 @@ pub fn incomplete_beta(a: f64, b: f64, x: f64) -> f64 {
     }
     let y = 1.0 - x;
     let lambda = a * y - b * x;
-    if lambda >= 0.0 {
+    if lambda > 2.0 * x - 1.0 {
         front(a, b, x, y, lambda) / beta_fraction(a, b, x, lambda)
     } else {
         1.0 - front(a, b, x, y, lambda) / beta_fraction(b, a, y, -lambda)
@@ -55,7 +55,10 @@ fn front(a: f64, b: f64, x: f64, y: f64, lambda: f64) -> f64 {
     exp_to_zero(log) * (a * (b / n) / (2.0 * std::f64::consts::PI)).sqrt()
 }
 
-/// The F of I_x(a, b) = x^a (1 - x)^b / (B(a, b) F), for `lambda` = a (1 - x) - b x >= 0.
+/// The F of I_x(a, b) = x^a (1 - x)^b / (B(a, b) F), for `lambda` = a (1 - x) - b x above 2 x - 1.
+///
+/// That condition is x < (a + 1) / (a + b + 2), where the fraction ends soon. (Split at the mean, at
+/// lambda = 0, it crept where b is below 1: with a = 1e6, b = 4e-4 it stopped six digits short.)
 ///
 /// The continued fraction of DiDonato & Morris (1992), "Algorithm 708: significant digit
 /// computation of the incomplete beta function ratios", equation 9, by the modified Lentz method.

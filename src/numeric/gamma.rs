@@ -139,10 +139,11 @@ fn stirling_series(x: f64) -> f64 {
 /// ln Gamma(x) - ((x - 1/2) ln x - x + ln(2 pi) / 2), for `x` above 0; accurate relative to itself for x >= 1.
 ///
 /// Below 12 it climbs by s(x) = s(x + 1) + (x + 1/2) ln(1 + 1/x) - 1. With w = 1 / (2 x + 1) the
-/// step is atanh(w) / w - 1 = w^2 B(w^2): all terms positive, nothing cancels.
+/// step is atanh(w) / w - 1 = w^2 B(w^2): all terms positive, nothing cancels. (Below x = 1, w is too
+/// large for the series of B, and the step is large enough to be taken as it stands.)
 pub(super) fn stirling_remainder(x: f64) -> f64 {
     if x < 1.0 {
-        return ln_gamma(x) - (x - 0.5) * ln(x) + x - HALF_LN_TWO_PI;
+        return stirling_remainder(x + 1.0) + (x + 0.5) * ln_1p(1.0 / x) - 1.0;
     }
     let mut x = x;
     let mut sum = 0.0;
@@ -186,9 +187,9 @@ pub(super) fn atanh_tail(z: f64) -> f64 {
     sum
 }
 
-/// d ln(x / m) - (x - m) scaled: the deviance part x ln(x / m) - (x - m) >= 0 of `x` about `m`, with
-/// the difference `d` = x - m given, because the caller often knows it better than x - m would.
+/// The deviance part x ln(x / m) - (x - m) >= 0 of `x` about `m`, both above 0 (or x = 0: then m).
 ///
+/// The difference `d` = x - m is asked for, because the caller often knows it better than x - m would tell.
 /// With s = d / (x + m) it is d s (1 + s (1 + s) B(s^2)) while |s| <= 1/3 (compare Loader 2000,
 /// "Fast and accurate computation of binomial probabilities", the function bd0).
 pub(super) fn deviance_part(x: f64, m: f64, d: f64) -> f64 {

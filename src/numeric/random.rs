@@ -72,7 +72,7 @@ impl Stream {
         }
     }
 
-    /// Gamma with this shape and scale 1. Shapes from 1e-8 to 1e12.
+    /// Gamma with this shape and scale 1. Shapes from 1e-8 to 1e12; one that is no finite number comes back as it is.
     ///
     /// Marsaglia & Tsang (2000). Where the value would be below 1e-304 it is held there, above 0
     /// (a shape of 0.0004 does that to most draws); use [`Stream::ln_gamma`] to see further.
@@ -97,6 +97,10 @@ impl Stream {
 
     /// Gamma with a shape of at least 1.
     fn gamma_from_one(&mut self, shape: f64) -> f64 {
+        if !shape.is_finite() {
+            // No candidate would ever be accepted.
+            return shape;
+        }
         let d = shape - 1.0 / 3.0;
         let c = 1.0 / (9.0 * d).sqrt();
         loop {
@@ -113,12 +117,16 @@ impl Stream {
         }
     }
 
-    /// Poisson with this mean, from 0 to 1e12.
+    /// Poisson with this mean, from 0 to 1e12; a mean that is no finite number comes back as it is.
     ///
     /// Below 10 by inversion of one uniform; from 10 by transformed rejection with squeeze
     /// (Hörmann 1993, "The transformed rejection method for generating Poisson random variables",
     /// algorithm PTRS).
     pub fn poisson(&mut self, mean: f64) -> f64 {
+        if !mean.is_finite() {
+            // No candidate would ever be accepted.
+            return mean;
+        }
         if mean < 10.0 {
             return self.poisson_by_inversion(mean);
         }

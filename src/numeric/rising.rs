@@ -21,7 +21,7 @@ pub struct RisingSum {
 ///
 /// Here 1 + a (m + i) = (1 + a m) (1 + b i) with b = a / (1 + a m), so that
 /// value = n ln(1 + a m) + G(n, b) with n = y - m and G the same sum from 0: two terms of one sign,
-/// in the value and in both derivatives. G comes from Stirling's formula (see [`from_zero`]).
+/// in the value and in both derivatives. G comes from Stirling's formula (see `from_zero`).
 pub fn ln_rising(m: f64, y: f64, a: f64) -> RisingSum {
     let mut total = RisingSum {
         value: 0.0,

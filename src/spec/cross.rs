@@ -5,7 +5,7 @@ use std::ops::Range;
 
 use super::fault::{AnswerFault, JointFault, SpecFault};
 use super::fields::Faults;
-use super::predictor::{CovariateDraft, JointDraft, merged_into};
+use super::predictor::{CovariateDraft, Form, JointDraft, merged_into};
 use super::study::{At, Data, Exposure, Incidents};
 use super::values::nearest;
 
@@ -23,7 +23,7 @@ pub(super) fn check_terms(covariates: &[CovariateDraft], joints: &[JointDraft], 
     let mut seen: Vec<(&str, Range<usize>)> = Vec::new();
     for covariate in covariates {
         let Some(column) = &covariate.column else { continue };
-        if covariate.form != Some("category") && RESERVED.contains(&column.value.as_str()) {
+        if covariate.form != Some(Form::Category) && RESERVED.contains(&column.value.as_str()) {
             faults.push(SpecFault::DuplicateTerm {
                 term: column.value.clone(),
                 first: None,
@@ -74,7 +74,7 @@ pub(super) fn check_terms(covariates: &[CovariateDraft], joints: &[JointDraft], 
 /// Tells a column of counts that has another role too: counts explained by themselves mean nothing.
 pub(super) fn check_counts_column(
     incidents: Option<&Incidents>,
-    exposure: Option<&Option<Exposure>>,
+    exposure: Option<&Exposure>,
     data: Option<&Data>,
     covariates: &[CovariateDraft],
     faults: &mut Faults,
@@ -82,9 +82,7 @@ pub(super) fn check_counts_column(
     let Some(counts) = incidents.map(|incidents| &incidents.column.value) else {
         return;
     };
-    let exposure = exposure
-        .and_then(Option::as_ref)
-        .map(|exposure| ("`column` in [exposure]", &exposure.column));
+    let exposure = exposure.map(|exposure| ("`column` in [exposure]", &exposure.column));
     let unit = data.map(|data| ("`unit` in [data]", &data.unit));
     let period = data
         .and_then(|data| data.period.as_ref())
@@ -187,7 +185,7 @@ fn part(covariate: &CovariateDraft, name: &str) -> Part {
     let Some(column) = &covariate.column else {
         return Part::Other;
     };
-    if covariate.form != Some("category") {
+    if covariate.form != Some(Form::Category) {
         return if name == column.value { Part::Term } else { Part::Other };
     }
     let Some(level) = name
@@ -221,7 +219,7 @@ fn part(covariate: &CovariateDraft, name: &str) -> Part {
 fn pattern(covariate: &CovariateDraft) -> String {
     let column = covariate.column.as_ref().map_or("", |column| &column.value);
     match covariate.form {
-        Some("category") => format!("{column}={ANY_LEVEL}"),
+        Some(Form::Category) => format!("{column}={ANY_LEVEL}"),
         _ => column.to_string(),
     }
 }

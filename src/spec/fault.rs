@@ -245,6 +245,13 @@ pub enum RangeFault {
         /// The ends.
         at: f64,
     },
+    /// The ends differ by less than [`NARROWEST`](super::NARROWEST) allows.
+    TooNarrow {
+        /// The smaller end.
+        lo: f64,
+        /// The larger end.
+        hi: f64,
+    },
     /// `{ }` without `from` and `to`.
     NoEnds,
 }
@@ -300,6 +307,8 @@ pub enum EarlierFault {
     NotPoisson,
     /// They were not seen at the reference.
     NotAtReference,
+    /// They are marked as provisional.
+    Provisional,
 }
 
 /// Why an answer is no term.

@@ -268,12 +268,9 @@ impl<'a> Fields<'a> {
         array: &DeArray<'_>,
         faults: &mut Faults,
     ) -> Option<Result<[f64; 2], RangeFault>> {
-        let [first, second] = array
-            .get(0)
-            .zip(array.get(1))
-            .map_or([None; 2], |(a, b)| [Some(a), Some(b)]);
-        let (Some(first), Some(second), 2) = (first, second, array.len()) else {
-            return Some(Err(RangeFault::NotTwo { ends: array.len() }));
+        let values: Vec<&Spanned<DeValue<'_>>> = array.iter().collect();
+        let [first, second] = values.as_slice() else {
+            return Some(Err(RangeFault::NotTwo { ends: values.len() }));
         };
         let mut ends = [0.0; 2];
         for (end, value) in ends.iter_mut().zip([first, second]) {

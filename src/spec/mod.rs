@@ -29,3 +29,4 @@ pub use reference::{EXAMPLE, reference_markdown};
 pub use schema::json_schema;
 pub use study::*;
 pub use tables::{TABLES, TABLES_NOT_YET};
+pub use values::NARROWEST;

@@ -10,12 +10,19 @@ use super::keys::Bounds;
 use super::sections::{in_order, plausible_range, read_standing};
 use super::study::{At, Centre, Covariate, CovariateKind, Joint, Merge, PlausibleRange};
 
+/// The value of `as`.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Form {
+    Category,
+    Number,
+    LogNumber,
+}
+
 /// One `[[covariate]]` as far as it could be read: relations between tables are checked on what is
 /// known, so that one bad value hides no other problem.
 pub(super) struct CovariateDraft {
     pub column: Option<At<String>>,
-    /// The value of `as`.
-    pub form: Option<&'static str>,
+    pub form: Option<Form>,
     /// Levels merged, also where the reference is missing.
     pub merge: Vec<Merge>,
     /// The reference, also where the merges are at fault.
@@ -55,14 +62,18 @@ impl JointDraft {
 
 pub(super) fn read_covariate(fields: &Fields<'_>, faults: &mut Faults) -> CovariateDraft {
     let column = fields.text("column", faults);
-    let form = fields.choice("as", faults);
-    if let Some(form) = form {
+    let form = fields.choice("as", faults).map(|form| {
         fields.tell_misplaced(form, faults);
-    }
+        match form {
+            "category" => Form::Category,
+            "number" => Form::Number,
+            _ => Form::LogNumber,
+        }
+    });
     let mut reference = None;
     let mut merge = Vec::new();
     let kind = match form {
-        Some("category") => {
+        Some(Form::Category) => {
             reference = fields.text("reference", faults);
             merge = read_merge(fields, column.as_ref(), reference.as_ref(), faults);
             reference.clone().map(|reference| CovariateKind::Category {
@@ -70,14 +81,16 @@ pub(super) fn read_covariate(fields: &Fields<'_>, faults: &mut Faults) -> Covari
                 merge: merge.clone(),
             })
         }
-        Some("number") => {
+        Some(Form::Number) => {
             let centre = read_centre(fields, Bounds::NONE, faults);
             let step = fields.number("step", faults);
             centre
                 .zip(step)
                 .map(|(centre, step)| CovariateKind::Number { centre, step })
         }
-        Some(_) => read_centre(fields, Bounds::POSITIVE, faults).map(|centre| CovariateKind::LogNumber { centre }),
+        Some(Form::LogNumber) => {
+            read_centre(fields, Bounds::POSITIVE, faults).map(|centre| CovariateKind::LogNumber { centre })
+        }
         None => None,
     };
     CovariateDraft {

@@ -2,6 +2,7 @@
 
 use std::fs::File;
 use std::io::Read;
+use std::ops::Range;
 use std::path::Path;
 
 use toml::de::{DeTable, DeValue};
@@ -126,8 +127,8 @@ fn read_root(source: &Source, root: &DeTable<'_>, faults: &mut Faults) -> Option
     let baseline = tables
         .one("baseline", faults)
         .and_then(|fields| read_baseline(&fields, family.kind, faults));
-    let covariates = tables.many("covariate", faults, |fields, faults| read_covariate(fields, faults));
-    let joints = tables.many("joint", faults, |fields, faults| read_joint(fields, faults));
+    let covariates = tables.many("covariate", faults, read_covariate);
+    let joints = tables.many("joint", faults, read_joint);
     let sampling = tables
         .or_defaults("sampling", faults)
         .and_then(|fields| read_sampling(&fields, faults));
@@ -136,13 +137,8 @@ fn read_root(source: &Source, root: &DeTable<'_>, faults: &mut Faults) -> Option
         .and_then(|fields| read_report(&fields, faults));
 
     check_terms(&covariates, &joints, faults);
-    check_counts_column(
-        incidents.as_ref(),
-        exposure.as_ref(),
-        data.as_ref(),
-        &covariates,
-        faults,
-    );
+    let exposure_read = exposure.as_ref().and_then(Option::as_ref);
+    check_counts_column(incidents.as_ref(), exposure_read, data.as_ref(), &covariates, faults);
     if let Some(study) = &study {
         check_answer(&study.answer, &covariates, &joints, faults);
     }
@@ -242,7 +238,7 @@ fn meant(name: &str) -> Option<&'static str> {
 }
 
 /// `[covariate]` for `[[covariate]]`, `study = 3` for `[study]`.
-fn wrong_shape(info: &TableInfo, found: &DeValue<'_>, span: std::ops::Range<usize>) -> SpecFault {
+fn wrong_shape(info: &TableInfo, found: &DeValue<'_>, span: Range<usize>) -> SpecFault {
     SpecFault::WrongType {
         key: format!("`{}`", info.name),
         wanted: match info.times {

@@ -1,7 +1,7 @@
 //! One function for each table of the spec but the covariates and joints.
 
 use toml::Spanned;
-use toml::de::{DeTable, DeValue};
+use toml::de::{DeString, DeTable, DeValue};
 
 use super::fault::{EarlierFault, RangeFault, SpecFault};
 use super::fields::{Faults, Fields};
@@ -147,23 +147,33 @@ pub(super) fn read_exposure(fields: &Fields<'_>, faults: &mut Faults) -> Option<
     })
 }
 
+/// The value of `kind` in `[family]`.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum FamilyKind {
+    Poisson,
+    NegativeBinomial,
+}
+
 /// `[family]` as far as it could be read.
 #[derive(Default)]
 pub(super) struct FamilyDraft {
-    /// The value of `kind`, which `[baseline]` needs to know.
-    pub kind: Option<&'static str>,
+    /// Which family, as `[baseline]` needs to know.
+    pub kind: Option<FamilyKind>,
     /// The whole, where nothing was at fault.
     pub family: Option<Family>,
 }
 
 pub(super) fn read_family(fields: &Fields<'_>, faults: &mut Faults) -> FamilyDraft {
-    let kind = fields.choice("kind", faults);
-    if let Some(kind) = kind {
+    let kind = fields.choice("kind", faults).map(|kind| {
         fields.tell_misplaced(kind, faults);
-    }
+        match kind {
+            "poisson" => FamilyKind::Poisson,
+            _ => FamilyKind::NegativeBinomial,
+        }
+    });
     let family = match kind {
-        Some("poisson") => Some(Family::Poisson),
-        Some(_) => {
+        Some(FamilyKind::Poisson) => Some(Family::Poisson),
+        Some(FamilyKind::NegativeBinomial) => {
             let scatter_up_to = fields.number("scatter_up_to", faults);
             let standing = read_standing(fields, faults);
             scatter_up_to
@@ -179,14 +189,14 @@ pub(super) fn read_family(fields: &Fields<'_>, faults: &mut Faults) -> FamilyDra
 }
 
 /// Reads `[baseline]`; `kind` is that of the family, where it is known.
-pub(super) fn read_baseline(fields: &Fields<'_>, kind: Option<&'static str>, faults: &mut Faults) -> Option<Baseline> {
+pub(super) fn read_baseline(fields: &Fields<'_>, kind: Option<FamilyKind>, faults: &mut Faults) -> Option<Baseline> {
     let standing = read_standing(fields, faults);
     match (fields.place("plausible_rate"), fields.place("earlier")) {
         (Some(range), Some(earlier)) => {
             faults.push(SpecFault::TwoBaselines { range, earlier });
             None
         }
-        (None, Some(_)) => read_earlier(fields, kind, faults),
+        (None, Some(_)) => read_earlier(fields, kind, standing, faults),
         (Some(_), None) => {
             let range = fields.range("plausible_rate", faults);
             Some(Baseline::PlausibleRate(plausible_range(range?, standing?)))
@@ -208,14 +218,20 @@ pub(super) fn read_baseline(fields: &Fields<'_>, kind: Option<&'static str>, fau
     }
 }
 
-fn read_earlier(fields: &Fields<'_>, kind: Option<&'static str>, faults: &mut Faults) -> Option<Baseline> {
+fn read_earlier(
+    fields: &Fields<'_>,
+    kind: Option<FamilyKind>,
+    standing: Option<Standing>,
+    faults: &mut Faults,
+) -> Option<Baseline> {
     let earlier = fields.open_inline(&EARLIER, "earlier", faults)?;
     let incidents = earlier.number("incidents", faults);
     let exposure = earlier.number("exposure", faults);
     let at_reference = earlier.switch("at_reference", faults);
-    let refused = match (kind, at_reference) {
-        (Some(kind), _) if kind != "poisson" => Some(EarlierFault::NotPoisson),
-        (_, Some(false)) => Some(EarlierFault::NotAtReference),
+    let refused = match (kind, at_reference, standing) {
+        (Some(FamilyKind::NegativeBinomial), _, _) => Some(EarlierFault::NotPoisson),
+        (_, Some(false), _) => Some(EarlierFault::NotAtReference),
+        (_, _, Some(Standing::Provisional)) => Some(EarlierFault::Provisional),
         _ => None,
     };
     if let Some(why) = refused {
@@ -284,9 +300,7 @@ pub(super) fn plausible_range(ends: At<[f64; 2]>, standing: Standing) -> Plausib
 }
 
 /// Entries of a table in the order of the text: the TOML reader keeps them by name.
-pub(super) fn in_order<'t, 'a>(
-    table: &'t DeTable<'a>,
-) -> Vec<(&'t Spanned<std::borrow::Cow<'a, str>>, &'t Spanned<DeValue<'a>>)> {
+pub(super) fn in_order<'t, 'a>(table: &'t DeTable<'a>) -> Vec<(&'t Spanned<DeString<'a>>, &'t Spanned<DeValue<'a>>)> {
     let mut entries: Vec<_> = table.iter().collect();
     entries.sort_by_key(|(key, _)| key.span().start);
     entries

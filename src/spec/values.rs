@@ -6,6 +6,10 @@ use super::fault::{KeyHint, RangeFault};
 use super::keys::TableInfo;
 use super::tables::TABLES;
 
+/// The least ratio of the ends of a plausible range. Below it the prior's precision (1.5e9 here)
+/// swamps what the data say in double precision, down to a standard deviation that rounds to 0.
+pub const NARROWEST: f64 = 1.0001;
+
 /// Whether two finite ends make a range of positive numbers.
 pub(super) fn check_ends([lo, hi]: [f64; 2]) -> Result<[f64; 2], RangeFault> {
     if lo <= 0.0 || hi <= 0.0 {
@@ -16,6 +20,8 @@ pub(super) fn check_ends([lo, hi]: [f64; 2]) -> Result<[f64; 2], RangeFault> {
         Err(RangeFault::Reversed { lo, hi })
     } else if lo == hi {
         Err(RangeFault::Empty { at: lo })
+    } else if hi < lo * NARROWEST {
+        Err(RangeFault::TooNarrow { lo, hi })
     } else {
         Ok([lo, hi])
     }

@@ -194,6 +194,11 @@ fn bad_range(key: &str, why: &RangeFault) -> Told {
             format!("both ends are {at}"),
             "Let the ends differ: a range of one value leaves nothing to learn.",
         ),
+        RangeFault::TooNarrow { lo, hi } => (
+            "is too narrow",
+            format!("from {lo} to {hi} only"),
+            "Let the ends differ by 0.01 % at least: a narrower range leaves nothing to learn.",
+        ),
         RangeFault::NoEnds => (
             "has no ends",
             "neither `from` nor `to`".into(),
@@ -260,12 +265,16 @@ fn earlier_refused(why: EarlierFault) -> Told {
             "earlier data must have been seen at the reference",
             "not at the reference",
         ),
+        EarlierFault::Provisional => (
+            "earlier data cannot be provisional: they were seen",
+            "marked as provisional",
+        ),
     };
     Told {
         message: message.into(),
         label: label.into(),
         help: "Write what the earlier data suggest as a range instead, plausible_rate = [low, high] per `per`; widen \
-               it where they were seen in other conditions."
+               it where they were seen in other conditions or are in doubt."
             .into(),
     }
 }

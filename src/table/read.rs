@@ -41,12 +41,13 @@ pub fn parse_csv(file: &str, bytes: &[u8]) -> Result<Table, TableError> {
     let Some(header) = rows.next().map_err(|fault| refuse(vec![fault]))? else {
         return Err(refuse(vec![TableFault::Empty]));
     };
-    let mut faults = header_faults(&header);
+    let names: Vec<String> = header.cells.iter().map(|name| name.trim().to_owned()).collect();
+    let mut faults = header_faults(&names, header.line);
     if matches!(faults.as_slice(), [TableFault::OtherSeparator { .. }]) {
         return Err(refuse(faults));
     }
 
-    let mut cells = vec![TextCells::default(); header.cells.len()];
+    let mut cells = vec![TextCells::default(); names.len()];
     let mut lines = Vec::new();
     let mut ragged = Vec::new();
     loop {
@@ -66,7 +67,7 @@ pub fn parse_csv(file: &str, bytes: &[u8]) -> Result<Table, TableError> {
             });
             continue;
         }
-        for (column, cell) in cells.iter_mut().zip(&row.cells) {
+        for (column, cell) in cells.iter_mut().zip(row.cells) {
             column.push(cell.trim());
         }
         lines.push(row.line);
@@ -76,22 +77,20 @@ pub fn parse_csv(file: &str, bytes: &[u8]) -> Result<Table, TableError> {
     }
     if !ragged.is_empty() {
         faults.push(TableFault::Ragged {
-            header: header.cells.len(),
+            header: names.len(),
             rows: ragged,
         });
     }
     if !faults.is_empty() {
         return Err(refuse(faults));
     }
-    let columns = header.cells.iter().zip(cells);
+    let columns = names.into_iter().zip(cells).map(|(name, cells)| Column {
+        name,
+        cells: Cells::Text(cells),
+    });
     Ok(Table {
         file: file.to_owned(),
-        columns: columns
-            .map(|(name, cells)| Column {
-                name: name.trim().to_owned(),
-                cells: Cells::Text(cells),
-            })
-            .collect(),
+        columns: columns.collect(),
         lines,
     })
 }
@@ -118,18 +117,19 @@ fn plain_text(bytes: &[u8]) -> Result<&str, TableFault> {
 
 /// Line ends in `bytes`: a line feed, a carriage return, or both together.
 fn line_ends(bytes: &[u8]) -> u64 {
-    let ends = |at: usize| match bytes[at] {
-        b'\n' => true,
-        b'\r' => bytes.get(at + 1) != Some(&b'\n'),
-        _ => false,
+    let feeds = bytes.iter().filter(|&&byte| byte == b'\n').count();
+    let returns = bytes.iter().filter(|&&byte| byte == b'\r').count();
+    let pairs = match returns {
+        0 => 0,
+        _ => bytes.windows(2).filter(|pair| pair == b"\r\n").count(),
     };
-    (0..bytes.len()).filter(|&at| ends(at)).count() as u64
+    (feeds + returns - pairs) as u64
 }
 
 /// One row of the text: its line, its cells, and the text that they were read from.
 struct Row<'a> {
     line: u64,
-    cells: csv::StringRecord,
+    cells: &'a csv::StringRecord,
     text: &'a str,
 }
 
@@ -137,15 +137,16 @@ struct Row<'a> {
 ///
 /// The lines are counted here and not taken from the reader's own position: that one is taken
 /// before blank lines, and the line feed of a CRLF, are skipped, and is then a line too early.
-struct Rows<'a> {
-    text: &'a str,
-    reader: csv::Reader<&'a [u8]>,
+struct Rows<'t> {
+    text: &'t str,
+    reader: csv::Reader<&'t [u8]>,
+    cells: csv::StringRecord,
     counted_to: usize,
     line: u64,
 }
 
-impl<'a> Rows<'a> {
-    fn new(text: &'a str) -> Self {
+impl<'t> Rows<'t> {
+    fn new(text: &'t str) -> Self {
         let reader = csv::ReaderBuilder::new()
             .has_headers(false)
             .flexible(true)
@@ -153,18 +154,19 @@ impl<'a> Rows<'a> {
         Rows {
             text,
             reader,
+            cells: csv::StringRecord::new(),
             counted_to: 0,
             line: 1,
         }
     }
 
-    fn next(&mut self) -> Result<Option<Row<'a>>, TableFault> {
-        let mut cells = csv::StringRecord::new();
+    fn next(&mut self) -> Result<Option<Row<'_>>, TableFault> {
+        let bytes = self.text.as_bytes();
         loop {
             let before = self.reader.position().byte() as usize;
             let more = self
                 .reader
-                .read_record(&mut cells)
+                .read_record(&mut self.cells)
                 .map_err(|error| TableFault::Unreadable {
                     reason: error.to_string(),
                 })?;
@@ -172,7 +174,6 @@ impl<'a> Rows<'a> {
                 return Ok(None);
             }
             let after = self.reader.position().byte() as usize;
-            let bytes = self.text.as_bytes();
             let blank = bytes[before..after]
                 .iter()
                 .take_while(|byte| matches!(byte, b'\r' | b'\n'))
@@ -189,7 +190,7 @@ impl<'a> Rows<'a> {
             }
             return Ok(Some(Row {
                 line: self.line,
-                cells,
+                cells: &self.cells,
                 text,
             }));
         }
@@ -202,26 +203,25 @@ fn never_closed(text: &str) -> bool {
     text.trim_end().contains(['\n', '\r']) && text.matches('"').count() % 2 == 1
 }
 
-fn header_faults(header: &Row) -> Vec<TableFault> {
-    let names: Vec<&str> = header.cells.iter().map(str::trim).collect();
-    if let [only] = names.as_slice()
+fn header_faults(names: &[String], line: u64) -> Vec<TableFault> {
+    if let [only] = names
         && let Some(separator) = only.chars().find(|sign| matches!(sign, ';' | '\t'))
     {
         return vec![TableFault::OtherSeparator { separator }];
     }
-    let place = |position: usize| HeaderPlace {
-        position: position + 1,
-        name: names[position].to_owned(),
-        line: header.line,
-    };
     let mut seen = std::collections::HashSet::new();
     let mut unnamed = Vec::new();
     let mut repeated = Vec::new();
     for (position, name) in names.iter().enumerate() {
+        let place = || HeaderPlace {
+            position: position + 1,
+            name: name.clone(),
+            line,
+        };
         if name.is_empty() {
-            unnamed.push(place(position));
-        } else if !seen.insert(*name) {
-            repeated.push(place(position));
+            unnamed.push(place());
+        } else if !seen.insert(name) {
+            repeated.push(place());
         }
     }
     let mut faults = Vec::new();

@@ -2,7 +2,7 @@
 
     python make_counts.py [poisson.csv ...]     (in this folder; mpmath 1.4.1, scipy 1.17.0, fixed seed)
 
-Everything is computed with mpmath at 50 digits and more; scipy is asked the same where it can answer,
+Everything is computed with mpmath at 45 digits and more; scipy is asked the same where it can answer,
 and the script stops where the two disagree by more than scipy's own stated accuracy.
 """
 
@@ -18,7 +18,7 @@ from mpmath import mp, mpf
 
 mp.dps = 50
 rng = random.Random(7)
-MADE = f"mpmath {mpmath.__version__} (50 digits or more), compared with scipy {scipy.__version__}, make_counts.py"
+MADE = f"mpmath {mpmath.__version__} (45 digits or more), compared with scipy {scipy.__version__}, make_counts.py"
 
 
 def write(name, what, header, rows):
@@ -163,8 +163,8 @@ def nb2_rows():
                 if (c, mean, y) in seen:
                     continue
                 seen.add((c, mean, y))
-                mp.dps = 80
-                m, cc = mpf(mean), mpf(c)
+                mp.dps = 45
+                m = mpf(mean)
                 # The square as the program forms it, so that both speak of the same distribution.
                 a = mpf(c * c)
                 if a == 0:
@@ -186,13 +186,17 @@ def nb2_rows():
                 yield c, mean, y, ln_pmf, mpmath.exp(ln_pmf), at_most, above
 
 
-def nb2_tails(y, r, p, ln_pmf, most=30_000):
-    """Positive sums at 80 digits from y up or down; None where they would be too long."""
+def nb2_tails(y, r, p, ln_pmf):
+    """Positive sums from y up or down; None where they would be too long for the patience of a script."""
     q = 1 - p
     pmf = mpmath.exp(ln_pmf)
     mean = r * q / p
-    small = mpf(10) ** -35
+    # Next to Poisson the beta variable sits at 1 - 1e-7 or closer, where the integral below is not meant.
+    most = 500_000 if r > 1e12 else 20_000
+    small = mpf(10) ** -25
     total, term, k = mpf(1), mpf(1), y
+    if 10 * mpmath.sqrt(mean / p) > most and abs(y - mean) < 0.9 * mean:
+        return None, None
     if y <= mean:
         for _ in range(most):
             if k == 0 or term < total * small:
@@ -201,40 +205,49 @@ def nb2_tails(y, r, p, ln_pmf, most=30_000):
             total += term
             k -= 1
         return None, None
+    total = mpf(0)
     for _ in range(most):
         term *= (k + r) * q / (k + 1)
+        total += term
         k += 1
         if term < total * small:
-            above = pmf * (total - 1)
-            return 1 - above, above
-        total += term
+            return 1 - pmf * total, pmf * total
     return None, None
 
 
 def nb2_tails_by_integral(y, r, p):
-    """P(Y <= y) = I_p(r, y + 1) as an integral over u = ln t, cut at many widths of its peak; the smaller side is integrated."""
-    mp.dps = 50
+    """P(Y <= y) = I_p(r, y + 1) as an integral over u = ln t, cut at many widths of its peak and of its end.
+
+    The smaller side is integrated; the script stops where mpmath's own error estimate is not small.
+    """
     f = lambda u: mpmath.exp(r * u + y * mpmath.log1p(-mpmath.exp(u)) - top)
     mode = mpmath.log(r / (r + y))
     width = 1 / mpmath.sqrt(r * y / (r + y))
     top = mpf(0)
-    top = mpmath.log(f(mode))
-    cuts = [mode + j * width for j in range(-40, 41)] + [mode + j * width * mpf(1.6) ** abs(j) for j in range(-12, 13)]
-    scale = mpmath.exp(top - mpmath.log(mpmath.beta(r, y + 1)))
     edge = mpmath.log(p)
-    floor = mpmath.log(mpf(10) ** -48 / (y + 1))  # below it (1 - t)^y is 1, and the integral is elementary
-    if edge <= mode or edge < floor:
+    floor = mpmath.log(mpf(10) ** -30 / (y + 1))  # below it (1 - t)^y is 1, and the integral is elementary
+    lower = edge <= mode or edge < floor
+    # The largest value of the integrand on the side taken is scaled to 1.
+    top = mpmath.log(f(edge if lower else max(edge, mode)))
+    cuts = [mode + 3 * j * width for j in range(-14, 15)]
+    cuts += [edge + s * width * mpf("0.5") ** j * 40 for s in (-1, 1) for j in range(-4, 24)]
+    scale = mpmath.exp(top - mpmath.log(mpmath.beta(r, y + 1)))
+    if lower:
         points = sorted({floor, edge} | {c for c in cuts if floor < c < edge})
         rest = mpmath.exp(r * min(floor, edge) - top) / r
-        at_most = scale * (rest + (mpmath.quad(f, points) if edge > floor else 0))
-        at_most, above = at_most, 1 - at_most
-    else:
-        ceiling = mpmath.log(mpf("0.999999"))
-        points = sorted({edge, ceiling} | {c for c in cuts if edge < c < ceiling})
-        above = scale * mpmath.quad(f, points)
-        at_most, above = 1 - above, above
-    mp.dps = 80
-    return at_most, above
+        total = rest + (checked_quad(f, points) if edge > floor else 0)
+        return scale * total, 1 - scale * total
+    ceiling = mpmath.log(mpf("0.999999"))
+    points = sorted({edge, ceiling} | {c for c in cuts if edge < c < ceiling})
+    above = scale * checked_quad(f, points)
+    return 1 - above, above
+
+
+def checked_quad(f, points):
+    total, error = mpmath.quad(f, points, error=True, method="gauss-legendre", maxdegree=6)
+    if error > abs(total) * mpf(10) ** -15:
+        raise SystemExit(f"an integral from {points[0]} to {points[-1]} is known to {error} of {total} only")
+    return total
 
 
 TABLES = {

@@ -1,5 +1,6 @@
 //! Which other columns of an unprepared table can be covariates, and how.
 
+use super::super::types::PARAMETERS;
 use super::look::{Facts, Numbers};
 use super::roles::Roles;
 
@@ -7,6 +8,8 @@ use super::roles::Roles;
 const MOST_LEVELS: usize = 12;
 /// A number that takes at most this many values is a category in a draft.
 const FEW_VALUES: usize = 2;
+/// A unit of at most this many levels, with [`ROWS_PER_TERM`] rows each, may matter as a category too.
+const UNIT_LEVELS: usize = 5;
 /// A draft has at most this many covariates: more are for the evaluator to choose.
 const MOST_COVARIATES: usize = 8;
 /// A draft has at most one coefficient for this many rows.
@@ -34,17 +37,20 @@ pub(super) struct LeftOut {
 }
 
 /// Sorts the columns without a role into covariates and columns left out, in the order of the file.
+/// A unit of few levels, such as a district, may matter as a category too; it comes last, so that
+/// it and not the covariate that it determines is then found to be one too many.
 pub(super) fn entries(facts: &[Facts], roles: &Roles, rows: usize) -> (Vec<Entry>, Vec<LeftOut>) {
     let mut entries = Vec::new();
     let mut left_out = Vec::new();
     let mut terms = 1;
-    for (place, facts) in facts.iter().enumerate() {
-        let is_unit = place == roles.unit;
-        let has_role = place == roles.incidents || Some(place) == roles.exposure || Some(place) == roles.period;
-        // A unit of few levels, such as a district, may matter as a category too.
-        if has_role || (is_unit && (facts.numbers.is_some() || facts.levels.len() > MOST_LEVELS.min(rows / 4))) {
-            continue;
-        }
+    let has_role =
+        |place: usize| [Some(roles.incidents), roles.exposure, Some(roles.unit), roles.period].contains(&Some(place));
+    let unit = &facts[roles.unit];
+    let unit_too =
+        unit.numbers.is_none() && unit.levels.len() <= UNIT_LEVELS && rows >= ROWS_PER_TERM * unit.levels.len();
+    let others = (0..facts.len()).filter(|&place| !has_role(place));
+    for place in others.chain(unit_too.then_some(roles.unit)) {
+        let facts = &facts[place];
         let width = facts.levels.len().saturating_sub(1);
         let found = match entry(facts, rows) {
             Ok(_) if entries.len() == MOST_COVARIATES => {
@@ -78,18 +84,18 @@ pub(super) fn entries(facts: &[Facts], roles: &Roles, rows: usize) -> (Vec<Entry
 
 fn entry(facts: &Facts, rows: usize) -> Result<Entry, String> {
     let levels = facts.levels.len();
-    if levels == 0 {
-        return Err("it is empty".to_owned());
-    }
-    if levels == 1 {
-        return Err("it is the same in every row".to_owned());
+    if PARAMETERS.contains(&facts.name()) {
+        return Err("a parameter of the model has this name".to_owned());
     }
     if 5 * facts.gaps > rows {
         return Err(format!("{} of {rows} rows have no value", facts.gaps));
     }
+    if levels <= 1 {
+        return Err("it is the same in every row".to_owned());
+    }
     let (kind, comment) = match &facts.numbers {
         Some(numbers) if levels > FEW_VALUES => number(facts, numbers, levels)?,
-        Some(_) => category(facts),
+        Some(numbers) => two_values(facts, numbers),
         None if levels > MOST_LEVELS => {
             return Err(format!(
                 "a text with {} different values is a name or a remark",
@@ -124,6 +130,22 @@ fn category(facts: &Facts) -> (EntryKind, String) {
         .map(|(level, _)| level.clone())
         .unwrap_or_default();
     let comment = format!("the reference is the most frequent level ({most} rows)");
+    (EntryKind::Category { reference }, comment)
+}
+
+/// With the smaller value as reference, which is most often "no" or "not yet".
+fn two_values(facts: &Facts, numbers: &Numbers) -> (EntryKind, String) {
+    let smaller = |(level, _): &&(String, usize)| level.parse() == Ok(numbers.least);
+    let reference = facts
+        .levels
+        .iter()
+        .find(smaller)
+        .map(|(level, _)| level.clone())
+        .unwrap_or_default();
+    let comment = format!(
+        "a number of two values, of which the smaller, {}, is the reference",
+        numbers.least
+    );
     (EntryKind::Category { reference }, comment)
 }
 

@@ -1,6 +1,6 @@
 //! What a column of an unprepared table looks like.
 
-use super::super::covariates::mean;
+use crate::numeric::mean;
 use crate::table::{Column, Table};
 use std::collections::HashMap;
 
@@ -55,13 +55,16 @@ fn of_column(column: &Column, rows: usize) -> Facts<'_> {
     for &row in &filled {
         let label = column.label(row);
         length += label.chars().count();
+        // Past the limit the column is no category, and its levels need no counting.
+        if levels.len() > COUNTED_LEVELS {
+            continue;
+        }
         match places.get(label.as_ref()) {
             Some(&place) => levels[place].1 += 1,
-            None if levels.len() <= COUNTED_LEVELS => {
+            None => {
                 places.insert(label.clone().into_owned(), levels.len());
                 levels.push((label.into_owned(), 1));
             }
-            None => {}
         }
     }
     let read: Option<Vec<f64>> = filled

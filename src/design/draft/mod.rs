@@ -19,6 +19,22 @@ use roles::NoRole;
 use std::fmt;
 use write::Sheet;
 
+/// Words for what a study may be about.
+const PROGRAMME: [&str; 12] = [
+    "programme",
+    "program",
+    "treatment",
+    "treated",
+    "intervention",
+    "arm",
+    "trial",
+    "policy",
+    "scheme",
+    "pilot",
+    "after",
+    "exposed",
+];
+
 /// A starter spec.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Draft {
@@ -114,13 +130,30 @@ pub fn draft(table: &Table) -> Result<Draft, DraftError> {
 }
 
 /// Writes the draft and checks it: first with the baseline as its answer, then, once the levels
-/// have given the terms their names, with the first term.
+/// have given the terms their names, with a term: of a covariate named like a programme, or the first.
 fn finished(sheet: &Sheet) -> Result<Draft, Refusal> {
     let first = checked(sheet.text(&[]), sheet.table)?;
-    if first.design.terms.is_empty() {
+    let mut terms = first.design.coding.terms.clone();
+    if terms.is_empty() {
         return Ok(first);
     }
-    checked(sheet.text(&first.design.coding.terms), sheet.table)
+    let of_programme = |term: &String| {
+        let named = sheet
+            .facts
+            .iter()
+            .filter(|facts| facts.is_named(&PROGRAMME))
+            .map(|facts| facts.name());
+        named.into_iter().any(|column| makes(column, term))
+    };
+    let answer = terms.iter().position(of_programme).unwrap_or(0);
+    terms[..=answer].rotate_right(1);
+    checked(sheet.text(&terms), sheet.table)
+}
+
+/// Whether a column's term may bear this name.
+fn makes(column: &str, term: &str) -> bool {
+    term.strip_prefix(column)
+        .is_some_and(|rest| rest.is_empty() || rest.starts_with('='))
 }
 
 fn checked(text: String, table: &Table) -> Result<Draft, Refusal> {

@@ -79,7 +79,7 @@ const OPPORTUNITY: [&str; 40] = [
     "pupils",
     "students",
     "rides",
-    "sessions",
+    "lessons",
     "flights",
     "customers",
     "swimmers",

@@ -9,6 +9,9 @@ use std::fmt::Write;
 /// The rate per this many units is told with at least one digit before the point, up to here.
 const LARGEST_PER: f64 = 1e9;
 
+/// How many other terms are offered as the answer.
+const OTHER_ANSWERS: usize = 12;
+
 /// All that a draft is written from.
 pub(super) struct Sheet<'a> {
     pub table: &'a Table,
@@ -74,9 +77,16 @@ impl Sheet<'_> {
         )?;
         writeln!(text, "# its `provisional = true` out.\n")?;
         writeln!(text, "[study]")?;
-        writeln!(text, "title = {}", quoted(&format!("{counts} in {file}")))?;
-        let question = match self.entries.first() {
-            Some(entry) => format!("How does the rate of {counts} go with {}?", entry.column),
+        writeln!(
+            text,
+            "title = {}",
+            quoted(&format!(
+                "{counts} in {}",
+                file.rsplit(['/', '\\']).next().unwrap_or(file)
+            ))
+        )?;
+        let question = match terms.first() {
+            Some(term) => format!("Does the rate of {counts} go with {term}?"),
             None => format!("What is the rate of {counts}?"),
         };
         writeln!(text, "question = {}", quoted(&question))?;
@@ -85,10 +95,10 @@ impl Sheet<'_> {
             [first, others @ ..] => {
                 writeln!(
                     text,
-                    "answer = {} # the first term; choose the one that answers the question",
+                    "answer = {} # choose the term that answers the question",
                     quoted(first)
                 )?;
-                for other in others {
+                for other in others.iter().take(OTHER_ANSWERS) {
                     writeln!(text, "# or: {}", quoted(other))?;
                 }
             }
@@ -171,12 +181,12 @@ impl Sheet<'_> {
         }
         writeln!(
             text,
-            "# {without} rows have an exposure of 0 and tell nothing about the rate."
+            "# Rows with an exposure of 0 tell nothing about the rate and are left out: {without}."
         )?;
         if mistaken > 0 {
             writeln!(
                 text,
-                "# {mistaken} of them have incidents all the same: correct those before you believe any result."
+                "# Of them with incidents all the same: {mistaken}. Correct those before you believe any result."
             )?;
         }
         writeln!(
