@@ -121,3 +121,21 @@ fn the_exact_cases_are_accepted() {
         assert_eq!(design.counts.len(), rows, "{case}");
     }
 }
+
+/// A study without `[exposure]` was refused at the last moment once: its coding has no exposure
+/// column, and the absent name was taken for a figure that is not finite.
+#[test]
+fn a_study_without_exposure_leaves_a_run_that_repeats() {
+    let folder = tempfile::tempdir().unwrap();
+    let run = folder.path().join("quine.run");
+    let program = || assert_cmd::Command::cargo_bin("ratewright").unwrap();
+    program()
+        .arg("fit")
+        .arg(file("quine.poisson.toml"))
+        .arg("--into")
+        .arg(&run)
+        .arg("--quiet")
+        .assert()
+        .success();
+    program().arg("replay").arg(&run).arg("--quiet").assert().success();
+}

@@ -53,6 +53,7 @@ pub struct Term {
 #[serde(deny_unknown_fields)]
 pub struct Coding {
     /// Column of the exposure; `None` when every row counts as 1.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
     pub exposure_column: Option<String>,
     /// Rates are told per this many units of exposure.
     pub per: f64,
