@@ -189,12 +189,6 @@ fn agrees(case: &str, fit: &Fit) {
             }
         }
     }
-    println!(
-        "{case}: {} draws, worst {:.2} at {}",
-        fit.draws.in_all(),
-        worst.0,
-        worst.1
-    );
     assert!(worst.0 < 4.0, "{case}: {} combined errors at {}", worst.0, worst.1);
 }
 

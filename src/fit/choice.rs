@@ -63,7 +63,7 @@ impl History {
     /// Whether a row belongs to the half that fits: pairs of iterations take turns, so that the
     /// halves are far enough apart to judge one another and both span the whole stage.
     fn fits(&self, row: usize) -> bool {
-        row / self.chains / 2 % 2 == 0
+        (row / self.chains / 2).is_multiple_of(2)
     }
 }
 

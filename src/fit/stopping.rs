@@ -144,7 +144,7 @@ mod tests {
             for worth in [1.01, 1.7, 300.0, 1.2, 50.0] {
                 let next = goal.next_per_chain(per_chain, worth, chains);
                 assert!(next > per_chain || next == 9_999 / chains);
-                assert!(next <= 4 * per_chain && (next % round == 0 || next == 9_999 / chains));
+                assert!(next <= 4 * per_chain && (next.is_multiple_of(round) || next == 9_999 / chains));
                 per_chain = next;
             }
             assert!(per_chain * chains <= 9_999);
