@@ -38,6 +38,10 @@ lint: system-library
 	$(CARGO) clippy --release --locked --all-targets -- -D warnings
 	RUSTDOCFLAGS="-D warnings" $(CARGO) doc --release --locked --no-deps --lib --examples
 
+## bench: effective draws per draw and time of whole fits, on four stated problems
+bench: system-library
+	$(CARGO) run --release --locked --example measure_sampler
+
 ## coverage: the share of 95 % intervals that hold the truth, over 500 simulated demos
 coverage: system-library
 	$(CARGO) run --release --locked --example measure_coverage

@@ -276,7 +276,7 @@ fn places_in_the_spec_are_the_characters_at_fault() {
 #[test]
 fn every_code_has_an_entry_in_the_docs() {
     let docs =
-        std::fs::read_to_string(PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("docs/problems-data.md")).unwrap();
+        std::fs::read_to_string(PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("docs/problems.md")).unwrap();
     let mut codes = BTreeSet::new();
     for snapshot in std::fs::read_dir(path("../snapshots")).unwrap() {
         let snapshot = snapshot.unwrap();

@@ -1,5 +1,7 @@
 //! The demo: its table and true values are what the stated program makes, and the fit finds them.
 
+#![allow(clippy::unwrap_used, clippy::panic)]
+
 #[path = "../examples/pools/mod.rs"]
 mod pools;
 #[path = "../examples/pools/truth.rs"]

@@ -1,5 +1,8 @@
 //! What README and docs claim, held against the program and the tree.
 
+#![allow(clippy::unwrap_used, clippy::panic)]
+
+use clap::Parser;
 use std::collections::BTreeSet;
 use std::fs;
 use std::path::{Path, PathBuf};
@@ -122,31 +125,40 @@ fn every_command_line_shown_is_understood() {
 }
 
 fn understood(words: &[String]) -> bool {
-    // Help at the end stops a command that was understood so far from being run.
-    assert_cmd::Command::cargo_bin("ratewright")
-        .unwrap()
-        .args(words)
-        .arg("--help")
+    let words = std::iter::once("ratewright").chain(words.iter().map(String::as_str));
+    ratewright::command::Cli::try_parse_from(words).is_ok()
+}
+
+/// Fits a study of this project into `run` and returns what it prints.
+fn fit(spec: &str, run: &Path) -> String {
+    let mut command = assert_cmd::Command::cargo_bin("ratewright").unwrap();
+    let done = command
+        .arg("fit")
+        .arg(root().join(spec))
+        .arg("--into")
+        .arg(run)
+        .arg("--quiet")
         .output()
-        .unwrap()
-        .status
-        .success()
+        .unwrap();
+    assert!(done.status.success(), "{}", String::from_utf8_lossy(&done.stderr));
+    String::from_utf8(done.stdout).unwrap()
+}
+
+#[test]
+fn the_demo_prints_what_the_readme_shows() {
+    let folder = tempfile::tempdir().unwrap();
+    let printed = fit("demo-data/swimming-pools/pools.toml", &folder.path().join("pools.run"));
+    let readme = fs::read_to_string(root().join("README.md")).unwrap();
+    let shown = blocks(&readme, "text");
+    assert_eq!(shown.len(), 1);
+    assert!(printed.starts_with(&shown[0]), "the demo now prints\n{printed}");
 }
 
 #[test]
 fn reading_the_findings_names_every_file_and_column_of_a_run_and_no_other() {
     let folder = tempfile::tempdir().unwrap();
     let run = folder.path().join("clinic.run");
-    let fit = assert_cmd::Command::cargo_bin("ratewright")
-        .unwrap()
-        .arg("fit")
-        .arg(root().join("tests/reference/clinic.nb2.toml"))
-        .arg("--into")
-        .arg(&run)
-        .arg("--quiet")
-        .output()
-        .unwrap();
-    assert!(fit.status.success(), "{}", String::from_utf8_lossy(&fit.stderr));
+    fit("tests/reference/clinic.nb2.toml", &run);
 
     let page = fs::read_to_string(root().join("docs/reading-the-findings.md")).unwrap();
     let files: BTreeSet<String> = fs::read_dir(&run)

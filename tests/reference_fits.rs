@@ -125,6 +125,27 @@ fn without_priors_the_mode_is_the_maximum_of_the_likelihood() {
     }
 }
 
+/// The clinic's posterior of baseline and scatter is known by two-dimensional quadrature (its JSON,
+/// `independent_check.quadrature`). Laplace integrates only the baseline approximately, so its
+/// figures are near but not equal; the Gaussian at the mode, at a scatter of 0, would be far off.
+#[test]
+fn the_profile_gives_the_scatters_moments_where_its_mode_is_at_zero() {
+    let (spec, design) = study("clinic.nb2");
+    let (mode, laplace) = fit::laplace(&Model::new(&spec, &design)).unwrap();
+    assert_eq!(mode.scatter, Some(ScatterMode::AtZero));
+    let reference = reference("clinic.nb2");
+    let exact = &reference["independent_check"]["quadrature"]["parameters"];
+    for (place, name) in [(0, "b0"), (1, "scatter")] {
+        let (mean, sd) = (number(&exact[name]["mean"]), number(&exact[name]["sd"]));
+        assert!(
+            (laplace.mean[place] - mean).abs() < 0.1 * sd,
+            "{name}: {} against {mean}",
+            laplace.mean[place]
+        );
+        approx::assert_relative_eq!(laplace.sd(place), sd, max_relative = 0.05);
+    }
+}
+
 fn run(case: &str, steps: Steps, precision: f64) -> Fit {
     let (mut spec, design) = study(case);
     spec.sampling.steps = steps;
@@ -168,12 +189,6 @@ fn agrees(case: &str, fit: &Fit) {
             }
         }
     }
-    println!(
-        "{case}: {} draws, worst {:.2} at {}",
-        fit.draws.in_all(),
-        worst.0,
-        worst.1
-    );
     assert!(worst.0 < 4.0, "{case}: {} combined errors at {}", worst.0, worst.1);
 }
 

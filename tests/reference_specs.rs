@@ -1,6 +1,8 @@
 //! The specs of the reference cases say what the reference fits were made of: the same rows, terms
 //! and priors.
 
+#![allow(clippy::unwrap_used, clippy::panic)]
+
 use ratewright::design::{self, Design};
 use ratewright::spec::{self, Baseline, Family, Spec};
 use ratewright::table;
@@ -118,4 +120,22 @@ fn the_exact_cases_are_accepted() {
         assert!(matches!(spec.baseline, Baseline::Earlier { .. }), "{case}");
         assert_eq!(design.counts.len(), rows, "{case}");
     }
+}
+
+/// A study without `[exposure]` was refused at the last moment once: its coding has no exposure
+/// column, and the absent name was taken for a figure that is not finite.
+#[test]
+fn a_study_without_exposure_leaves_a_run_that_repeats() {
+    let folder = tempfile::tempdir().unwrap();
+    let run = folder.path().join("quine.run");
+    let program = || assert_cmd::Command::cargo_bin("ratewright").unwrap();
+    program()
+        .arg("fit")
+        .arg(file("quine.poisson.toml"))
+        .arg("--into")
+        .arg(&run)
+        .arg("--quiet")
+        .assert()
+        .success();
+    program().arg("replay").arg(&run).arg("--quiet").assert().success();
 }

@@ -3,7 +3,7 @@
 use ratewright::check::{UnitState, UnitsCheck, units};
 use ratewright::design::{Audit, Coding, Design, Term};
 use ratewright::fit::Draws;
-use ratewright::numeric::{Purpose, Stream, exp, ln, nb2_cdf, nb2_pmf, poisson_sf};
+use ratewright::numeric::{Purpose, Stream, exp, ln, nb2_cdf, nb2_ln_pmf, nb2_pmf, poisson_sf};
 use ratewright::spec::{Family, Standing};
 use std::path::Path;
 
@@ -70,14 +70,8 @@ fn negative_binomial() -> Family {
 /// `tests/reference/exact_clinic_gamma.units.csv` are that closed form, computed with scipy 1.17.1.
 #[test]
 fn conjugate_clinics_meet_their_closed_form() {
-    let path = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/reference/exact_clinic_gamma.units.csv");
-    let text = std::fs::read_to_string(&path).expect("the reference");
-    let mut lines = text.lines();
-    let header: Vec<&str> = lines.next().expect("a header").split(',').collect();
+    let (header, rows) = reference("exact_clinic_gamma.units.csv");
     let at = |name: &str| header.iter().position(|column| *column == name).expect("a column");
-    let rows: Vec<Vec<f64>> = lines
-        .map(|line| line.split(',').map(|cell| cell.parse().unwrap_or(f64::NAN)).collect())
-        .collect();
     assert_eq!(rows.len(), 10);
 
     let (y, exposure) = (at("y"), at("exposure"));
@@ -133,6 +127,73 @@ fn conjugate_clinics_meet_their_closed_form() {
             .filter(|unit| unit.state != UnitState::Inside)
             .count()
     );
+}
+
+/// A table of `tests/reference`: its header and rows, labels as NaN.
+fn reference(name: &str) -> (Vec<String>, Vec<Vec<f64>>) {
+    let path = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/reference").join(name);
+    let text = std::fs::read_to_string(path).expect("the reference");
+    let mut lines = text.lines();
+    let header = lines.next().expect("a header").split(',').map(String::from).collect();
+    let rows = lines.map(|line| line.split(',').map(|cell| cell.parse().unwrap_or(f64::NAN)).collect());
+    (header, rows.collect())
+}
+
+/// The same clinics as negative-binomial counts: baseline from Normal(0, 1.1748), scatter exponential of
+/// rate 2.9957. `tests/reference/clinic.nb2.units.csv` averages over 80,000 draws of a general-purpose
+/// sampler (numpyro 0.22.0); here the posterior is 2,000 equal steps through a fine grid.
+#[test]
+fn clinics_meet_a_general_purpose_sampler() {
+    let (_, clinics) = reference("exact_clinic_gamma.units.csv");
+    let (header, expected) = reference("clinic.nb2.units.csv");
+    let at = |name: &str| header.iter().position(|column| *column == name).expect("a column");
+    let data: Vec<(f64, f64)> = clinics.iter().map(|row| (row[1], row[2])).collect();
+
+    let mut grid = Vec::new();
+    for i in 0..350 {
+        for j in 0..250 {
+            let (b0, c) = (-1.25 + 0.01 * f64::from(i), 0.005 + 0.01 * f64::from(j));
+            let z = b0 / 1.174_809_900_159_67;
+            let prior = -0.5 * z * z - 2.995_732_273_553_99 * c;
+            let log: f64 = data.iter().map(|(y, years)| nb2_ln_pmf(*y, years * exp(b0), c)).sum();
+            grid.push((b0, c, exp(prior + log)));
+        }
+    }
+    let whole: f64 = grid.iter().map(|point| point.2).sum();
+    let (mut baseline, mut scatter, mut passed) = (vec![], vec![], 0.0);
+    for (b0, c, weight) in grid {
+        passed += weight / whole * 2000.0;
+        while (baseline.len() as f64) + 0.5 < passed {
+            baseline.push(b0);
+            scatter.push(c);
+        }
+    }
+    assert_eq!(baseline.len(), 2000);
+    let posterior = draws(baseline, vec![0.0; 2000], Some(scatter));
+    let study: Vec<_> = data
+        .iter()
+        .enumerate()
+        .map(|(k, (y, years))| (k, *y, *years, 1.0, 0.0))
+        .collect();
+    let design = design(&study);
+
+    let repeats = 25;
+    let runs: Vec<UnitsCheck> = (0..repeats)
+        .map(|seed| units(&design, &negative_binomial(), &posterior, 0.95, seed))
+        .collect();
+    for (k, row) in expected.iter().enumerate() {
+        assert_eq!(row[at("y")], data[k].0);
+        let tail = runs.iter().map(|run| run.units[k].tail_probability).sum::<f64>() / repeats as f64;
+        let wanted = row[at("p_less")] + 0.5 * row[at("p_equal")];
+        // Gamma factors: below 0.012 / sqrt(25); the sampler's 30,000 effective draws: below 0.001.
+        assert!((tail - wanted).abs() < 0.006, "clinic {k}: {tail} for {wanted}");
+        let mean = row[at("mu_mean")];
+        assert!(
+            (runs[0].units[k].expected / mean - 1.0).abs() < 0.005,
+            "{:?} for {mean}",
+            runs[0].units[k]
+        );
+    }
 }
 
 /// For a whole shape P(G <= x) = P(Poisson(x) >= shape).

@@ -106,7 +106,7 @@ pub fn simulate(plan: &Plan, seed: u64) -> Design {
         coding: ColumnCoding::Number { centre: 0.0, step: 1.0 },
     };
     Design {
-        terms: names.iter().map(term).collect(),
+        terms: names.iter().map(|name| term(name)).collect(),
         columns,
         exposure: log_exposure.iter().map(|&x| exp(x)).collect(),
         log_exposure,
@@ -132,9 +132,9 @@ pub fn simulate(plan: &Plan, seed: u64) -> Design {
     }
 }
 
-fn term(name: &String) -> Term {
+fn term(name: &str) -> Term {
     Term {
-        name: name.clone(),
+        name: name.to_string(),
         change: format!("per 1 more {name}"),
         prior_mean: 0.0,
         prior_sd: 1.0,

@@ -1,7 +1,7 @@
 //! Takes draws and design; gives the predictive check of each unit, and what the priors imply.
 
-mod prior;
 mod predictive;
+mod prior;
 mod units;
 
 pub use prior::{

@@ -151,7 +151,7 @@ mod tests {
         // A correlation of about 1 - 4e-7 (checked by hand: noise variance 1e-4 over 133).
         let b: Vec<f64> = a
             .iter()
-            .map(|a| a + if *a as u32 % 2 == 0 { 0.01 } else { -0.01 })
+            .map(|a| a + if (*a as u32).is_multiple_of(2) { 0.01 } else { -0.01 })
             .collect();
         assert!(determined(&[a, b]).is_empty());
     }

@@ -79,11 +79,15 @@ pub fn remarks(spec: &Spec, table: &Table, design: &Design) -> Vec<Remark> {
     let mut remarks = Vec::new();
     sparse_levels(design, &mut remarks);
     let scaled = Scaled::new(&design.columns, design.counts.len());
-    near_collinear(design, &scaled, &mut remarks);
+    if let Some(scaled) = &scaled {
+        near_collinear(design, scaled, &mut remarks);
+    }
     // The study has been built, so that choosing its rows again finds no fault.
     let rows = choose(spec, table, &mut Vec::new()).used.rows;
     far_centres(design, table, &rows, &mut remarks);
-    leverage(design, &scaled, &mut remarks);
+    if let Some(scaled) = &scaled {
+        leverage(design, scaled, &mut remarks);
+    }
     repeated_periods(spec, table, &rows, &mut remarks);
     wide_exposure(design, &mut remarks);
     provisional(spec, &mut remarks);

@@ -112,13 +112,13 @@ impl Chain {
         self.log_densities.clear();
     }
 
-    /// Proposes; returns whether an independence step was taken.
+    /// Proposes the next point; returns which kind of step it was.
     fn propose(&mut self, proposal: &Proposal, out: &mut [f64]) -> StepKind {
-        if let Some(reference) = &proposal.reference {
-            if self.stream.uniform() >= WALK_SHARE {
-                reference.draw(&mut self.stream, out);
-                return StepKind::Independence;
-            }
+        if let Some(reference) = &proposal.reference
+            && self.stream.uniform() >= WALK_SHARE
+        {
+            reference.draw(&mut self.stream, out);
+            return StepKind::Independence;
         }
         let d = out.len();
         let scale = WALK_SCALE / (d as f64).sqrt();

@@ -13,18 +13,36 @@ use super::reference::{Kernel, Reference, Shape, Tails};
 pub enum Correction {
     /// Laplace's moments.
     None,
-    /// Laplace's correlations, with means and standard deviations moved this share of the way.
-    Diagonal(f64),
-    /// All moments moved this share of the way.
-    Moments(f64),
+    /// Laplace's correlations, with means and standard deviations moved this far.
+    Diagonal(Way),
+    /// All moments moved this far.
+    Moments(Way),
+}
+
+/// How far from Laplace's moments to the draws'.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Way {
+    /// Half the way.
+    Half,
+    /// All of it.
+    Whole,
+}
+
+impl Way {
+    fn share(self) -> f64 {
+        match self {
+            Way::Half => 0.5,
+            Way::Whole => 1.0,
+        }
+    }
 }
 
 const CORRECTIONS: [Correction; 5] = [
     Correction::None,
-    Correction::Diagonal(0.5),
-    Correction::Diagonal(1.0),
-    Correction::Moments(0.5),
-    Correction::Moments(1.0),
+    Correction::Diagonal(Way::Half),
+    Correction::Diagonal(Way::Whole),
+    Correction::Moments(Way::Half),
+    Correction::Moments(Way::Whole),
 ];
 const TAILS: [Tails; 3] = [Tails::Normal, Tails::T(30.0), Tails::T(8.0)];
 const INFLATIONS: [f64; 3] = [1.0, 1.1, 1.2];
@@ -45,7 +63,7 @@ impl History {
     /// Whether a row belongs to the half that fits: pairs of iterations take turns, so that the
     /// halves are far enough apart to judge one another and both span the whole stage.
     fn fits(&self, row: usize) -> bool {
-        row / self.chains / 2 % 2 == 0
+        (row / self.chains / 2).is_multiple_of(2)
     }
 }
 
@@ -142,14 +160,12 @@ pub fn corrected(
     taken: &dyn Fn(usize) -> bool,
 ) -> Option<Shape> {
     let d = laplace.mean.len();
-    if correction == Correction::None {
-        return Some(Shape::of_moments(&laplace.mean, &laplace.covariance, scatter));
-    }
-    let (mean, covariance) = moments(laplace, history, scatter, taken)?;
-    let share = match correction {
-        Correction::Diagonal(share) | Correction::Moments(share) => share,
-        Correction::None => 0.0,
+    let way = match correction {
+        Correction::None => return Some(Shape::of_moments(&laplace.mean, &laplace.covariance, scatter)),
+        Correction::Diagonal(way) | Correction::Moments(way) => way,
     };
+    let share = way.share();
+    let (mean, covariance) = moments(laplace, history, scatter, taken)?;
     let moved: Vec<f64> = laplace
         .mean
         .iter()
@@ -168,7 +184,7 @@ pub fn corrected(
                 .map(|i| {
                     let ratio = (covariance[i * d + i] / laplace.covariance[i * d + i]).sqrt();
                     // Half the way on the log scale is the root.
-                    if share < 1.0 { ratio.sqrt() } else { ratio }
+                    if way == Way::Half { ratio.sqrt() } else { ratio }
                 })
                 .collect();
             for i in 0..d {

@@ -12,6 +12,9 @@ use crate::numeric::cholesky::Cholesky;
 use crate::numeric::{Purpose, Stream, exp, ln, normal_cdf};
 use crate::spec::Steps;
 
+/// Name, function of a draw, exact expectation.
+type Expectation = (&'static str, fn(&[f64]) -> f64, f64);
+
 /// A law of a coefficient b and a scatter c, or of coefficients alone, with moments that are known.
 struct Known {
     name: &'static str,
@@ -19,7 +22,7 @@ struct Known {
     scatter: Option<usize>,
     log_density: fn(&[f64]) -> f64,
     /// Functions of a draw (the scatter without its sign) and their exact expectations.
-    expectations: Vec<(&'static str, fn(&[f64]) -> f64, f64)>,
+    expectations: Vec<Expectation>,
     mean: Vec<f64>,
     covariance: Vec<f64>,
 }

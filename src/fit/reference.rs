@@ -149,10 +149,10 @@ impl Reference {
         for (value, centre) in out.iter_mut().zip(&self.centre) {
             *value += centre;
         }
-        if let Some(s) = self.mirrored {
-            if stream.uniform() < 0.5 {
-                out[s] = -out[s];
-            }
+        if let Some(s) = self.mirrored
+            && stream.uniform() < 0.5
+        {
+            out[s] = -out[s];
         }
     }
 }

@@ -2,7 +2,7 @@
 //! enough or the limit is reached.
 
 use super::chain::{Chain, Proposal, Target, advance};
-use super::choice::{Chosen, Correction, History, choose, corrected, from_laplace};
+use super::choice::{Chosen, Correction, History, Way, choose, corrected, from_laplace};
 use super::convergence::Assessment;
 use super::laplace::Laplace;
 use super::reference::Tails;
@@ -110,7 +110,7 @@ fn warm_up(
             Steps::Mixed => choose(laplace, &history, scatter),
             // Haario et al. 2001, frozen after warm-up.
             Steps::Walk => {
-                corrected(laplace, &history, scatter, Correction::Moments(0.5), &|_| true).map(|shape| Chosen {
+                corrected(laplace, &history, scatter, Correction::Moments(Way::Half), &|_| true).map(|shape| Chosen {
                     covariance: shape.covariance,
                     ..chosen.clone()
                 })
@@ -245,10 +245,10 @@ impl Chosen {
         }
         let correction = match self.correction {
             Correction::None => "Laplace's moments",
-            Correction::Diagonal(share) if share < 1.0 => "Laplace's moments, scales moved half-way to the draws'",
-            Correction::Diagonal(_) => "Laplace's correlations with the draws' means and scales",
-            Correction::Moments(share) if share < 1.0 => "moments half-way between Laplace's and the draws'",
-            Correction::Moments(_) => "the draws' moments",
+            Correction::Diagonal(Way::Half) => "Laplace's moments, scales moved half-way to the draws'",
+            Correction::Diagonal(Way::Whole) => "Laplace's correlations with the draws' means and scales",
+            Correction::Moments(Way::Half) => "moments half-way between Laplace's and the draws'",
+            Correction::Moments(Way::Whole) => "the draws' moments",
         };
         let tails = match self.tails {
             Tails::Normal => "normal".to_owned(),

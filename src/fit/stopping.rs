@@ -115,3 +115,64 @@ fn assess_all(values: &[Vec<f64>], chains: usize, interval: f64, threads: usize)
             .collect()
     })
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::numeric::{Purpose, Stream};
+
+    fn goal(precision: f64, most_draws: usize) -> Goal {
+        Goal {
+            precision,
+            interval: 0.95,
+            most_draws,
+        }
+    }
+
+    fn independent(draws: usize) -> Vec<f64> {
+        let mut stream = Stream::new(3, Purpose::Simulation, 0);
+        (0..draws).map(|_| stream.normal()).collect()
+    }
+
+    #[test]
+    fn looks_are_at_whole_rounds_and_never_beyond_the_limit() {
+        for chains in [4, 5, 7] {
+            let goal = goal(0.02, 9_999);
+            let round = 1_000_usize.div_ceil(chains);
+            let mut per_chain = goal.first_per_chain(chains);
+            assert_eq!(per_chain, round);
+            for worth in [1.01, 1.7, 300.0, 1.2, 50.0] {
+                let next = goal.next_per_chain(per_chain, worth, chains);
+                assert!(next > per_chain || next == 9_999 / chains);
+                assert!(next <= 4 * per_chain && (next.is_multiple_of(round) || next == 9_999 / chains));
+                per_chain = next;
+            }
+            assert!(per_chain * chains <= 9_999);
+        }
+    }
+
+    /// Independent draws have an error of the mean of 1/sqrt(n) standard deviations, and of the
+    /// 2.5 % quantile of 2.67/sqrt(n): the quantile's allowance of 0.05 decides, near n = 2,850.
+    #[test]
+    fn independent_draws_are_enough_when_theory_says_so() {
+        let (_, few) = goal(0.02, 100_000).judge(&[independent(2_000)], 4, 1);
+        assert!(
+            matches!(few, Verdict::More { worth } if (1.1..2.2).contains(&worth)),
+            "{few:?}"
+        );
+        let (_, enough) = goal(0.02, 100_000).judge(&[independent(4_000)], 4, 1);
+        assert_eq!(enough, Verdict::Met);
+    }
+
+    #[test]
+    fn one_bad_parameter_among_good_ones_decides() {
+        let good = independent(4_000);
+        let mut apart = good.clone();
+        apart[..1_000].iter_mut().for_each(|value| *value += 1.0);
+        let stuck = vec![0.25; 4_000];
+        for bad in [apart, stuck] {
+            let (_, verdict) = goal(0.02, 100_000).judge(&[good.clone(), bad], 4, 2);
+            assert!(matches!(verdict, Verdict::More { worth } if worth > 1.0), "{verdict:?}");
+        }
+    }
+}
