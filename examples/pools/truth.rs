@@ -1,7 +1,7 @@
 //! The file of the demo's true values, in two forms: as people say them, and as the parameters of
 //! the fit.
 
-use crate::pools;
+use super::pools;
 use serde_json::{Map, Value, json};
 
 /// `truth.json` for the table of this seed.

@@ -6,7 +6,7 @@
 //! moves, in a fixed order. They are written without branches in the common path, so that a loop
 //! over them becomes vector code.
 //!
-//! Relative error below 5e-16 over the whole range; `tests/elementary.rs` holds the proof against
+//! Relative error below 5e-16 over the whole range; `tests/statistics/elementary.rs` holds the proof against
 //! a high-precision table.
 
 /// ln 2, its upper part: 33 significant bits, so that a whole number up to 2^20 times it is exact.

@@ -1,4 +1,4 @@
-"""Makes chains_*.csv (draws) and chains.csv (what they say) for tests/convergence.rs.
+"""Makes chains_*.csv (draws) and chains.csv (what they say) for tests/statistics/convergence.rs.
 
     python make_chains.py     (in this folder; numpy 2.4.6, arviz-stats 0.8.0, fixed seed)
 

@@ -1,4 +1,4 @@
-"""Makes the tables of tests/numeric.rs: log-gamma, normal, rising sums, Poisson and negative binomial.
+"""Makes the tables of tests/statistics/numeric.rs: log-gamma, normal, rising sums, Poisson and negative binomial.
 
     python make_counts.py [poisson.csv ...]     (in this folder; mpmath 1.4.1, scipy 1.17.0, fixed seed)
 

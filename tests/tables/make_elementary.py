@@ -1,4 +1,4 @@
-"""Makes exp.csv, ln.csv and ln_1p.csv: arguments and values of 40 digits, for tests/elementary.rs.
+"""Makes exp.csv, ln.csv and ln_1p.csv: arguments and values of 40 digits, for tests/statistics/elementary.rs.
 
     python make_elementary.py     (in this folder; mpmath 1.4.1, fixed seed, 60 digits)
 

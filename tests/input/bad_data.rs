@@ -1,9 +1,7 @@
 //! What the program says to tables that it cannot use: one checked-in file for each mistake, one
 //! snapshot for each message.
 
-#[path = "support/study.rs"]
-mod support;
-
+use crate::study::*;
 use proptest::prelude::*;
 use ratewright::design;
 use ratewright::diagnostic::{Diagnostic, Place};
@@ -12,7 +10,6 @@ use ratewright::spec::{self, At, Centre, Chances, Covariate, RowsWithGaps, Spec}
 use ratewright::table::{Table, TableError, parse_csv, read_csv};
 use std::collections::BTreeSet;
 use std::path::PathBuf;
-use support::*;
 
 /// Diagnostics as plain lines.
 fn lines(diagnostics: &[Diagnostic]) -> String {
@@ -275,12 +272,11 @@ fn places_in_the_spec_are_the_characters_at_fault() {
 
 #[test]
 fn every_code_has_an_entry_in_the_docs() {
-    let docs =
-        std::fs::read_to_string(PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("docs/problems.md")).unwrap();
+    let docs = std::fs::read_to_string(PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("docs/problems.md")).unwrap();
     let mut codes = BTreeSet::new();
-    for snapshot in std::fs::read_dir(path("../snapshots")).unwrap() {
+    for snapshot in std::fs::read_dir(path("../input/snapshots")).unwrap() {
         let snapshot = snapshot.unwrap();
-        if snapshot.file_name().to_string_lossy().starts_with("bad_data__") {
+        if snapshot.file_name().to_string_lossy().starts_with("input__bad_data__") {
             let text = std::fs::read_to_string(snapshot.path()).unwrap();
             let named = text.lines().filter_map(|line| line.strip_prefix('[')?.split_once(']'));
             codes.extend(named.map(|(code, _)| code.to_owned()));

@@ -1,9 +1,7 @@
 //! The elementary functions against 60-digit values: relative error below 5e-16 everywhere.
 
-mod tables;
-
+use crate::tables::Table;
 use ratewright::numeric::{exp, ln, ln_1p};
-use tables::Table;
 
 /// What `numeric` promises.
 const PROMISED: f64 = 5e-16;

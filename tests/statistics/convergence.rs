@@ -1,10 +1,8 @@
 //! Convergence figures against arviz-stats on small checked-in chains, and at the edges.
 
-mod tables;
-
+use crate::tables::Table;
 use ratewright::fit::{Assessment, assess};
 use ratewright::numeric::{Purpose, Stream};
-use tables::Table;
 
 /// The cases of `tests/tables/make_chains.py`, in its order.
 const CASES: [&str; 10] = [

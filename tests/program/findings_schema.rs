@@ -1,8 +1,6 @@
 //! The shipped JSON Schema of the findings is current, and findings obey it.
 #![allow(missing_docs)]
 
-mod support;
-
 use ratewright::output::{findings_schema, json};
 use std::path::Path;
 
@@ -28,7 +26,7 @@ fn the_shipped_schema_is_the_one_of_the_types() {
 fn findings_obey_the_shipped_schema_and_broken_ones_do_not() {
     let schema = serde_json::from_str(&shipped()).unwrap();
     let validator = jsonschema::validator_for(&schema).unwrap();
-    let findings = json::text("findings.json", &support::findings()).unwrap();
+    let findings = json::text("findings.json", &crate::stand_in::findings()).unwrap();
     let whole: serde_json::Value = serde_json::from_str(&findings).unwrap();
     assert!(validator.is_valid(&whole), "{:?}", validator.iter_errors(&whole).next());
 
@@ -45,7 +43,7 @@ fn findings_obey_the_shipped_schema_and_broken_ones_do_not() {
 
 #[test]
 fn findings_read_back_as_they_were() {
-    let text = json::text("findings.json", &support::findings()).unwrap();
+    let text = json::text("findings.json", &crate::stand_in::findings()).unwrap();
     let back: ratewright::output::findings::Findings = serde_json::from_str(&text).unwrap();
-    assert_eq!(back, support::findings());
+    assert_eq!(back, crate::stand_in::findings());
 }

@@ -1,10 +1,8 @@
 //! The demo: its table and true values are what the stated program makes, and the fit finds them.
 
-#![allow(clippy::unwrap_used, clippy::panic)]
-
-#[path = "../examples/pools/mod.rs"]
+#[path = "../../examples/pools/mod.rs"]
 mod pools;
-#[path = "../examples/pools/truth.rs"]
+#[path = "../../examples/pools/truth.rs"]
 mod truth;
 
 use ndarray::{Array1, Array2};

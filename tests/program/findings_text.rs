@@ -1,8 +1,6 @@
 //! What people and programs read of the findings, from a stand-in for the slow part.
 #![allow(missing_docs)]
 
-mod support;
-
 use ratewright::output::findings::StopReason;
 use ratewright::output::shown::Audience;
 use ratewright::output::{tables, terminal};
@@ -16,13 +14,13 @@ fn terminal_text(findings: &ratewright::output::findings::Findings, audience: Au
 
 #[test]
 fn the_terminal_tells_the_answer_first() {
-    let findings = support::findings();
+    let findings = crate::stand_in::findings();
     insta::assert_snapshot!(terminal_text(&findings, Audience::of_study(&findings.study)));
 }
 
 #[test]
 fn the_terminal_says_so_when_the_precision_was_not_met() {
-    let mut findings = support::findings();
+    let mut findings = crate::stand_in::findings();
     findings.sampling.stopped = StopReason::MostDraws;
     findings.sampling.largest_r_hat = None;
     for coefficient in &mut findings.coefficients {
@@ -35,7 +33,7 @@ fn the_terminal_says_so_when_the_precision_was_not_met() {
 
 #[test]
 fn no_line_of_the_terminal_is_wider_than_eighty_columns() {
-    let findings = support::findings();
+    let findings = crate::stand_in::findings();
     for line in terminal_text(&findings, Audience::Whole).lines() {
         assert!(line.chars().count() <= 80, "{line}");
     }
@@ -43,7 +41,7 @@ fn no_line_of_the_terminal_is_wider_than_eighty_columns() {
 
 #[test]
 fn small_counts_are_hidden_and_all_that_tells_them() {
-    let findings = support::findings();
+    let findings = crate::stand_in::findings();
     let audience = Audience::of_study(&findings.study);
     let text = terminal_text(&findings, audience);
     assert!(!text.contains("Sandbar") && !text.contains("Old ferry"), "{text}");
@@ -54,7 +52,7 @@ fn small_counts_are_hidden_and_all_that_tells_them() {
 
 #[test]
 fn a_count_of_nothing_is_shown_where_the_study_says_so() {
-    let mut findings = support::findings();
+    let mut findings = crate::stand_in::findings();
     findings.study.show_zero = true;
     let table = tables::units(&findings, Audience::of_study(&findings.study)).unwrap();
     assert!(
@@ -66,7 +64,7 @@ fn a_count_of_nothing_is_shown_where_the_study_says_so() {
 
 #[test]
 fn the_whole_table_holds_every_count_and_no_formula() {
-    let table = tables::units(&support::findings(), Audience::Whole).unwrap();
+    let table = tables::units(&crate::stand_in::findings(), Audience::Whole).unwrap();
     assert!(
         table.contains("\nSandbar,1,15000,2,2,14.7,5,27,0.0004,below\n"),
         "{table}"
@@ -77,7 +75,7 @@ fn the_whole_table_holds_every_count_and_no_formula() {
 
 #[test]
 fn the_csv_tables_have_their_columns() {
-    let findings = support::findings();
+    let findings = crate::stand_in::findings();
     let first_line = |text: String| text.lines().next().unwrap().to_owned();
     assert_eq!(
         first_line(tables::coefficients(&findings).unwrap()),
@@ -92,7 +90,7 @@ fn the_csv_tables_have_their_columns() {
 
 #[test]
 fn a_figure_that_is_not_finite_stops_the_table() {
-    let mut findings = support::findings();
+    let mut findings = crate::stand_in::findings();
     findings.coefficients[1].sd = f64::NAN;
     let error = tables::coefficients(&findings).unwrap_err();
     assert!(error.to_string().contains("column sd of coefficients.csv"), "{error}");

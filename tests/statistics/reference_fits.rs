@@ -1,51 +1,17 @@
 //! Fits of open data sets against maximum likelihood by statsmodels and R, densities by scipy, and
 //! posteriors by a general-purpose sampler; tests/reference/README.md says how each was made.
 
-#![allow(clippy::unwrap_used, clippy::panic)]
-
-use ratewright::design::{self, Design};
+use crate::cases::{CASES, number, reference, study};
+use ratewright::design::Design;
 use ratewright::fit::{self, Fit, Machine, ScatterMode, Unwatched, Verdict};
 use ratewright::model::{BaselinePrior, Model, NormalPrior, ScatterPrior};
-use ratewright::spec::{self, Spec, Steps};
-use ratewright::table;
+use ratewright::spec::{Spec, Steps};
 use serde_json::Value;
-use std::path::{Path, PathBuf};
-
-const CASES: [&str; 8] = [
-    "ships.poisson",
-    "ships.nb2",
-    "insurance.poisson",
-    "insurance.nb2",
-    "quine.poisson",
-    "quine.nb2",
-    "clinic.poisson",
-    "clinic.nb2",
-];
-
-fn file(name: &str) -> PathBuf {
-    Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/reference").join(name)
-}
-
-fn study(case: &str) -> (Spec, Design) {
-    let spec = spec::read(&file(&format!("{case}.toml"))).unwrap();
-    let data = &spec.data.file.value;
-    let table = table::read_csv(data, &file(data)).unwrap();
-    let design = design::build(&spec, &table).unwrap();
-    (spec, design)
-}
-
-fn reference(case: &str) -> Value {
-    serde_json::from_str(&std::fs::read_to_string(file(&format!("{case}.json"))).unwrap()).unwrap()
-}
 
 /// Names of the coefficients in the reference's words and order.
 fn coefficients(reference: &Value) -> Vec<String> {
     let order = reference["coefficient_order"].as_array().unwrap();
     order.iter().map(|name| name.as_str().unwrap().to_owned()).collect()
-}
-
-fn number(value: &Value) -> f64 {
-    value.as_f64().unwrap_or_else(|| panic!("no number: {value}"))
 }
 
 /// A model whose priors say next to nothing: the mode is then the maximum of the likelihood.

@@ -4,7 +4,7 @@ use ratewright::spec::{
     Baseline, Centre, Chances, CovariateKind, Family, KeepOnly, RowsWithGaps, Standing, Steps, ZeroCounts, parse,
 };
 
-const EXAMPLE: &str = include_str!("../src/spec/example.toml");
+const EXAMPLE: &str = include_str!("../../src/spec/example.toml");
 
 /// As little as a spec can say.
 const SMALLEST: &str = r#"

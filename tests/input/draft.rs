@@ -125,8 +125,7 @@ fn a_table_without_counts_is_refused_with_what_spoils_them() {
     assert_eq!(error.diagnostics()[0].code, "draft-no-count");
     let error = draft(&table("falls\n3\n1\n")).unwrap_err();
     assert_eq!(error.diagnostics()[0].code, "draft-no-unit");
-    let docs =
-        std::fs::read_to_string(PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("docs/problems.md")).unwrap();
+    let docs = std::fs::read_to_string(PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("docs/problems.md")).unwrap();
     for code in ["draft-no-count", "draft-no-unit"] {
         assert!(docs.contains(&format!("### `{code}`\n")), "no entry for {code}");
     }

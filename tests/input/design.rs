@@ -1,13 +1,10 @@
 //! The design of a study: what each coding gives, and that a run's own rows give it again.
 
-#[path = "support/study.rs"]
-mod support;
-
+use crate::study::*;
 use proptest::prelude::*;
 use ratewright::design::{self, Audit, CellRule, ColumnCoding, Design, DesignFault};
 use ratewright::spec::{Centre, Data, RowsWithGaps, Spec, Standing};
 use ratewright::table::{Cells, Table};
-use support::*;
 
 const LANDINGS: &str = "\
 landing,month,falls,boardings,decking,slope,queue,season

@@ -1,30 +1,15 @@
 //! The conjugate cases: a gamma prior from earlier data, Poisson counts. Posterior, evidence and both
 //! predictive distributions are known in closed form (tests/reference/README.md: the exact cases).
 
-#![allow(clippy::unwrap_used, clippy::panic)]
-
+use crate::cases::{file, number, reference, study};
 use ratewright::check;
-use ratewright::design::{self, Design};
+use ratewright::design::Design;
 use ratewright::fit::{self, Fit, Machine, Unwatched, assess};
 use ratewright::model::Model;
 use ratewright::numeric::{exp, poisson_pmf};
-use ratewright::spec::{self, Spec};
-use ratewright::table;
+use ratewright::spec::Spec;
 use serde_json::Value;
 use statrs::distribution::{Continuous, Gamma};
-use std::path::{Path, PathBuf};
-
-fn file(name: &str) -> PathBuf {
-    Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/reference").join(name)
-}
-
-fn json(name: &str) -> Value {
-    serde_json::from_str(&std::fs::read_to_string(file(name)).unwrap()).unwrap()
-}
-
-fn number(value: &Value) -> f64 {
-    value.as_f64().unwrap()
-}
 
 struct Case {
     spec: Spec,
@@ -36,11 +21,9 @@ struct Case {
 }
 
 fn case(name: &str, exact: &Value) -> Case {
-    let mut spec = spec::read(&file(&format!("{name}.toml"))).unwrap();
+    let (mut spec, design) = study(name);
     spec.sampling.precision = 0.005;
     spec.sampling.most_draws = 1_000_000;
-    let data = spec.data.file.value.clone();
-    let design = design::build(&spec, &table::read_csv(&data, &file(&data)).unwrap()).unwrap();
     let fit = fit::run(&Model::new(&spec, &design), &spec, Machine::default(), &Unwatched).unwrap();
     Case {
         spec,
@@ -52,11 +35,11 @@ fn case(name: &str, exact: &Value) -> Case {
 }
 
 fn cases() -> Vec<Case> {
-    let textbook = json("exact_textbook.json");
+    let textbook = reference("exact_textbook");
     vec![
         case("exact_textbook_short", &textbook["steps"][0]),
         case("exact_textbook_long", &textbook["steps"][1]),
-        case("exact_clinic_gamma", &json("exact_clinic_gamma.json")),
+        case("exact_clinic_gamma", &reference("exact_clinic_gamma")),
     ]
 }
 
@@ -125,12 +108,12 @@ fn the_posterior_predictive_distribution_is_the_closed_form() {
         (
             "exact_textbook",
             "exact_textbook_short",
-            json("exact_textbook.json")["steps"][0].clone(),
+            reference("exact_textbook")["steps"][0].clone(),
         ),
         (
             "exact_clinic_gamma",
             "exact_clinic_gamma",
-            json("exact_clinic_gamma.json"),
+            reference("exact_clinic_gamma"),
         ),
     ];
     for (table, name, reference) in exact {
@@ -158,7 +141,7 @@ fn the_posterior_predictive_distribution_is_the_closed_form() {
 /// The unit check of a real fit against closed-form predictive probabilities.
 #[test]
 fn the_unit_check_has_the_closed_forms_tail_probabilities() {
-    let case = case("exact_clinic_gamma", &json("exact_clinic_gamma.json"));
+    let case = case("exact_clinic_gamma", &reference("exact_clinic_gamma"));
     let found = check::units(
         &case.design,
         &case.spec.family,
@@ -189,18 +172,16 @@ fn the_unit_check_has_the_closed_forms_tail_probabilities() {
 /// quantiles of the closed form.
 #[test]
 fn the_prior_predictive_interval_is_the_closed_forms() {
-    let spec = spec::read(&file("exact_textbook_short.toml")).unwrap();
-    let data = spec.data.file.value.clone();
-    let design = design::build(&spec, &table::read_csv(&data, &file(&data)).unwrap()).unwrap();
+    let (spec, design) = study("exact_textbook_short");
     let look = check::prior(&spec, &design);
     let rows: Vec<_> = predictive("exact_textbook")
         .into_iter()
         .filter(|row| row.0 == 2.0)
         .collect();
     for (p, shown) in [
-        (0.025, look.count.from),
-        (0.5, look.count.middle),
-        (0.975, look.count.to),
+        (0.025, look.count.lower),
+        (0.5, look.count.median),
+        (0.975, look.count.upper),
     ] {
         let mut reached = 0.0;
         let exact = rows

@@ -1,40 +1,9 @@
 //! The specs of the reference cases say what the reference fits were made of: the same rows, terms
 //! and priors.
 
-#![allow(clippy::unwrap_used, clippy::panic)]
-
-use ratewright::design::{self, Design};
-use ratewright::spec::{self, Baseline, Family, Spec};
-use ratewright::table;
+use crate::cases::{CASES, file, reference, study};
+use ratewright::spec::{Baseline, Family};
 use serde_json::Value;
-use std::path::{Path, PathBuf};
-
-const CASES: [&str; 8] = [
-    "ships.poisson",
-    "ships.nb2",
-    "insurance.poisson",
-    "insurance.nb2",
-    "quine.poisson",
-    "quine.nb2",
-    "clinic.poisson",
-    "clinic.nb2",
-];
-
-fn file(name: &str) -> PathBuf {
-    Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/reference").join(name)
-}
-
-fn study(case: &str) -> (Spec, Design) {
-    let spec = spec::read(&file(&format!("{case}.toml"))).unwrap();
-    let data = &spec.data.file.value;
-    let table = table::read_csv(data, &file(data)).unwrap();
-    let design = design::build(&spec, &table).unwrap();
-    (spec, design)
-}
-
-fn reference(case: &str) -> Value {
-    serde_json::from_str(&std::fs::read_to_string(file(&format!("{case}.json"))).unwrap()).unwrap()
-}
 
 /// The reference writes `type[B]` where this program writes `type=B`.
 fn in_our_words(coefficient: &str) -> String {

@@ -1,20 +1,18 @@
 //! What the priors imply, against closed forms.
 #![allow(missing_docs)]
 
-mod support;
-
 use ratewright::check::{PriorState, prior};
 use ratewright::numeric::ln;
 use ratewright::spec::{Baseline, Chances, Family, Spec, Standing};
 
 fn look(spec: &Spec) -> ratewright::check::PriorLook {
-    let design = ratewright::design::build(spec, &support::rows()).unwrap();
+    let design = ratewright::design::build(spec, &crate::stand_in::rows()).unwrap();
     prior(spec, &design)
 }
 
 /// A spec of the stand-in with no covariate.
 fn bare() -> Spec {
-    let mut spec = support::spec();
+    let mut spec = crate::stand_in::spec();
     spec.covariates.clear();
     spec.study.answer.value = "baseline".into();
     spec.family = Family::Poisson;
@@ -23,7 +21,7 @@ fn bare() -> Spec {
 
 #[test]
 fn stated_ranges_come_back() {
-    let look = look(&support::spec());
+    let look = look(&crate::stand_in::spec());
     assert!((look.baseline_rate.lower - 0.5).abs() < 1e-12 && (look.baseline_rate.upper - 50.0).abs() < 1e-12);
     let grooved = &look.rate_ratios[0];
     assert!(
@@ -67,7 +65,7 @@ fn counts_from_earlier_data_are_negative_binomial() {
 
 #[test]
 fn a_provisional_range_wants_a_look() {
-    let mut spec = support::spec();
+    let mut spec = crate::stand_in::spec();
     spec.covariates[1].plausible_ratio.standing = Standing::Provisional;
     let look = look(&spec);
     assert_eq!(look.state, PriorState::Look);
@@ -109,8 +107,8 @@ fn more_incidents_than_chances_want_a_look() {
 
 #[test]
 fn the_same_seed_gives_the_same_look() {
-    assert_eq!(look(&support::spec()), look(&support::spec()));
-    let mut other = support::spec();
+    assert_eq!(look(&crate::stand_in::spec()), look(&crate::stand_in::spec()));
+    let mut other = crate::stand_in::spec();
     other.study.seed += 1;
-    assert_ne!(look(&support::spec()).expected_rate, look(&other).expected_rate);
+    assert_ne!(look(&crate::stand_in::spec()).expected_rate, look(&other).expected_rate);
 }

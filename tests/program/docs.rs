@@ -1,7 +1,5 @@
 //! What README and docs claim, held against the program and the tree.
 
-#![allow(clippy::unwrap_used, clippy::panic)]
-
 use clap::Parser;
 use std::collections::BTreeSet;
 use std::fs;

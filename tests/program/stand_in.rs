@@ -1,6 +1,4 @@
 //! A stand-in for the slow part: the findings of an invented study, made by hand.
-#![allow(dead_code, missing_docs)]
-
 use ratewright::answer::{Answer, BaselineRate, RateRatio};
 use ratewright::check::{UnitCheck, UnitState, UnitsCheck};
 use ratewright::design::{Audit, Coding, ColumnCoding, CovariateCoding};

@@ -1,8 +1,5 @@
 //! Reads the check tables beside this file: `#` lines say where the numbers come from, then a header, then numbers.
 
-#![allow(dead_code, reason = "each test file uses its own part")]
-#![allow(clippy::panic, reason = "a table that cannot be read ends the test")]
-
 use std::path::Path;
 
 /// A table of numbers.

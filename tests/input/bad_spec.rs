@@ -39,7 +39,7 @@ fn message_of(error: &SpecError) -> String {
 fn every_bad_file_has_its_message() {
     for name in files() {
         let message = message_of(&error_of(&name));
-        insta::with_settings!({ snapshot_path => "bad_spec/snapshots", prepend_module_to_snapshot => false }, {
+        insta::with_settings!({ snapshot_path => "../bad_spec/snapshots", prepend_module_to_snapshot => false }, {
             insta::assert_snapshot!(name.trim_end_matches(".toml"), message);
         });
     }
@@ -55,7 +55,7 @@ fn every_kind_of_fault_has_a_file_and_an_entry_in_the_docs() {
     codes.extend(missing.faults.iter().map(|fault| fault.code()));
     codes.extend(a_large_file().faults.iter().map(|fault| fault.code()));
     // Both sides: a fault without a file, and an entry of a fault that no longer exists.
-    let problems = include_str!("../docs/problems.md");
+    let problems = include_str!("../../docs/problems.md");
     let part = problems
         .split("\n## ")
         .find(|part| part.starts_with("Spec\n"))
@@ -153,7 +153,7 @@ fn a_fault_says_all_in_one_line_too() {
     );
 }
 
-const GOOD: &str = include_str!("../src/spec/example.toml");
+const GOOD: &str = include_str!("../../src/spec/example.toml");
 
 /// Parses and renders; either outcome is right as long as it is one.
 fn survives(text: &str) {

@@ -1,7 +1,5 @@
 //! Checked specs built by hand, for tests that start behind the parser.
 
-#![allow(dead_code, reason = "each test file uses its own part")]
-
 use ratewright::spec::*;
 use ratewright::table::{Table, parse_csv};
 

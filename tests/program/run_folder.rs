@@ -1,8 +1,6 @@
 //! A run appears complete or not at all, and replaces only what it may.
 #![allow(missing_docs)]
 
-mod support;
-
 use ratewright::output::files::{self, RunContent};
 use ratewright::output::manifest::{self, Manifest};
 use ratewright::output::shown::Audience;
@@ -13,19 +11,23 @@ use std::path::{Path, PathBuf};
 
 fn leave_run(target: &Path, spec_file: &str, replace: Replace) -> Result<PathBuf, OutputError> {
     let folder = RunFolder::begin(target, spec_file, replace)?;
-    fill(&folder, spec_file, Audience::of_study(&support::findings().study))?;
+    fill(
+        &folder,
+        spec_file,
+        Audience::of_study(&crate::stand_in::findings().study),
+    )?;
     folder.finish()
 }
 
 fn fill(folder: &RunFolder, spec_file: &str, audience: Audience) -> Result<Manifest, OutputError> {
     let content = RunContent {
-        spec: &support::spec(),
+        spec: &crate::stand_in::spec(),
         spec_file,
-        data: &support::data_fact(),
-        rows: &support::rows(),
-        coding: &support::coding(),
-        draws: &support::draws(),
-        findings: &support::findings(),
+        data: &crate::stand_in::data_fact(),
+        rows: &crate::stand_in::rows(),
+        coding: &crate::stand_in::coding(),
+        draws: &crate::stand_in::draws(),
+        findings: &crate::stand_in::findings(),
         audience,
     };
     let manifest = files::write(folder, &content)?;
@@ -65,11 +67,11 @@ fn a_run_holds_its_files_and_nothing_is_left_beside_it() {
     );
     assert_eq!(
         fs::read(run.join("spec.toml")).unwrap(),
-        support::spec().source.text.as_bytes()
+        crate::stand_in::spec().source.text.as_bytes()
     );
     assert_eq!(
         parquet::read_rows(&run.join("rows.parquet"), "landings.csv").unwrap(),
-        support::rows()
+        crate::stand_in::rows()
     );
 }
 

@@ -1,12 +1,10 @@
 //! Special functions against the tables of `tests/tables/make_counts.py`, and identities between them.
 
-mod tables;
-
+use crate::tables::Table;
 use ratewright::numeric::{
     beta_quantile, incomplete_beta, ln_factorial, ln_gamma, ln_rising, nb2_cdf, nb2_ln_pmf, nb2_pmf, nb2_sf,
     normal_cdf, normal_quantile, poisson_cdf, poisson_ln_pmf, poisson_pmf, poisson_sf,
 };
-use tables::Table;
 
 /// The worst of many comparisons, with what it was about.
 #[derive(Default)]
@@ -30,7 +28,6 @@ impl Worst {
     }
 
     fn below(&self, tolerance: f64) {
-        println!("worst {:e}: {}", self.error, self.about);
         assert!(self.error < tolerance, "{:e}: {}", self.error, self.about);
     }
 }
