@@ -1,7 +1,7 @@
 //! Problems in words and places, for a terminal, a log or a screen reader.
 //!
 //! Nothing depends on colour or boxes: every line reads on its own, and lines of ours stay within
-//! [`WIDTH`] columns. A place in the spec shows its line with the characters marked.
+//! `WIDTH` columns. A place in the spec shows its line with the characters marked.
 
 use std::ops::Range;
 
