@@ -130,11 +130,11 @@ fn parts(covariate: &CovariateCoding) -> Vec<(String, Part)> {
 }
 
 impl Part {
-    /// As the circumstance of a sentence: `where decking is grooved`, `with each 2 more of slope_deg`.
+    /// As the circumstance of a sentence: `where decking is grooved`, `with each 2 more in slope_deg`.
     pub fn circumstance(&self) -> String {
         match self {
             Part::Level { column, level, .. } => format!("where {column} is {level}"),
-            Part::Step { column, step, .. } => format!("with each {} more of {column}", as_written(*step)),
+            Part::Step { column, step, .. } => format!("with each {} more in {column}", as_written(*step)),
             Part::Doubling { column, .. } => format!("with each doubling of {column}"),
         }
     }
@@ -147,7 +147,7 @@ impl Part {
         }
     }
 
-    /// As what a rate ratio is for: `decking grooved against plain`, `each 2 more of slope_deg`.
+    /// As what a rate ratio is for: `decking grooved against plain`, `each 2 more in slope_deg`.
     pub fn as_change(&self) -> String {
         match self {
             Part::Level {
@@ -155,7 +155,7 @@ impl Part {
                 level,
                 reference,
             } => format!("{column} {level} against {reference}"),
-            Part::Step { column, step, .. } => format!("each {} more of {column}", as_written(*step)),
+            Part::Step { column, step, .. } => format!("each {} more in {column}", as_written(*step)),
             Part::Doubling { column, .. } => format!("each doubling of {column}"),
         }
     }

@@ -276,7 +276,7 @@ mod tests {
         );
         assert_eq!(
             told,
-            "With each 2 more of slope_deg, the rate of falls is 21 % higher: rate ratio 1.21 (95 % interval 1.07 to \
+            "With each 2 more in slope_deg, the rate of falls is 21 % higher: rate ratio 1.21 (95 % interval 1.07 to \
              1.36). The probability that it is higher is above 99 %. The other columns of the model are held the same."
         );
     }
@@ -344,7 +344,7 @@ mod tests {
         );
         assert_eq!(
             told,
-            "With each 2 more of slope_deg, the rate ratio of falls for decking grooved against plain is 18 % lower: \
+            "With each 2 more in slope_deg, the rate ratio of falls for decking grooved against plain is 18 % lower: \
              factor 0.82 (95 % interval 0.71 to 0.94). The probability that it is lower is 99 %."
         );
     }

@@ -7,10 +7,10 @@ use super::coding::Source;
 use super::collinear::determined;
 use super::covariates::{self, Values, Wanted};
 use super::fault::{CollinearTerm, DesignError, DesignFault};
-use super::nearest::nearest;
 use super::outcome;
 use super::rows::{self, Reading, Rows, labels, uses};
 use super::types::{Audit, Coding, CovariateCoding, Design, PARAMETERS, Term};
+use crate::diagnostic::nearest;
 use crate::numeric::ln;
 use crate::spec::Spec;
 use crate::table::{Cells, Column, Table, TextCells};
@@ -245,7 +245,7 @@ fn unknown_answer(spec: &Spec, coding: &Coding, faults: &mut Vec<DesignFault>) {
         faults.push(DesignFault::UnknownAnswer {
             answer: answer.value.clone(),
             span: answer.span.clone(),
-            nearest: nearest(&answer.value, candidates),
+            nearest: nearest(&answer.value, candidates).map(str::to_owned),
             terms: coding.terms.clone(),
         });
     }

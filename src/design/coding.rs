@@ -6,9 +6,9 @@
 use super::cell_rule::{CellRule, MOST_STEPS};
 use super::covariates::{self, Values, Wanted, merged};
 use super::fault::{DesignFault, MissingColumn};
-use super::nearest::nearest;
 use super::rows::{BadCells, Rows};
 use super::types::{Coding, ColumnCoding, CovariateCoding};
+use crate::diagnostic::nearest;
 use crate::numeric::ln;
 use crate::table::Table;
 use std::f64::consts::LN_2;
@@ -17,11 +17,11 @@ use std::f64::consts::LN_2;
 struct Part {
     /// `decking=grooved`, `slope_deg`
     name: String,
-    /// "grooved against plain", "per 2 more slope_deg", "per doubling of queue"
+    /// "grooved against plain", "per 2 more in slope_deg", "per doubling of queue"
     change: String,
-    /// As the first part of a joint term: "of grooved against plain", "per 2 more slope_deg"
+    /// As the first part of a joint term: "of grooved against plain", "per 2 more in slope_deg"
     ratio: String,
-    /// As the second part of a joint term: "where season is summer and not winter", "for each 2 more slope_deg"
+    /// As the second part of a joint term: "where season is summer and not winter", "for each 2 more in slope_deg"
     condition: String,
 }
 
@@ -55,7 +55,7 @@ impl Coding {
             .map(|name| MissingColumn {
                 name: name.to_owned(),
                 span: None,
-                nearest: nearest(name, table.columns.iter().map(|column| column.name.as_str())),
+                nearest: nearest(name, table.columns.iter().map(|column| column.name.as_str())).map(str::to_owned),
             })
             .collect();
         if !missing.is_empty() {
@@ -203,9 +203,9 @@ fn parts(covariate: &CovariateCoding) -> Vec<Part> {
         }
         ColumnCoding::Number { step, .. } => vec![Part {
             name: column.clone(),
-            change: format!("per {step} more {column}"),
-            ratio: format!("per {step} more {column}"),
-            condition: format!("for each {step} more {column}"),
+            change: format!("per {step} more in {column}"),
+            ratio: format!("per {step} more in {column}"),
+            condition: format!("for each {step} more in {column}"),
         }],
         ColumnCoding::LogNumber { .. } => vec![Part {
             name: column.clone(),

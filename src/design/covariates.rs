@@ -2,10 +2,10 @@
 
 use super::cell_rule::CellRule;
 use super::fault::{DesignFault, LevelRole, UnknownLevel};
-use super::nearest::nearest;
 use super::outcome::numbers;
 use super::rows::{Rows, labels};
 use super::types::ColumnCoding;
+use crate::diagnostic::nearest;
 use crate::numeric::{exp, ln, mean};
 use crate::spec::{Centre, Covariate, CovariateKind, Merge};
 
@@ -107,7 +107,7 @@ pub(super) fn coding_of(covariate: &Covariate, values: &Values, faults: &mut Vec
                         column: covariate.column.value.clone(),
                         level: reference.value.clone(),
                         span: reference.span.clone(),
-                        nearest: nearest(&reference.value, levels.iter().map(String::as_str)),
+                        nearest: nearest(&reference.value, levels.iter().map(String::as_str)).map(str::to_owned),
                         present: levels.clone(),
                     }],
                 });
@@ -201,7 +201,7 @@ fn unknown_merge_levels(covariate: &Covariate, merge: &[Merge], names: &[String]
             column: covariate.column.value.clone(),
             level: level.value.clone(),
             span: level.span.clone(),
-            nearest: nearest(&level.value, names.iter().map(String::as_str)),
+            nearest: nearest(&level.value, names.iter().map(String::as_str)).map(str::to_owned),
             present: names.to_vec(),
         })
         .collect();

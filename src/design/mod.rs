@@ -8,7 +8,6 @@ mod condition;
 mod covariates;
 mod draft;
 mod fault;
-mod nearest;
 mod outcome;
 mod remark;
 mod rows;

@@ -2,7 +2,7 @@
 
 use super::cell_rule::CellRule;
 use super::fault::{BadCell, DesignFault, LevelRole, MissingColumn, UnknownLevel};
-use super::nearest::nearest;
+use crate::diagnostic::nearest;
 use crate::spec::{At, CovariateKind, Keep, KeepOnly, RowsWithGaps, Spec};
 use crate::table::{Column, Table};
 use std::collections::{BTreeMap, HashMap};
@@ -114,7 +114,7 @@ pub(super) fn missing_columns(spec: &Spec, table: &Table, faults: &mut Vec<Desig
         .map(|(column, _)| MissingColumn {
             name: column.value.clone(),
             span: Some(column.span.clone()),
-            nearest: nearest(&column.value, names()),
+            nearest: nearest(&column.value, names()).map(str::to_owned),
         })
         .collect();
     if !missing.is_empty() {
@@ -219,6 +219,7 @@ fn unknown_keep_levels(spec: &Spec, used: &Rows, faults: &mut Vec<DesignFault>) 
                 level: level.value.clone(),
                 span: level.span.clone(),
                 nearest: nearest(&level.value, everywhere.iter().map(String::as_str))
+                    .map(str::to_owned)
                     .filter(|near| *near != level.value),
                 present: everywhere.clone(),
             });

@@ -7,7 +7,7 @@ use super::fault::{AnswerFault, JointFault, SpecFault};
 use super::fields::Faults;
 use super::predictor::{CovariateDraft, Form, JointDraft, merged_into};
 use super::study::{At, Data, Exposure, Incidents};
-use super::values::nearest;
+use crate::diagnostic::nearest;
 
 /// Parameters that every fit may have: no term can share their name.
 const RESERVED: [&str; 3] = ["baseline", "scatter", "spread"];

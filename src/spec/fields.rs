@@ -8,7 +8,8 @@ use toml::de::{DeArray, DeTable, DeValue};
 use super::fault::{KeyHint, RangeFault, SpecFault};
 use super::keys::{Bounds, DefaultValue, KeyInfo, Kind, LeftOut, TableInfo};
 use super::study::At;
-use super::values::{check_ends, key_hint, nearest, plain_number, type_in_words};
+use super::values::{check_ends, key_hint, plain_number, type_in_words};
+use crate::diagnostic::nearest;
 
 /// The faults found so far.
 pub(super) type Faults = Vec<SpecFault>;

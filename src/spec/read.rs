@@ -17,7 +17,8 @@ use super::sections::{
 };
 use super::study::{At, Source, Spec};
 use super::tables::{TABLES, TABLES_NOT_YET};
-use super::values::{nearest, type_in_words};
+use super::values::type_in_words;
+use crate::diagnostic::nearest;
 
 /// The largest spec that is read, in bytes. A table named where the spec is meant would otherwise be
 /// taken in whole, only to be refused line by line.

@@ -1,5 +1,6 @@
 //! Single values: numbers and types as TOML has them, ends of ranges, and names that are spelt alike.
 
+use crate::diagnostic::nearest;
 use toml::de::{DeInteger, DeValue};
 
 use super::fault::{KeyHint, RangeFault};
@@ -68,21 +69,4 @@ pub(super) fn key_hint(info: &TableInfo, name: &str) -> KeyHint {
         Some(near) => KeyHint::Nearest(near),
         None => KeyHint::Nothing,
     }
-}
-
-/// The candidate that is spelt most like `word`, if one is near enough to be meant; the first of
-/// equals.
-///
-/// Near enough is a Jaro-Winkler similarity of at least 0.85: `setp` and `step` are 0.93 alike,
-/// `hide_below` and `hide_counts_below` 0.88, but `colour` and `column`, no slip of the hand, 0.84.
-pub(super) fn nearest<'c>(word: &str, candidates: impl Iterator<Item = &'c str>) -> Option<&'c str> {
-    let lowered = word.to_lowercase();
-    let mut best: Option<(&str, f64)> = None;
-    for candidate in candidates {
-        let likeness = strsim::jaro_winkler(&lowered, &candidate.to_lowercase());
-        if likeness >= 0.85 && best.is_none_or(|(_, so_far)| likeness > so_far) {
-            best = Some((candidate, likeness));
-        }
-    }
-    best.map(|(candidate, _)| candidate)
 }

@@ -82,7 +82,7 @@ fn a_number_counts_steps_from_its_centre_and_a_mean_weighs_each_row_once() {
         }
     );
     assert_eq!(design.columns[0][4], 2.1875);
-    assert_eq!(design.terms[0].change, "per 2 more slope");
+    assert_eq!(design.terms[0].change, "per 2 more in slope");
     assert_eq!(design.stands_for[4], 80.0);
 }
 
@@ -120,7 +120,7 @@ fn joint_terms_are_products_in_a_fixed_order_and_told_as_what_they_are() {
     assert_eq!(design.columns[4], [0.0, 0.0, 0.0, 0.0, 2.5, 2.0, 0.0, 0.0]);
     assert_eq!(
         design.terms[3].change,
-        "factor on the ratio of grooved against plain, for each 2 more slope"
+        "factor on the ratio of grooved against plain, for each 2 more in slope"
     );
     assert_eq!(design.coding.terms, names(&design));
 }

@@ -26,7 +26,7 @@ pub fn findings() -> Findings {
     };
     let rate_ratios = vec![
         ratio(1, "grooved against plain", 0.9937),
-        ratio(2, "for each 2 more of slope_deg", 0.302),
+        ratio(2, "for each 2 more in slope_deg", 0.302),
     ];
     Findings {
         layout: LAYOUT,
