@@ -16,5 +16,6 @@ mod numeric;
 mod random;
 mod reference_fits;
 mod reference_specs;
+mod sameness;
 mod tables;
 mod units;
