@@ -61,6 +61,19 @@ impl Predictive {
         average(&self.means, |mean| poisson_pmf(count, mean))
     }
 
+    /// Monte Carlo standard error of the mid-p tail probability of a count, its spread over draws
+    /// taken from `at_most` of them.
+    pub(super) fn error_of_tail(&self, count: f64, at_most: usize) -> f64 {
+        let used = self.means.len().min(at_most);
+        let tails: Vec<f64> = (0..used)
+            .map(|k| self.means[k * self.means.len() / used])
+            .map(|mean| poisson_cdf(count - 1.0, mean) + 0.5 * poisson_pmf(count, mean))
+            .collect();
+        let centre = mean(&tails);
+        let squares: Vec<f64> = tails.iter().map(|tail| (tail - centre) * (tail - centre)).collect();
+        (mean(&squares) / self.means.len() as f64).sqrt()
+    }
+
     /// The smallest count whose distribution function is at least `p`, exact over the draws.
     pub(super) fn smallest_reaching(&self, p: f64) -> Reached {
         match &self.shape {

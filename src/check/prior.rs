@@ -170,16 +170,58 @@ struct Simulated {
     above_chances: Option<f64>,
 }
 
+/// The rows as they would stand if each were written out as often as it stands for others.
+struct WrittenOut {
+    /// For each row, the number of rows up to its last.
+    ends: Vec<u64>,
+}
+
+impl WrittenOut {
+    fn new(design: &Design) -> Self {
+        let mut end = 0;
+        let ends = design.stands_for.iter().map(|weight| {
+            end += *weight as u64;
+            end
+        });
+        WrittenOut { ends: ends.collect() }
+    }
+
+    /// How many there are.
+    fn rows(&self) -> u64 {
+        self.ends.last().copied().unwrap_or(0)
+    }
+
+    /// The row of the design behind the one at this place, from 0.
+    fn row(&self, place: u64) -> usize {
+        self.ends.partition_point(|end| *end <= place)
+    }
+
+    /// The exposure in the middle of them, from below.
+    fn median_exposure(&self, design: &Design) -> f64 {
+        let mut rows: Vec<usize> = (0..self.ends.len()).collect();
+        rows.sort_by(|a, b| design.exposure[*a].total_cmp(&design.exposure[*b]));
+        let mut reached = 0.0;
+        let half = 0.5 * self.rows() as f64;
+        rows.into_iter()
+            .find(|row| {
+                reached += design.stands_for[*row];
+                reached >= half
+            })
+            .map_or(1.0, |row| design.exposure[row])
+    }
+}
+
 fn simulate(spec: &Spec, design: &Design) -> Simulated {
     let mut stream = Stream::new(spec.study.seed, Purpose::Prior, 0);
-    let exposure = median(&design.exposure);
+    let written_out = WrittenOut::new(design);
+    let exposure = written_out.median_exposure(design);
     let scatter_rate = spec.family.scatter_rate();
     let mut baselines = Vec::with_capacity(SIMULATIONS);
     let mut rates = Vec::with_capacity(SIMULATIONS);
     let mut counts = Vec::with_capacity(SIMULATIONS);
     for _ in 0..SIMULATIONS {
         let baseline = draw_log_baseline(spec, design.coding.per, &mut stream);
-        let row = stream.below(design.counts.len() as u64) as usize;
+        let row = written_out.row(stream.below(written_out.rows()));
         let mut predictor = baseline;
         for (term, column) in design.terms.iter().zip(&design.columns) {
             let coefficient = term.prior_mean + term.prior_sd * stream.normal();
@@ -255,10 +297,4 @@ fn range_of(values: &mut [f64], factor: f64) -> PriorRange {
         median: factor * quantile_of_sorted(values, 0.5),
         upper: factor * quantile_of_sorted(values, 0.975),
     }
-}
-
-fn median(values: &[f64]) -> f64 {
-    let mut sorted = values.to_vec();
-    sorted.sort_by(f64::total_cmp);
-    quantile_of_sorted(&sorted, 0.5)
 }

@@ -16,10 +16,15 @@ use crate::numeric::{Purpose, Stream, exp, mean, sum};
 use crate::spec::Family;
 use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
-use std::num::NonZero;
 
-/// Row-by-draw evaluations that the check may cost; between 400 and 2,000 draws are used.
-const ROW_DRAWS: usize = 4_000_000;
+/// Row-by-draw evaluations that the check may cost, within the two limits that follow.
+const ROW_DRAWS: usize = 16_000_000;
+/// Fewest draws used, where there are as many.
+const FEWEST_DRAWS: usize = 1_000;
+/// Most draws used: a tail probability is then known to within 0.004 or so.
+const MOST_DRAWS: usize = 8_000;
+/// Draws from which the simulation error of a tail probability is estimated.
+const ERROR_DRAWS: usize = 400;
 
 /// Above this shape a gamma factor is its mean to within 3e-8, far below what a count can show.
 const SHAPE_OF_A_CONSTANT: f64 = 1e15;
@@ -39,6 +44,9 @@ pub struct UnitsCheck {
     pub outside_by_chance: f64,
     /// Posterior draws that the check used.
     pub draws_used: usize,
+    /// The largest simulation error of a tail probability: with other draws it would be this much
+    /// different, as a standard deviation.
+    pub worst_error_of_tail_probability: f64,
 }
 
 /// The predictive check of one unit.
@@ -81,14 +89,9 @@ pub enum UnitState {
 /// Checks every unit of the design against the posterior `draws`, at the level `interval`, say 0.95.
 ///
 /// `seed` is the study's; each unit has its own random stream, so the result does not depend on how
-/// many threads share the work.
-pub fn units(design: &Design, family: &Family, draws: &Draws, interval: f64, seed: u64) -> UnitsCheck {
-    let threads = std::thread::available_parallelism().map_or(1, NonZero::get);
-    units_on(threads, design, family, draws, interval, seed)
-}
-
-fn units_on(threads: usize, design: &Design, family: &Family, draws: &Draws, interval: f64, seed: u64) -> UnitsCheck {
-    let at_most = (ROW_DRAWS / design.counts.len().max(1)).clamp(400, 2_000);
+/// many `threads` share the work.
+pub fn units(design: &Design, family: &Family, draws: &Draws, interval: f64, seed: u64, threads: usize) -> UnitsCheck {
+    let at_most = (ROW_DRAWS / design.counts.len().max(1)).clamp(FEWEST_DRAWS, MOST_DRAWS);
     let used = UsedDraws::new(draws, family, design.terms.len(), at_most);
     let mut rows_of = vec![Vec::new(); design.units.len()];
     for (row, unit) in design.unit_of.iter().enumerate() {
@@ -97,16 +100,15 @@ fn units_on(threads: usize, design: &Design, family: &Family, draws: &Draws, int
 
     // Every thread takes each n-th unit: neighbours in the file are often alike in size.
     let threads = threads.clamp(1, design.units.len().max(1));
-    let check_from = |first: usize| -> Vec<(usize, UnitCheck, f64)> {
+    let check_from = |first: usize| -> Vec<(usize, Checked)> {
         let mine = (first..design.units.len()).step_by(threads);
         mine.map(|unit| {
             let stream = Stream::new(seed, Purpose::UnitCheck, unit as u64);
-            let (check, outside) = check_unit(design, unit, &rows_of[unit], &used, interval, stream);
-            (unit, check, outside)
+            (unit, check_unit(design, unit, &rows_of[unit], &used, interval, stream))
         })
         .collect()
     };
-    let mut found: Vec<(usize, UnitCheck, f64)> = std::thread::scope(|scope| {
+    let mut found: Vec<(usize, Checked)> = std::thread::scope(|scope| {
         let check_from = &check_from;
         let others: Vec<_> = (1..threads)
             .map(|first| scope.spawn(move || check_from(first)))
@@ -120,16 +122,27 @@ fn units_on(threads: usize, design: &Design, family: &Family, draws: &Draws, int
         }
         found
     });
-    found.sort_unstable_by_key(|(unit, _, _)| *unit);
+    found.sort_unstable_by_key(|(unit, _)| *unit);
 
-    let chances: Vec<f64> = found.iter().map(|(_, _, outside)| *outside).collect();
-    let units: Vec<UnitCheck> = found.into_iter().map(|(_, check, _)| check).collect();
+    let chances: Vec<f64> = found.iter().map(|(_, checked)| checked.outside).collect();
+    let worst_error = found.iter().map(|(_, checked)| checked.error).fold(0.0, f64::max);
+    let units: Vec<UnitCheck> = found.into_iter().map(|(_, checked)| checked.check).collect();
     UnitsCheck {
         outside: units.iter().filter(|unit| unit.state != UnitState::Inside).count(),
         outside_by_chance: sum(&chances),
         draws_used: used.count,
+        worst_error_of_tail_probability: worst_error,
         units,
     }
+}
+
+/// The check of one unit, and what the check of all needs of it.
+struct Checked {
+    check: UnitCheck,
+    /// The chance that its count would fall outside its interval.
+    outside: f64,
+    /// Simulation error of its tail probability.
+    error: f64,
 }
 
 /// The draws that the check uses, draw by draw: baseline, then the terms.
@@ -162,7 +175,6 @@ impl UsedDraws {
     }
 }
 
-/// The check of one unit, and the chance that its count would fall outside its interval.
 fn check_unit(
     design: &Design,
     unit: usize,
@@ -170,7 +182,7 @@ fn check_unit(
     used: &UsedDraws,
     interval: f64,
     stream: Stream,
-) -> (UnitCheck, f64) {
+) -> Checked {
     // Each of the identical rows that a row stands for has the row's count and exposure.
     let total = |of: &dyn Fn(usize) -> f64| {
         let parts: Vec<f64> = rows.iter().map(|row| design.stands_for[*row] * of(*row)).collect();
@@ -200,7 +212,11 @@ fn check_unit(
         tail_probability: (predictive.at_most(observed - 1.0) + 0.5 * predictive.exactly(observed)).min(1.0),
         state,
     };
-    (check, lower.below + (1.0 - upper.reached))
+    Checked {
+        check,
+        outside: lower.below + (1.0 - upper.reached),
+        error: predictive.error_of_tail(observed, ERROR_DRAWS),
+    }
 }
 
 /// The unit's expected count, and for each draw the Poisson mean of its count.
@@ -290,9 +306,9 @@ mod tests {
             scatter_up_to: 1.0,
             standing: Standing::Settled,
         };
-        let one = units_on(1, &design, &family, &draws, 0.95, 3);
+        let one = units(&design, &family, &draws, 0.95, 3, 1);
         for threads in [2, 5, 64] {
-            assert_eq!(units_on(threads, &design, &family, &draws, 0.95, 3), one);
+            assert_eq!(units(&design, &family, &draws, 0.95, 3, threads), one);
         }
         assert!(
             one.units

@@ -112,6 +112,7 @@ pub fn conclude(
         &fitted.draws,
         spec.report.interval,
         spec.study.seed,
+        machine(threads).threads,
     );
     let findings = gather::findings(spec, design, &fitted, units)?;
     Ok(Concluded {

@@ -6,7 +6,8 @@
 //! where the scatter's mode is at 0 and no single Gaussian could be.
 
 use super::newton::{ClimbFailed, climb};
-use super::profile::{Peak, Section, peaks, section_near};
+use super::profile::{NEGLIGIBLE, Profile, Section, profile, section_near};
+use super::watch::Watch;
 use crate::model::Model;
 use crate::numeric::{exp, legendre};
 
@@ -54,10 +55,10 @@ impl Laplace {
 /// Mode and Laplace approximation of a model.
 ///
 /// # Errors
-/// [`ClimbFailed`] says why there is no mode.
-pub fn laplace(model: &Model) -> Result<(Mode, Laplace), ClimbFailed> {
+/// [`ClimbFailed`] says why there is no mode, or that the watcher asked to stop.
+pub fn laplace(model: &Model, watch: &dyn Watch) -> Result<(Mode, Laplace), ClimbFailed> {
     if model.scatter_place().is_some() {
-        return by_profile(model);
+        return by_profile(model, watch);
     }
     let reached = climb(model, None, &model.start())?;
     let covariance = reached.factor.inverse();
@@ -77,12 +78,12 @@ pub fn laplace(model: &Model) -> Result<(Mode, Laplace), ClimbFailed> {
     ))
 }
 
-fn by_profile(model: &Model) -> Result<(Mode, Laplace), ClimbFailed> {
-    let peaks = peaks(model)?;
-    let nodes = nodes(model, &peaks)?;
-    let highest = &peaks[0].section;
-    let steps = nodes.iter().map(|(section, _)| section.steps).sum::<u64>() + highest.steps;
-    Ok((mode_at(highest, steps), moments(&nodes)))
+fn by_profile(model: &Model, watch: &dyn Watch) -> Result<(Mode, Laplace), ClimbFailed> {
+    let profile = profile(model, watch)?;
+    let nodes = nodes(model, &profile, watch)?;
+    let steps = |sections: &mut dyn Iterator<Item = &Section>| sections.map(|section| section.steps).sum::<u64>();
+    let taken = steps(&mut profile.grid.iter().chain(&profile.peaks)) + steps(&mut nodes.iter().map(|(node, _)| node));
+    Ok((mode_at(&profile.peaks[0], taken), moments(&nodes)))
 }
 
 /// The mode at the highest peak. Its covariance follows from the section's: with V the coefficients'
@@ -120,79 +121,54 @@ fn mode_at(section: &Section, steps: u64) -> Mode {
 
 /// Edges of the quadrature's panels around a peak, in its widths.
 const EDGES: [f64; 9] = [-9.0, -5.0, -2.5, -1.0, 0.0, 1.0, 2.5, 5.0, 9.0];
-/// Mass further than this below the largest, on the log scale, is left out: e^-30 is below 1e-13.
-const NEGLIGIBLE: f64 = 30.0;
-/// Each extension doubles the last panel.
-const MOST_EXTENSIONS: usize = 60;
 
-/// Sections at the nodes of the quadrature over the scatter, each with its log weight.
-fn nodes(model: &Model, peaks: &[Peak]) -> Result<Vec<(Section, f64)>, ClimbFailed> {
-    let top = peaks
-        .iter()
-        .map(|peak| peak.section.log_mass)
+/// Sections at the nodes of the quadrature over the scatter, each with its weight.
+///
+/// Panels end at the places of the grid, which is fine enough where the posterior runs into 0, and
+/// around each peak inside at multiples of its width, since it may be narrower than the grid. They
+/// reach from the last place of the grid without mass below to the first above.
+fn nodes(model: &Model, profile: &Profile, watch: &dyn Watch) -> Result<Vec<(Section, f64)>, ClimbFailed> {
+    let known = || profile.grid.iter().chain(&profile.peaks);
+    let top = known()
+        .map(|section| section.log_mass)
         .fold(f64::NEG_INFINITY, f64::max);
-    let mut edges: Vec<f64> = Vec::new();
-    for peak in peaks.iter().filter(|peak| peak.section.log_mass > top - NEGLIGIBLE) {
-        edges.extend(EDGES.iter().map(|t| (peak.section.scatter + t * peak.width).max(0.0)));
+    let matters = |section: &&Section| section.log_mass > top - NEGLIGIBLE;
+    let lowest = known().filter(matters).map(|s| s.scatter).fold(f64::INFINITY, f64::min);
+    let highest = known().filter(matters).map(|s| s.scatter).fold(0.0, f64::max);
+    let places = || profile.grid.iter().map(|section| section.scatter);
+    let from = places().filter(|place| *place < lowest).fold(0.0, f64::max);
+    let to = places().filter(|place| *place > highest).fold(f64::INFINITY, f64::min);
+    let to = if to.is_finite() { to } else { highest };
+    let mut edges: Vec<f64> = places().filter(|place| (from..=to).contains(place)).collect();
+    for peak in profile.peaks.iter().filter(matters).filter(|peak| peak.curvature < 0.0) {
+        let width = 1.0 / (-peak.curvature).sqrt();
+        edges.extend(EDGES.iter().map(|t| (peak.scatter + t * width).clamp(from, to)));
     }
     edges.sort_by(f64::total_cmp);
     // Edges of two peaks may fall together: a panel a millionth of its place wide says nothing.
     edges.dedup_by(|b, a| *b - *a <= 1e-6 * *b);
     let mut nodes: Vec<(Section, f64)> = Vec::new();
-    let mut known = peaks[0].section.clone();
     for pair in edges.windows(2) {
-        add_panel(model, pair[0], pair[1], &mut known, &mut nodes)?;
-    }
-    let largest = |nodes: &[(Section, f64)]| nodes.iter().map(|(s, _)| s.log_mass).fold(top, f64::max);
-    // Heavy tails: go on beyond the last edge on either side until nothing is left.
-    let mut width = edges[edges.len() - 1] - edges[edges.len() - 2];
-    let mut end = edges[edges.len() - 1];
-    for _ in 0..MOST_EXTENSIONS {
-        if nodes
-            .last()
-            .is_none_or(|(s, _)| s.log_mass < largest(&nodes) - NEGLIGIBLE)
-        {
-            break;
+        if watch.stop_asked() {
+            return Err(ClimbFailed::Stopped);
         }
-        width *= 2.0;
-        known = nodes[nodes.len() - 1].0.clone();
-        add_panel(model, end, end + width, &mut known, &mut nodes)?;
-        end += width;
-    }
-    let mut start = edges[0];
-    let mut width = edges[1] - edges[0];
-    let mut left: Vec<(Section, f64)> = Vec::new();
-    while start > 0.0 {
-        let outermost = left
-            .iter()
-            .chain(&nodes)
-            .min_by(|a, b| a.0.scatter.total_cmp(&b.0.scatter));
-        match outermost {
-            Some((section, _)) if section.log_mass >= largest(&nodes) - NEGLIGIBLE => known = section.clone(),
-            _ => break,
+        for (scatter, weight) in legendre(pair[0], pair[1]) {
+            let nearest = nodes.last().map_or(&profile.grid[0], |(section, _)| section);
+            let nearest = closest(profile, nearest, scatter);
+            nodes.push((section_near(model, nearest, scatter)?, weight));
         }
-        width *= 2.0;
-        let next = (start - width).max(0.0);
-        add_panel(model, next, start, &mut known, &mut left)?;
-        start = next;
     }
-    nodes.extend(left);
     Ok(nodes)
 }
 
-fn add_panel(
-    model: &Model,
-    from: f64,
-    to: f64,
-    known: &mut Section,
-    nodes: &mut Vec<(Section, f64)>,
-) -> Result<(), ClimbFailed> {
-    for (scatter, weight) in legendre(from, to) {
-        let section = section_near(model, known, scatter)?;
-        *known = section.clone();
-        nodes.push((section, weight));
-    }
-    Ok(())
+/// The known section closest to a scatter: the last one, or one of the profile.
+fn closest<'a>(profile: &'a Profile, last: &'a Section, scatter: f64) -> &'a Section {
+    let far = |section: &Section| (section.scatter - scatter).abs();
+    let known = profile.grid.iter().chain(&profile.peaks);
+    known.fold(
+        last,
+        |best, section| if far(section) < far(best) { section } else { best },
+    )
 }
 
 /// Mean and covariance of the mixture of Gaussians over the nodes.

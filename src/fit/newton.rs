@@ -18,10 +18,6 @@ const MOST_STEPS: u64 = 200;
 /// deviations), at which one last full step is taken: convergence is quadratic, so that step ends
 /// at the limit of rounding.
 const LAST_STEP: f64 = 1e-12;
-/// The squared length at which whole steps are taken unseen. So near the mode they are safe, and the
-/// rise that they bring may be below what the rounding of the value shows: judged by the value, one
-/// simulated study halved its steps 200 times over and never arrived.
-const NEAR: f64 = 1e-6;
 
 /// Where the search ended.
 #[derive(Debug, Clone)]
@@ -46,8 +42,10 @@ pub enum ClimbFailed {
         /// Place of the coefficient, 0 the baseline.
         coefficient: usize,
     },
-    /// The limit of steps was reached.
+    /// The limit of steps was reached, or no step rises.
     StepLimit,
+    /// The watcher asked to stop.
+    Stopped,
 }
 
 /// Climbs to the mode of the coefficients with the scatter held at `scatter` (absent under the
@@ -160,11 +158,15 @@ impl<'a> Solver<Slice<'a>, Steps> for Newton {
         let (place, there) = loop {
             let trial: Vec<f64> = place.iter().zip(&step).map(|(x, s)| x + share * s).collect();
             match problem.apply(&trial)? {
-                Some(there) if rise <= NEAR || there.value >= here.value + 1e-4 * share * rise => break (trial, there),
+                // Near the mode the rise is below what rounding lets the value show: judged by the
+                // bare value, one simulated study halved its steps 200 times over and never arrived.
+                Some(there) if there.value + here.rounding >= here.value + 1e-4 * share * rise => {
+                    break (trial, there);
+                }
                 _ if share < 1e-9 => {
-                    // No visible rise along a rising direction: rounding has the last word.
-                    self.finished = true;
-                    break (place, here);
+                    // No rise along a rising direction: the derivatives are no longer those of the value.
+                    self.failure = Some(ClimbFailed::StepLimit);
+                    return Ok((state, None));
                 }
                 _ => share *= 0.5,
             }

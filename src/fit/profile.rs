@@ -2,19 +2,21 @@
 //!
 //! The likelihood knows only c^2 while the prior of c falls from 0 on, so c = 0 is always a local
 //! maximum of the posterior and a second one may lie inside: one climb in all parameters would end
-//! at either by the luck of its start. So the scatter is followed on a fixed grid from 0 up, every
-//! local maximum is refined, and the mass at each scatter (its height times the volume of the
+//! at either by the luck of its start. So the scatter is followed on a grid from 0 up, every local
+//! maximum is refined, and the mass at each scatter (its height times the volume of the
 //! coefficients' Gaussian there) is what the moments are later taken of.
+//!
+//! The grid doubles from a quarter of the finest scatter that the counts could tell from 0. A grid
+//! that began at 0.01 missed the whole posterior of counts in the ten thousands, which tell a
+//! scatter of 0.001 from 0.
 
 use super::newton::{ClimbFailed, climb};
+use super::watch::Watch;
 use crate::model::Model;
 
-/// The grid of scatters: dense where scatters usually are, and far beyond any that was seen.
-const GRID: [f64; 24] = [
-    0.0, 0.01, 0.02, 0.035, 0.05, 0.075, 0.1, 0.14, 0.2, 0.28, 0.4, 0.56, 0.8, 1.1, 1.6, 2.2, 3.2, 4.5, 6.4, 9.0, 13.0,
-    18.0, 25.0, 36.0,
-];
-/// Where the density still rises at the end of the grid, the end is doubled up to here.
+/// The grid goes at least up to here, and on while the density still rises or has mass.
+const FAR: f64 = 32.0;
+/// It ends here at the latest.
 const FURTHEST: f64 = 1e7;
 /// Steps of a refinement; each at least halves the bracket, so that 200 reach the last bit.
 const MOST_REFINEMENTS: usize = 200;
@@ -42,13 +44,13 @@ pub struct Section {
     pub steps: u64,
 }
 
-/// A local maximum of the profile.
+/// The profile on its grid.
 #[derive(Debug, Clone)]
-pub struct Peak {
-    /// The posterior there.
-    pub section: Section,
-    /// Its width: about one standard deviation of the scatter around it.
-    pub width: f64,
+pub struct Profile {
+    /// Sections from a scatter of 0 up.
+    pub grid: Vec<Section>,
+    /// The local maxima of the height, the highest first.
+    pub peaks: Vec<Section>,
 }
 
 /// The section at one scatter, its coefficients searched from `start`.
@@ -87,43 +89,44 @@ pub fn section_near(model: &Model, known: &Section, scatter: f64) -> Result<Sect
     section(model, scatter, &start).or_else(|_| section(model, scatter, &known.coefficients))
 }
 
-/// All local maxima of the profile, the highest first.
-pub fn peaks(model: &Model) -> Result<Vec<Peak>, ClimbFailed> {
-    let mut sections = vec![section(model, 0.0, &model.start())?];
-    for scatter in &GRID[1..] {
-        let next = section_near(model, &sections[sections.len() - 1], *scatter)?;
-        sections.push(next);
+/// Mass further than this below the largest, on the log scale, is left out: e^-30 is below 1e-13.
+pub const NEGLIGIBLE: f64 = 30.0;
+
+/// The profile of a model's scatter.
+///
+/// # Errors
+/// [`ClimbFailed`] where the coefficients have no mode at some scatter, or the watcher asks to stop.
+pub fn profile(model: &Model, watch: &dyn Watch) -> Result<Profile, ClimbFailed> {
+    let mut grid = vec![section(model, 0.0, &model.start())?];
+    let mut scatter = 0.25 * model.finest_scatter();
+    let mut most_mass = grid[0].log_mass;
+    loop {
+        if watch.stop_asked() {
+            return Err(ClimbFailed::Stopped);
+        }
+        let next = section_near(model, &grid[grid.len() - 1], scatter)?;
+        most_mass = most_mass.max(next.log_mass);
+        let over = next.slope <= 0.0 && next.log_mass < most_mass - NEGLIGIBLE;
+        grid.push(next);
+        if (scatter >= FAR && over) || scatter >= FURTHEST {
+            break;
+        }
+        scatter *= 2.0;
     }
-    while sections[sections.len() - 1].slope > 0.0 && sections[sections.len() - 1].scatter < FURTHEST {
-        let last = &sections[sections.len() - 1];
-        let next = section_near(model, last, 2.0 * last.scatter)?;
-        sections.push(next);
-    }
-    let mut peaks = vec![peak_at_zero(model, sections[0].clone())];
-    for pair in sections.windows(2) {
+    // At 0 the slope is minus the prior's rate: always a maximum.
+    let mut peaks = vec![grid[0].clone()];
+    for pair in grid.windows(2) {
         if pair[0].slope > 0.0 && pair[1].slope <= 0.0 {
             peaks.push(refine(model, &pair[0], &pair[1])?);
         }
     }
-    peaks.sort_by(|a, b| b.section.height.total_cmp(&a.section.height));
-    Ok(peaks)
-}
-
-/// The maximum at 0. Near it the height is `slope * c + curvature/2 * c^2` with a slope of minus
-/// the prior's rate; it is as wide as the shorter of the two scales.
-fn peak_at_zero(model: &Model, section: Section) -> Peak {
-    let by_prior = 1.0 / model.scatter_prior_rate().unwrap_or(1.0);
-    let width = if section.curvature < 0.0 {
-        by_prior.min(1.0 / (-section.curvature).sqrt())
-    } else {
-        by_prior
-    };
-    Peak { section, width }
+    peaks.sort_by(|a, b| b.height.total_cmp(&a.height));
+    Ok(Profile { grid, peaks })
 }
 
 /// The maximum between two sections whose slopes point at each other: Newton's steps on the slope,
 /// halving the bracket where a step would leave it.
-fn refine(model: &Model, low: &Section, high: &Section) -> Result<Peak, ClimbFailed> {
+fn refine(model: &Model, low: &Section, high: &Section) -> Result<Section, ClimbFailed> {
     let (mut low, mut high) = (low.clone(), high.clone());
     let mut best = low.clone();
     for _ in 0..MOST_REFINEMENTS {
@@ -142,10 +145,5 @@ fn refine(model: &Model, low: &Section, high: &Section) -> Result<Peak, ClimbFai
             break;
         }
     }
-    let width = if best.curvature < 0.0 {
-        1.0 / (-best.curvature).sqrt()
-    } else {
-        0.5 * best.scatter
-    };
-    Ok(Peak { section: best, width })
+    Ok(best)
 }

@@ -97,7 +97,8 @@ impl std::error::Error for FitError {}
 /// [`FitError`] says what stood in the way.
 pub fn run(model: &Model, spec: &Spec, machine: Machine, watch: &dyn Watch) -> Result<Fit, FitError> {
     watch.told(Stage::Mode);
-    let (mode, laplace) = laplace(model).map_err(|failed| match failed {
+    let (mode, laplace) = laplace(model, watch).map_err(|failed| match failed {
+        ClimbFailed::Stopped => FitError::Stopped,
         ClimbFailed::BadStart => FitError::NoStart,
         ClimbFailed::StepLimit => FitError::StepLimit,
         ClimbFailed::NotPositiveDefinite { coefficient } => FitError::NotDetermined {

@@ -58,7 +58,7 @@ impl Goal {
     /// Assesses every parameter and judges them together.
     pub fn judge(&self, values: &[Vec<f64>], chains: usize, threads: usize) -> (Vec<Assessment>, Verdict) {
         let assessments = assess_all(values, chains, self.interval, threads);
-        let worth = assessments.iter().map(|a| self.worth(a)).fold(0.0, f64::max);
+        let worth = assessments.iter().map(|a| self.worth(a)).fold(0.0, worse);
         let verdict = if worth <= 1.0 {
             Verdict::Met
         } else {
@@ -91,7 +91,16 @@ impl Goal {
             agreement,
         ]
         .into_iter()
-        .fold(0.0, f64::max)
+        .fold(0.0, worse)
+    }
+}
+
+/// The larger of two figures; one that is no number is worse than any.
+fn worse(a: f64, b: f64) -> f64 {
+    if a.is_nan() || b.is_nan() {
+        f64::INFINITY
+    } else {
+        a.max(b)
     }
 }
 
@@ -111,7 +120,7 @@ fn assess_all(values: &[Vec<f64>], chains: usize, interval: f64, threads: usize)
             .collect();
         parts
             .into_iter()
-            .flat_map(|part| part.join().unwrap_or_default())
+            .flat_map(|part| part.join().unwrap_or_else(|panic| std::panic::resume_unwind(panic)))
             .collect()
     })
 }

@@ -31,6 +31,8 @@ pub struct Model {
     term_priors: Vec<NormalPrior>,
     scatter: Option<Scatter>,
     start: f64,
+    /// The smallest scatter that the counts could tell from 0, roughly.
+    finest_scatter: f64,
 }
 
 /// What only the negative binomial has.
@@ -45,6 +47,9 @@ struct Scatter {
 pub struct Derivatives {
     /// Log density.
     pub value: f64,
+    /// How far rounding may have moved the value: it is a difference of sums that grow with the
+    /// counts and may be a million times as large as itself.
+    pub rounding: f64,
     /// First derivatives, one for each parameter.
     pub gradient: Vec<f64>,
     /// Second derivatives, row-major, symmetric.
@@ -110,11 +115,15 @@ impl Model {
         if scatter_prior.is_some() {
             parameters.push("scatter".to_owned());
         }
+        // Under the Poisson the information about c^2 is the sum of mu^2/2 (Dean & Lawless 1989), so
+        // its standard deviation is sqrt(2 / sum of mu^2), and c is told from 0 at the root of that.
+        let squares: f64 = design.counts.iter().zip(&weighted).map(|(y, wy)| y * wy).sum();
         Model {
             parameters,
             blocks: Blocks::new(design),
             // Half an incident is added, so that a table of zeros has a finite crude rate.
             start: ln((count_sums[0] + 0.5) / exposure),
+            finest_scatter: (2.0 / squares.max(2.0)).sqrt().sqrt(),
             count_sums,
             constant,
             baseline_prior,
@@ -141,9 +150,10 @@ impl Model {
         self.scatter.as_ref().map(|_| self.parameters.len() - 1)
     }
 
-    /// Rate of the scatter's exponential prior, under the negative binomial.
-    pub fn scatter_prior_rate(&self) -> Option<f64> {
-        self.scatter.as_ref().map(|scatter| scatter.prior.rate)
+    /// The smallest scatter that the counts could tell from 0, roughly: the scale on which the
+    /// posterior of the scatter can change near 0.
+    pub fn finest_scatter(&self) -> f64 {
+        self.finest_scatter
     }
 
     /// Number of rows.
@@ -249,10 +259,12 @@ impl Model {
             .blocks
             .derivatives(point, self.scatter.as_ref().map(|_| dispersion.unwrap_or(0.0)));
         let mut value = self.constant + self.log_prior(point) + rows.value;
+        let mut summed = self.constant.abs() + rows.value.abs();
         let mut gradient = vec![0.0; d];
         let mut hessian = vec![0.0; d * d];
         for i in 0..size {
             value += self.count_sums[i] * point[i];
+            summed += (self.count_sums[i] * point[i]).abs();
             let prior = if i == 0 {
                 self.baseline_prior.at(point[0])
             } else {
@@ -272,6 +284,7 @@ impl Model {
             let counts = scatter.counts.derivatives(dispersion.unwrap_or(0.0));
             if dispersion.is_some() {
                 value += counts.value;
+                summed += counts.value;
             }
             // a = c^2: d/dc = 2c d/da; d2/dc2 = 2 d/da + 4c^2 d2/da2.
             let by_a = rows.by_dispersion + counts.first;
@@ -285,6 +298,7 @@ impl Model {
         }
         value.is_finite().then_some(Derivatives {
             value,
+            rounding: 8.0 * f64::EPSILON * summed,
             gradient,
             hessian,
         })

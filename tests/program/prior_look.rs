@@ -112,3 +112,24 @@ fn the_same_seed_gives_the_same_look() {
     other.study.seed += 1;
     assert_ne!(look(&crate::stand_in::spec()).expected_rate, look(&other).expected_rate);
 }
+
+#[test]
+fn a_row_that_stands_for_others_is_looked_at_as_often() {
+    let design = ratewright::design::build(&crate::stand_in::spec(), &crate::stand_in::rows()).unwrap();
+    let mut condensed = design.clone();
+    condensed.stands_for = (0..design.counts.len()).map(|row| [1.0, 4.0, 2.0][row % 3]).collect();
+    let mut written_out = condensed.clone();
+    let rows = |values: &[f64]| -> Vec<f64> {
+        let repeat = |row: usize| vec![values[row]; condensed.stands_for[row] as usize];
+        (0..values.len()).flat_map(repeat).collect()
+    };
+    written_out.columns = condensed.columns.iter().map(|column| rows(column)).collect();
+    written_out.exposure = rows(&condensed.exposure);
+    written_out.counts = rows(&condensed.counts);
+    written_out.stands_for = vec![1.0; written_out.counts.len()];
+    let spec = crate::stand_in::spec();
+    assert_eq!(
+        ratewright::check::prior(&spec, &condensed),
+        ratewright::check::prior(&spec, &written_out)
+    );
+}

@@ -82,6 +82,7 @@ pub fn findings() -> Findings {
             outside: 3,
             outside_by_chance: 0.23,
             draws_used: 4000,
+            worst_error_of_tail_probability: 0.006,
         },
         rate_ratios,
         coefficients,

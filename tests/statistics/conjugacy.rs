@@ -148,6 +148,7 @@ fn the_unit_check_has_the_closed_forms_tail_probabilities() {
         &case.fit.draws,
         0.95,
         case.spec.study.seed,
+        2,
     );
     let text = std::fs::read_to_string(file("exact_clinic_gamma.units.csv")).unwrap();
     let header: Vec<&str> = text.lines().next().unwrap().split(',').collect();

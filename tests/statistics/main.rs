@@ -17,5 +17,6 @@ mod random;
 mod reference_fits;
 mod reference_specs;
 mod sameness;
+mod scatter;
 mod tables;
 mod units;

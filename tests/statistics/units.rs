@@ -89,7 +89,7 @@ fn conjugate_clinics_meet_their_closed_form() {
         .enumerate()
         .map(|(k, row)| (k, row[y], row[exposure], 1.0, 0.0))
         .collect();
-    let found = units(&design(&study), &Family::Poisson, &posterior, 0.9, 7);
+    let found = units(&design(&study), &Family::Poisson, &posterior, 0.9, 7, 2);
 
     let mut outside = 0.0;
     for (unit, row) in found.units.iter().zip(&rows) {
@@ -118,7 +118,7 @@ fn conjugate_clinics_meet_their_closed_form() {
         "{} for {outside}",
         found.outside_by_chance
     );
-    assert_eq!(found.draws_used, 2000);
+    assert_eq!(found.draws_used, 8000);
     assert_eq!(
         found.outside,
         found
@@ -179,7 +179,7 @@ fn clinics_meet_a_general_purpose_sampler() {
 
     let repeats = 25;
     let runs: Vec<UnitsCheck> = (0..repeats)
-        .map(|seed| units(&design, &negative_binomial(), &posterior, 0.95, seed))
+        .map(|seed| units(&design, &negative_binomial(), &posterior, 0.95, seed, 2))
         .collect();
     for (k, row) in expected.iter().enumerate() {
         assert_eq!(row[at("y")], data[k].0);
@@ -242,7 +242,7 @@ fn single_rows_meet_the_negative_binomial() {
     let design = design(&study);
     let repeats = 50;
     let runs: Vec<UnitsCheck> = (0..repeats)
-        .map(|seed| units(&design, &negative_binomial(), &posterior, 0.95, seed))
+        .map(|seed| units(&design, &negative_binomial(), &posterior, 0.95, seed, 2))
         .collect();
     for (k, (_, y, exposure, _, x)) in study.iter().enumerate() {
         let mut exact = 0.0;
@@ -274,7 +274,7 @@ fn sums_of_rows_meet_simulation() {
         (1, 1.0, 0.5, 2.0, 0.0),
         (0, 0.0, 1.0, 1.0, 1.0),
     ];
-    let found = units(&design(&study), &negative_binomial(), &posterior, 0.9, 1);
+    let found = units(&design(&study), &negative_binomial(), &posterior, 0.9, 1, 2);
     let mut stream = Stream::new(8, Purpose::Simulation, 5);
     let simulations = 200_000;
     for (k, unit) in found.units.iter().enumerate() {
@@ -334,6 +334,7 @@ fn wild_draws_and_empty_corners_give_finite_figures() {
             &family,
             &draws(baseline.clone(), vec![0.1; 500], Some(scatter.clone())),
             0.95,
+            2,
             2,
         );
         for unit in &found.units {
