@@ -118,7 +118,7 @@ fn conjugate_clinics_meet_their_closed_form() {
         "{} for {outside}",
         found.outside_by_chance
     );
-    assert_eq!(found.draws_used, 8000);
+    assert_eq!(found.draws_used, 2000);
     assert_eq!(
         found.outside,
         found
