@@ -222,7 +222,7 @@ impl Sheet<'_> {
             None => {
                 writeln!(
                     text,
-                    "\n# No column is named like an exposure: every row counts as 1. If one measures the"
+                    "\n# No column looks like an exposure: every row counts as 1. If one measures the"
                 )?;
                 writeln!(
                     text,
