@@ -24,6 +24,8 @@ pub enum SpecFault {
     },
     /// The file is larger than [`MOST_BYTES`](super::MOST_BYTES).
     TooLarge,
+    /// The file is no spec and looks like a table.
+    IsTable,
     /// The file holds nothing but white space and comments.
     Empty,
     /// The file is not UTF-8.
@@ -344,6 +346,7 @@ impl SpecFault {
         match self {
             SpecFault::Unreadable { .. }
             | SpecFault::TooLarge
+            | SpecFault::IsTable
             | SpecFault::Empty
             | SpecFault::NotUtf8 { .. }
             | SpecFault::MissingTable { .. } => None,

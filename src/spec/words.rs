@@ -36,6 +36,12 @@ impl SpecFault {
                 String::new(),
                 "Name the spec, not the table: the table is named within the spec, by `file` in [data].",
             ),
+            SpecFault::IsTable => told(
+                "a table was named in place of the spec".into(),
+                String::new(),
+                "Name the spec, a TOML file that names the table by `file` in [data]; `ratewright draft TABLE --into \
+                 SPEC` writes one to begin with.",
+            ),
             SpecFault::Empty => told(
                 "the spec is empty".into(),
                 String::new(),
