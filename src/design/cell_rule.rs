@@ -1,7 +1,17 @@
 //! The rules that single cells can break, each with its code, its message and its remedy.
 
-use super::fault::BadCell;
 use super::types::LARGEST_COUNT;
+
+/// A cell that breaks a rule.
+#[derive(Debug, Clone, PartialEq)]
+pub struct BadCell {
+    /// Line of the file.
+    pub line: u64,
+    /// Column name.
+    pub column: String,
+    /// What the cell holds.
+    pub value: String,
+}
 
 /// A rule that a cell breaks.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]

@@ -10,7 +10,8 @@ mod spoilt;
 mod write;
 
 use super::build::build;
-use super::fault::{BadCell, DesignError, DesignFault};
+use super::cell_rule::BadCell;
+use super::fault::{DesignError, DesignFault};
 use super::types::Design;
 use crate::diagnostic::{Diagnostic, Place};
 use crate::spec::{self, Spec, SpecError};
