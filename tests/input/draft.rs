@@ -96,6 +96,26 @@ fn names_that_need_quoting_are_quoted() {
 }
 
 #[test]
+fn signs_that_turn_the_text_are_escaped_in_comments_too() {
+    let mut text = "site\u{202E},falls,visits,wet\u{2067}floor,note\u{2028}s\u{1B}[2J\n".to_owned();
+    for row in 0..30 {
+        let wet = ["y\u{200F}es", "no"][row % 2];
+        text.push_str(&format!("s{row},{},{},{wet},remark {row}\n", row % 3, 100 + row));
+    }
+    let drafted = draft(&table(&text)).unwrap();
+    let told = |sign: char| !matches!(sign, '\n' | '…') && (sign.is_control() || !sign.is_ascii());
+    assert_eq!(drafted.text.chars().find(|&sign| told(sign)), None, "{}", drafted.text);
+    assert!(
+        drafted.text.contains("# - \"note\\u2028s\\u001B[2J\": a text with 30"),
+        "{}",
+        drafted.text
+    );
+    // What was escaped reads as it was.
+    assert_eq!(drafted.spec.data.unit.value, "site\u{202E}");
+    assert_eq!(drafted.spec.covariates[0].column.value, "wet\u{2067}floor");
+}
+
+#[test]
 fn incidents_without_exposure_are_told_aloud() {
     let drafted = draft(&table("site,falls,visits\na,1,0\nb,0,0\nc,3,50\nd,1,20\n")).unwrap();
     assert!(
