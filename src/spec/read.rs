@@ -6,7 +6,7 @@ use std::path::Path;
 
 use toml::de::{DeTable, DeValue};
 
-use super::cross::{check_answer, check_counts_column, check_terms};
+use super::cross::{check_answer, check_counts_column, check_period, check_terms};
 use super::fault::{Encoding, KeyHint, SpecError, SpecFault};
 use super::fields::{Faults, Fields};
 use super::keys::{TableInfo, Times};
@@ -175,6 +175,7 @@ fn read_root(source: &Source, root: &DeTable<'_>, faults: &mut Faults) -> Option
     check_terms(&covariates, &joints, faults);
     let exposure_read = exposure.as_ref().and_then(Option::as_ref);
     check_counts_column(incidents.as_ref(), exposure_read, data.as_ref(), &covariates, faults);
+    check_period(data.as_ref(), faults);
     if let Some(study) = &study {
         check_answer(&study.answer, &covariates, &joints, faults);
     }

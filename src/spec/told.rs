@@ -117,6 +117,7 @@ impl SpecFault {
             SpecFault::Blank { .. } => "blank-value",
             SpecFault::DuplicateTerm { .. } => "duplicate-term",
             SpecFault::CountsReused { .. } => "counts-reused",
+            SpecFault::PeriodIsUnit { .. } => "period-is-unit",
             SpecFault::BadJoint { .. } => "bad-joint",
             SpecFault::BadMerge { .. } => "bad-merge",
             SpecFault::TwoBaselines { .. } => "two-baselines",

@@ -144,6 +144,11 @@ impl SpecFault {
                 label: "this column holds the counts".into(),
                 help: "Name another column, or remove the entry: counts cannot explain themselves.".into(),
             },
+            SpecFault::PeriodIsUnit { column, .. } => told(
+                format!("`period` in [data] names `{column}`, the column of the units"),
+                "this column names the units".into(),
+                "Name the column that orders the rows of a unit, or leave `period` out.",
+            ),
             SpecFault::BadJoint { why, .. } => bad_joint(why),
             SpecFault::BadMerge { column, why, .. } => bad_merge(column, why),
             SpecFault::TwoBaselines { .. } => told(

@@ -170,7 +170,7 @@ fn exposures_that_are_none() {
 }
 
 #[test]
-fn rows_that_stand_for_no_number_of_rows() {
+fn rows_that_stand_for_no_number_of_rows_or_too_many() {
     let mut spec = study();
     spec.data.stands_for = Some(at("alike"));
     insta::assert_snapshot!(unfit("stands_for.csv", &spec));
