@@ -191,7 +191,7 @@ fn a_name_for_opportunity_over_something_else_is_no_exposure() {
         ("time", by_turns(["08:30", "12:15", "17:45"])),
         ("time", by_turns(["-2", "0", "3"])),
     ] {
-        let drafted = draft(&forty(header, &clean(20), &clean)).unwrap();
+        let drafted = draft(&forty(header, &clean(20), clean)).unwrap();
         assert_eq!(drafted.spec.exposure, None, "{header}");
         assert!(
             drafted.text.contains("# No column looks like an exposure"),
