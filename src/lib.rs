@@ -29,5 +29,6 @@ pub mod fit;
 pub mod model;
 pub mod numeric;
 pub mod output;
+mod regular_file;
 pub mod spec;
 pub mod table;

@@ -10,7 +10,7 @@ use crate::output::findings::Findings;
 use crate::output::gather;
 use crate::output::manifest::{FileFact, sha256};
 use crate::spec::{self, Spec};
-use crate::table::{self, Table, TableError, TableFault};
+use crate::table::{self, Table};
 use std::num::NonZeroUsize;
 use std::path::Path;
 
@@ -62,12 +62,7 @@ impl Study {
 /// The file cannot be read, or holds no table.
 pub fn read_table(path: &Path) -> Result<(Table, FileFact), Error> {
     let shown = path.display().to_string();
-    let bytes = std::fs::read(path).map_err(|error| TableError {
-        file: shown.clone(),
-        faults: vec![TableFault::Unreadable {
-            reason: error.to_string(),
-        }],
-    })?;
+    let bytes = table::read_bytes(&shown, path)?;
     let table = table::parse_csv(&shown, &bytes)?;
     let fact = FileFact {
         file: file_name(path),

@@ -1,7 +1,17 @@
 //! The rules that single cells can break, each with its code, its message and its remedy.
 
-use super::fault::BadCell;
 use super::types::LARGEST_COUNT;
+
+/// A cell that breaks a rule.
+#[derive(Debug, Clone, PartialEq)]
+pub struct BadCell {
+    /// Line of the file.
+    pub line: u64,
+    /// Column name.
+    pub column: String,
+    /// What the cell holds.
+    pub value: String,
+}
 
 /// A rule that a cell breaks.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
@@ -32,8 +42,10 @@ pub enum CellRule {
     ExposureZero,
     /// With one incident each at most, a count is no larger than its exposure.
     MoreThanChances,
-    /// What a row stands for is a whole number from 1 to [`LARGEST_COUNT`].
+    /// What a row stands for is a whole number from 1.
     StandsFor,
+    /// What a row stands for is at most [`LARGEST_COUNT`].
+    StandsForLargest,
     /// A number covariate is a number.
     CovariateNumber,
     /// A number covariate is finite.
@@ -68,6 +80,7 @@ impl CellRule {
             CellRule::ExposureZero => "exposure-zero",
             CellRule::MoreThanChances => "more-incidents-than-exposure",
             CellRule::StandsFor => "stands-for-not-whole",
+            CellRule::StandsForLargest => "stands-for-too-large",
             CellRule::CovariateNumber => "covariate-not-a-number",
             CellRule::CovariateFinite => "covariate-not-finite",
             CellRule::CovariatePositive => "covariate-not-positive",
@@ -113,6 +126,12 @@ impl CellRule {
                 "row stands for no whole number of rows from 1 up",
                 "rows stand for no whole number of rows from 1 up",
             ),
+            CellRule::StandsForLargest => {
+                return format!(
+                    "{} for more than {LARGEST_COUNT} rows, the most that is accepted",
+                    counted(cells, "row stands", "rows stand")
+                );
+            }
             CellRule::CovariateNumber => (
                 "cell of a number covariate is no number",
                 "cells of number covariates are no numbers",
@@ -182,6 +201,7 @@ impl CellRule {
                 "correct the cells, or take `one_incident_each_at_most` out if one unit of exposure can bring several incidents"
             }
             CellRule::StandsFor => "write how many identical rows the row stands for: 1, 2, 3 and so on",
+            CellRule::StandsForLargest => "correct the cells: no table condenses so many rows into one",
             CellRule::CovariateNumber => {
                 "write each as a plain number with a decimal point, without separators or units, or code the column \
                  `as = \"category\"`; a text that means \"no value\" belongs in `[data] gap_marks`"

@@ -13,11 +13,14 @@ use crate::numeric::ln;
 use crate::table::Table;
 use std::f64::consts::LN_2;
 
+/// How many members of a merged level are named before the rest is only counted.
+const MEMBERS_TOLD: usize = 10;
+
 /// What a coded column stands for, in words.
 struct Part {
     /// `decking=grooved`, `slope_deg`
     name: String,
-    /// "grooved against plain", "per 2 more in slope_deg", "per doubling of queue"
+    /// "grooved against plain", "other (mesh, paint) against plain", "per 2 more in slope_deg", "per doubling of queue"
     change: String,
     /// As the first part of a joint term: "of grooved against plain", "per 2 more in slope_deg"
     ratio: String,
@@ -192,12 +195,20 @@ fn coded(covariate: &CovariateCoding, rows: &Rows, values: &Values, faults: &mut
 fn parts(covariate: &CovariateCoding) -> Vec<Part> {
     let column = &covariate.column;
     match &covariate.coding {
-        ColumnCoding::Category { reference, levels, .. } => {
-            let part = |level: &String| Part {
-                name: format!("{column}={level}"),
-                change: format!("{level} against {reference}"),
-                ratio: format!("of {level} against {reference}"),
-                condition: format!("where {column} is {level} and not {reference}"),
+        ColumnCoding::Category {
+            reference,
+            levels,
+            merge,
+        } => {
+            let reference = with_members(reference, merge);
+            let part = |level: &String| {
+                let told = with_members(level, merge);
+                Part {
+                    name: format!("{column}={level}"),
+                    change: format!("{told} against {reference}"),
+                    ratio: format!("of {told} against {reference}"),
+                    condition: format!("where {column} is {told} and not {reference}"),
+                }
             };
             levels.iter().map(part).collect()
         }
@@ -213,5 +224,30 @@ fn parts(covariate: &CovariateCoding) -> Vec<Part> {
             ratio: format!("per doubling of {column}"),
             condition: format!("for each doubling of {column}"),
         }],
+    }
+}
+
+/// A level with those that were taken into it: `other (mesh, paint)` where the name is new,
+/// `grooved (with mesh and paint)` where it is itself a level of the file.
+fn with_members(level: &str, merge: &[(String, String)]) -> String {
+    let taken = || {
+        merge
+            .iter()
+            .filter(|(_, into)| into == level)
+            .map(|(from, _)| from.as_str())
+    };
+    let others: Vec<&str> = taken().filter(|&from| from != level).collect();
+    let rest = others.len().saturating_sub(MEMBERS_TOLD);
+    let told = &others[..others.len() - rest];
+    let itself = taken().any(|from| from == level);
+    match (told.split_last(), rest) {
+        (None, _) => level.to_owned(),
+        (Some((last, [])), 0) if itself => format!("{level} (with {last})"),
+        (Some((last, first)), 0) if itself => format!("{level} (with {} and {last})", first.join(", ")),
+        (Some(_), 0) => format!("{level} ({})", told.join(", ")),
+        (Some(_), rest) => {
+            let with = if itself { "with " } else { "" };
+            format!("{level} ({with}{} and {rest} more)", told.join(", "))
+        }
     }
 }

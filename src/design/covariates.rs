@@ -82,15 +82,7 @@ pub(super) fn coding_of(covariate: &Covariate, values: &Values, faults: &mut Vec
     let coding = match (&covariate.kind, values) {
         (CovariateKind::Category { reference, merge }, Values::Levels { of_row, names }) => {
             unknown_merge_levels(covariate, merge, names, faults);
-            let merge: Vec<(String, String)> = merge
-                .iter()
-                .flat_map(|merge| {
-                    merge
-                        .levels
-                        .iter()
-                        .map(|level| (level.value.clone(), merge.into.value.clone()))
-                })
-                .collect();
+            let merge = taken_into(merge, names);
             let mut levels: Vec<String> = Vec::new();
             for name in names {
                 let merged = merged(&merge, name);
@@ -141,6 +133,18 @@ pub(super) fn coding_of(covariate: &Covariate, values: &Values, faults: &mut Vec
         _ => return None,
     };
     (faults.len() == before).then_some(coding)
+}
+
+/// The levels of the file with the level that each is taken into. A merged name that is itself a
+/// level of the file is taken into itself: whoever reads the coding must see it among the members.
+fn taken_into(merge: &[Merge], names: &[String]) -> Vec<(String, String)> {
+    let mut taken = Vec::new();
+    for Merge { into, levels } in merge {
+        let itself = names.contains(&into.value) && !levels.iter().any(|level| level.value == into.value);
+        let levels = itself.then_some(into).into_iter().chain(levels);
+        taken.extend(levels.map(|level| (level.value.clone(), into.value.clone())));
+    }
+    taken
 }
 
 /// The level that a level of the file is taken into.

@@ -1,6 +1,6 @@
 //! What can be wrong once the spec and the table meet.
 
-use super::cell_rule::CellRule;
+use super::cell_rule::{BadCell, CellRule};
 use std::ops::Range;
 
 /// A study whose spec and table do not fit together, with everything that is wrong.
@@ -124,17 +124,6 @@ pub struct MissingColumn {
     pub span: Option<Range<usize>>,
     /// The most similar name that the table has.
     pub nearest: Option<String>,
-}
-
-/// A cell that breaks a rule.
-#[derive(Debug, Clone, PartialEq)]
-pub struct BadCell {
-    /// Line of the file.
-    pub line: u64,
-    /// Column name.
-    pub column: String,
-    /// What the cell holds.
-    pub value: String,
 }
 
 /// What a level is named for.

@@ -15,9 +15,9 @@ mod told;
 mod types;
 
 pub use build::{build, used_columns, used_rows};
-pub use cell_rule::{CellRule, MOST_STEPS};
+pub use cell_rule::{BadCell, CellRule, MOST_STEPS};
 pub use collinear::OPEN_SHARE;
 pub use draft::{Draft, DraftError, DraftFault, draft};
-pub use fault::{BadCell, CollinearTerm, DesignError, DesignFault, LevelRole, MissingColumn, UnknownLevel};
+pub use fault::{CollinearTerm, DesignError, DesignFault, LevelRole, MissingColumn, UnknownLevel};
 pub use remark::{FEW_LEVEL_ROWS, HIGH_CONDITION, HIGH_LEVERAGE, Remark, WIDE_EXPOSURE, remarks};
 pub use types::{Audit, Coding, ColumnCoding, CovariateCoding, Design, LARGEST_COUNT, Term};

@@ -30,6 +30,7 @@ pub(super) fn read(spec: &Spec, rows: &Rows, faults: &mut Vec<DesignFault>) -> O
         None => vec![1.0; rows.len()],
         Some(column) => numbers(rows, &column.value, faults, |_, cell| match count(cell) {
             Ok(rows) if rows >= 1.0 => Ok(rows),
+            Err(CellRule::CountLargest) => Err(CellRule::StandsForLargest),
             _ => Err(CellRule::StandsFor),
         }),
     };

@@ -3,7 +3,7 @@
 use super::condition::Scaled;
 use super::rows::{choose, labels};
 use super::types::{ColumnCoding, Design};
-use crate::spec::{Baseline, Family, Spec, Standing};
+use crate::spec::{Baseline, CovariateKind, Family, Merge, Spec, Standing};
 use crate::table::Table;
 use std::collections::HashMap;
 use std::fmt;
@@ -31,6 +31,15 @@ pub enum Remark {
         level: String,
         /// Its rows.
         rows: usize,
+    },
+    /// A merged level that bears the name of a level of the file, which the merge does not list.
+    MergedIntoLevel {
+        /// The column.
+        column: String,
+        /// That level.
+        level: String,
+        /// The levels that are taken into it.
+        taken: Vec<String>,
     },
     /// Terms that come close to determining one another.
     NearCollinear {
@@ -78,6 +87,7 @@ pub enum Remark {
 pub fn remarks(spec: &Spec, table: &Table, design: &Design) -> Vec<Remark> {
     let mut remarks = Vec::new();
     sparse_levels(design, &mut remarks);
+    merged_into_levels(spec, design, &mut remarks);
     let scaled = Scaled::new(&design.columns, design.counts.len());
     if let Some(scaled) = &scaled {
         near_collinear(design, scaled, &mut remarks);
@@ -116,6 +126,27 @@ fn sparse_levels(design: &Design, remarks: &mut Vec<Remark>) {
                     rows,
                 }),
         );
+    }
+}
+
+fn merged_into_levels(spec: &Spec, design: &Design, remarks: &mut Vec<Remark>) {
+    for (covariate, coded) in spec.covariates.iter().zip(&design.coding.covariates) {
+        let (CovariateKind::Category { merge: asked, .. }, ColumnCoding::Category { merge, .. }) =
+            (&covariate.kind, &coded.coding)
+        else {
+            continue;
+        };
+        for Merge { into, levels } in asked {
+            let listed = levels.iter().any(|level| level.value == into.value);
+            let in_file = merge.iter().any(|(from, _)| *from == into.value);
+            if in_file && !listed {
+                remarks.push(Remark::MergedIntoLevel {
+                    column: coded.column.clone(),
+                    level: into.value.clone(),
+                    taken: levels.iter().map(|level| level.value.clone()).collect(),
+                });
+            }
+        }
     }
 }
 
@@ -241,6 +272,7 @@ impl Remark {
     pub fn code(&self) -> &'static str {
         match self {
             Remark::SparseLevel { .. } => "sparse-level",
+            Remark::MergedIntoLevel { .. } => "merged-into-level",
             Remark::NearCollinear { .. } => "near-collinear",
             Remark::FarCentre { .. } => "far-centre",
             Remark::Leverage { .. } => "leverage",
@@ -263,6 +295,13 @@ impl fmt::Display for Remark {
                 } else {
                     format!("Only {rows} rows have")
                 }
+            ),
+            Remark::MergedIntoLevel { column, level, taken } => write!(
+                f,
+                "`merge` takes {} of `{column}` into \"{level}\", which is itself a level of the file: they can no \
+                 longer be told apart. If that is meant, list \"{level}\" among its levels too; if not, choose a name \
+                 that no level has.",
+                first_ones(taken)
             ),
             Remark::NearCollinear { condition, terms } => write!(
                 f,

@@ -1,7 +1,7 @@
 //! Which columns a spec uses, and which rows of the table.
 
-use super::cell_rule::CellRule;
-use super::fault::{BadCell, DesignFault, LevelRole, MissingColumn, UnknownLevel};
+use super::cell_rule::{BadCell, CellRule};
+use super::fault::{DesignFault, LevelRole, MissingColumn, UnknownLevel};
 use crate::diagnostic::nearest;
 use crate::spec::{At, CovariateKind, Keep, KeepOnly, RowsWithGaps, Spec};
 use crate::table::{Column, Table};

@@ -1,6 +1,7 @@
 //! The faults of a design in words.
 
-use super::fault::{BadCell, CollinearTerm, DesignError, DesignFault, LevelRole, MissingColumn, UnknownLevel};
+use super::cell_rule::BadCell;
+use super::fault::{CollinearTerm, DesignError, DesignFault, LevelRole, MissingColumn, UnknownLevel};
 use crate::diagnostic::{Diagnostic, PLACES_SHOWN, Place};
 use std::fmt;
 use std::ops::Range;

@@ -85,7 +85,8 @@ pub enum ColumnCoding {
         reference: String,
         /// The other levels, one coded column each, in order of first appearance.
         levels: Vec<String>,
-        /// Level in the file -> level that it is taken into.
+        /// Level in the file -> level that it is taken into; a merged name that is itself a level
+        /// of the file is taken into itself.
         merge: Vec<(String, String)>,
     },
     /// `(x - centre) / step`.

@@ -1,7 +1,7 @@
 //! The regularised incomplete beta function and the quantile of a beta distribution.
 
+use super::elementary::exp_to_zero;
 use super::gamma::{deviance_part, stirling_remainder};
-use super::poisson::exp_to_zero;
 
 /// More steps than any argument within the stated ranges takes.
 const MOST_STEPS: usize = 2_000_000;

@@ -50,6 +50,15 @@ pub fn exp(x: f64) -> f64 {
     f64::from_bits(p.to_bits().wrapping_add(t.to_bits() << 52))
 }
 
+/// exp(x), falling to 0 below -745 where [`exp`] stays at its floor.
+pub(super) fn exp_to_zero(x: f64) -> f64 {
+    if x > -700.0 {
+        return exp(x);
+    }
+    let half = exp(0.5 * x);
+    half * half
+}
+
 /// log of `m * 2^k` for a significand m = 1 + f in [sqrt(1/2), sqrt(2)), from f and k.
 ///
 /// With s = f / (2 + f): log(1 + f) = f - f^2/2 + s (f^2/2 + R(s^2)), R a minimax polynomial

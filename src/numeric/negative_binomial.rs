@@ -1,8 +1,8 @@
 //! Negative-binomial probabilities of a count with mean mu and variance mu + c^2 mu^2; c is the scatter.
 
 use super::beta::beta_fraction;
+use super::elementary::exp_to_zero;
 use super::gamma::{deviance_part, stirling_remainder};
-use super::poisson::exp_to_zero;
 use super::{ln, ln_1p, poisson_cdf, poisson_ln_pmf, poisson_sf};
 
 /// c^2 below this is Poisson to every digit, and 1 / c^2 may be no number.

@@ -4,9 +4,10 @@
 //! P(Y <= y) = Q(y + 1, mean). So far from the mean the tail is a short sum of positive terms, and
 //! near a large mean the uniform expansion takes over; neither needs a continued fraction.
 
+use super::elementary::exp_to_zero;
 use super::gamma::{deviance_part, ln_factorial, stirling_remainder};
+use super::ln;
 use super::uniform_expansion::{Tails, poisson_tails as tails_near_large_mean};
-use super::{exp, ln};
 
 /// ln P(Y = y) for a whole `y` from 0 and a `mean` from 0 (at mean 0: 0 for y = 0, else minus infinity).
 ///
@@ -38,15 +39,6 @@ pub fn poisson_cdf(y: f64, mean: f64) -> f64 {
 /// P(Y > y) for a whole `y` (1 for a negative one).
 pub fn poisson_sf(y: f64, mean: f64) -> f64 {
     tails(y, mean).above
-}
-
-/// exp(x), falling to 0 below -745 where [`exp`] stays at its floor.
-pub(super) fn exp_to_zero(x: f64) -> f64 {
-    if x > -700.0 {
-        return exp(x);
-    }
-    let half = exp(0.5 * x);
-    half * half
 }
 
 /// Both tails: the smaller one is computed, the other is what it leaves of 1.

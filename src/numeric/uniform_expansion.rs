@@ -1,8 +1,8 @@
 //! The uniform expansion of the incomplete gamma functions: the Poisson distribution function near a large mean.
 
+use super::elementary::exp_to_zero;
 use super::gamma::deviance_part;
 use super::normal::scaled_erfc;
-use super::poisson::exp_to_zero;
 
 /// Both tails of a Poisson distribution at `y`.
 #[derive(Debug, Clone, Copy, PartialEq)]

@@ -109,6 +109,19 @@ pub(super) fn check_counts_column(
     }
 }
 
+/// Tells a period that is the unit: it would order nothing, and each row of a unit would seem entered twice.
+pub(super) fn check_period(data: Option<&Data>, faults: &mut Faults) {
+    if let Some(data) = data
+        && let Some(period) = &data.period
+        && period.value == data.unit.value
+    {
+        faults.push(SpecFault::PeriodIsUnit {
+            column: period.value.clone(),
+            span: period.span.clone(),
+        });
+    }
+}
+
 /// Tells an answer that cannot be a term of this spec, whatever levels the data hold.
 pub(super) fn check_answer(
     answer: &At<String>,

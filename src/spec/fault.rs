@@ -24,6 +24,15 @@ pub enum SpecFault {
     },
     /// The file is larger than [`MOST_BYTES`](super::MOST_BYTES).
     TooLarge,
+    /// `period` names the column of the units.
+    PeriodIsUnit {
+        /// The column.
+        column: String,
+        /// Where `period` names it.
+        span: Range<usize>,
+    },
+    /// The file is no spec and looks like a table.
+    IsTable,
     /// The file holds nothing but white space and comments.
     Empty,
     /// The file is not UTF-8.
@@ -344,6 +353,7 @@ impl SpecFault {
         match self {
             SpecFault::Unreadable { .. }
             | SpecFault::TooLarge
+            | SpecFault::IsTable
             | SpecFault::Empty
             | SpecFault::NotUtf8 { .. }
             | SpecFault::MissingTable { .. } => None,
@@ -359,6 +369,7 @@ impl SpecFault {
             | SpecFault::BadRange { span, .. }
             | SpecFault::Blank { span, .. }
             | SpecFault::CountsReused { span, .. }
+            | SpecFault::PeriodIsUnit { span, .. }
             | SpecFault::BadJoint { span, .. }
             | SpecFault::BadMerge { span, .. }
             | SpecFault::EarlierRefused { span, .. } => Some(span.clone()),

@@ -1,13 +1,12 @@
 //! From a file or a text to a checked [`Spec`], or to all that is wrong with it.
 
-use std::fs::File;
 use std::io::Read;
 use std::ops::Range;
 use std::path::Path;
 
 use toml::de::{DeTable, DeValue};
 
-use super::cross::{check_answer, check_counts_column, check_terms};
+use super::cross::{check_answer, check_counts_column, check_period, check_terms};
 use super::fault::{Encoding, KeyHint, SpecError, SpecFault};
 use super::fields::{Faults, Fields};
 use super::keys::{TableInfo, Times};
@@ -19,10 +18,14 @@ use super::study::{At, Source, Spec};
 use super::tables::{TABLES, TABLES_NOT_YET};
 use super::values::type_in_words;
 use crate::diagnostic::nearest;
+use crate::regular_file;
 
 /// The largest spec that is read, in bytes. A table named where the spec is meant would otherwise be
 /// taken in whole, only to be refused line by line.
 pub const MOST_BYTES: u64 = 1 << 20;
+
+/// Bytes of a file that is too large that are looked at.
+const LOOKED_AT: usize = 4096;
 
 /// Reads and checks a spec file.
 ///
@@ -39,7 +42,7 @@ pub fn read(path: &Path) -> Result<Spec, SpecError> {
         faults: vec![fault],
     };
     let mut bytes = Vec::new();
-    File::open(path)
+    regular_file::open(path)
         .and_then(|file| file.take(MOST_BYTES + 1).read_to_end(&mut bytes))
         .map_err(|error| {
             refuse(SpecFault::Unreadable {
@@ -47,10 +50,18 @@ pub fn read(path: &Path) -> Result<Spec, SpecError> {
             })
         })?;
     if bytes.len() as u64 > MOST_BYTES {
-        return Err(refuse(SpecFault::TooLarge));
+        let start = String::from_utf8_lossy(&bytes[..LOOKED_AT]);
+        return Err(refuse(if looks_like_table(&file, &start) {
+            SpecFault::IsTable
+        } else {
+            SpecFault::TooLarge
+        }));
     }
     match String::from_utf8(bytes) {
         Ok(text) => parse(&file, &text),
+        Err(error) if looks_like_table(&file, &String::from_utf8_lossy(error.as_bytes())) => {
+            Err(refuse(SpecFault::IsTable))
+        }
         Err(error) => {
             let offset = error.utf8_error().valid_up_to();
             let bytes = error.as_bytes();
@@ -79,6 +90,9 @@ pub fn parse(file: &str, text: &str) -> Result<Spec, SpecError> {
         text: text.to_string(),
     };
     let (root, errors) = DeTable::parse_recoverable(text);
+    if !errors.is_empty() && looks_like_table(file, text) {
+        return Err(refusal(source, vec![SpecFault::IsTable]));
+    }
     if !errors.is_empty() {
         let faults = errors.iter().map(|error| SpecFault::Syntax {
             what: error.message().to_string(),
@@ -95,6 +109,27 @@ pub fn parse(file: &str, text: &str) -> Result<Spec, SpecError> {
         Some(spec) if faults.is_empty() => Ok(spec),
         _ => Err(refusal(source, faults)),
     }
+}
+
+/// Whether what is no TOML is a table that was named in place of the spec: by the ending of its
+/// name, or by a first line of several cells. A line that begins as a spec's does is none of a
+/// table, whatever the name.
+fn looks_like_table(file: &str, text: &str) -> bool {
+    const ENDINGS: [&str; 7] = ["csv", "tsv", "parquet", "arrow", "feather", "xlsx", "xls"];
+    let first = text
+        .trim_start_matches('\u{feff}')
+        .lines()
+        .map(str::trim)
+        .find(|line| !line.is_empty())
+        .unwrap_or_default();
+    if first.starts_with(['#', '[']) || first.contains('=') {
+        return false;
+    }
+    let ending = Path::new(file).extension().and_then(|ending| ending.to_str());
+    let named = ending.is_some_and(|ending| ENDINGS.iter().any(|known| ending.eq_ignore_ascii_case(known)));
+    let is_name = |cell: &str| !cell.trim().is_empty() && !cell.contains(['{', '}', ']']);
+    let cells = |separator: char| first.contains(separator) && first.split(separator).all(is_name);
+    named || [',', ';', '\t'].into_iter().any(cells)
 }
 
 /// Puts the faults into the order of the text.
@@ -140,6 +175,7 @@ fn read_root(source: &Source, root: &DeTable<'_>, faults: &mut Faults) -> Option
     check_terms(&covariates, &joints, faults);
     let exposure_read = exposure.as_ref().and_then(Option::as_ref);
     check_counts_column(incidents.as_ref(), exposure_read, data.as_ref(), &covariates, faults);
+    check_period(data.as_ref(), faults);
     if let Some(study) = &study {
         check_answer(&study.answer, &covariates, &joints, faults);
     }

@@ -5,6 +5,9 @@ use serde_json::{Map, Value, json};
 use super::keys::{Bounds, DefaultValue, End, KeyInfo, Kind, LeftOut, TableInfo, Times};
 use super::tables::{KEEP_ENDS, TABLES};
 
+/// The value of `as` whose centre has to have a logarithm.
+const LOG_NUMBER: &str = "log-number";
+
 /// JSON Schema (draft 2020-12) of a spec, the TOML taken as JSON of the same shape; editors that
 /// know it complete and check keys while a spec is written.
 ///
@@ -91,10 +94,16 @@ fn conditions(info: &TableInfo) -> Vec<Value> {
             .iter()
             .filter(|key| key.left_out == LeftOut::Refused)
             .map(|key| key.name);
-        let refused: Map<String, Value> = without.iter().map(|key| (key.name.to_string(), json!(false))).collect();
+        let refused = without.iter().map(|key| (key.name.to_string(), json!(false)));
+        // A centre of which the logarithm is taken is above 0.
+        let narrowed = with
+            .iter()
+            .filter(|key| matches!(key.kind, Kind::Centre) && value == LOG_NUMBER)
+            .map(|key| (key.name.to_string(), json!({ "exclusiveMinimum": 0.0 })));
+        let properties: Map<String, Value> = refused.chain(narrowed).collect();
         json!({
             "if": { "properties": { deciding: { "const": value } }, "required": [deciding] },
-            "then": { "required": needed.collect::<Vec<_>>(), "properties": refused },
+            "then": { "required": needed.collect::<Vec<_>>(), "properties": properties },
         })
     };
     choices.iter().map(|choice| one(choice.value)).collect()

@@ -101,6 +101,7 @@ impl SpecFault {
         match self {
             SpecFault::Unreadable { .. } => "spec-unreadable",
             SpecFault::TooLarge => "spec-too-large",
+            SpecFault::IsTable => "table-for-spec",
             SpecFault::Empty => "spec-empty",
             SpecFault::NotUtf8 { .. } => "spec-not-utf-8",
             SpecFault::Syntax { .. } => "not-toml",
@@ -116,6 +117,7 @@ impl SpecFault {
             SpecFault::Blank { .. } => "blank-value",
             SpecFault::DuplicateTerm { .. } => "duplicate-term",
             SpecFault::CountsReused { .. } => "counts-reused",
+            SpecFault::PeriodIsUnit { .. } => "period-is-unit",
             SpecFault::BadJoint { .. } => "bad-joint",
             SpecFault::BadMerge { .. } => "bad-merge",
             SpecFault::TwoBaselines { .. } => "two-baselines",

@@ -36,6 +36,12 @@ impl SpecFault {
                 String::new(),
                 "Name the spec, not the table: the table is named within the spec, by `file` in [data].",
             ),
+            SpecFault::IsTable => told(
+                "a table was named in place of the spec".into(),
+                String::new(),
+                "Name the spec, a TOML file that names the table by `file` in [data]; `ratewright draft TABLE --into \
+                 SPEC` writes one to begin with.",
+            ),
             SpecFault::Empty => told(
                 "the spec is empty".into(),
                 String::new(),
@@ -138,6 +144,11 @@ impl SpecFault {
                 label: "this column holds the counts".into(),
                 help: "Name another column, or remove the entry: counts cannot explain themselves.".into(),
             },
+            SpecFault::PeriodIsUnit { column, .. } => told(
+                format!("`period` in [data] names `{column}`, the column of the units"),
+                "this column names the units".into(),
+                "Name the column that orders the rows of a unit, or leave `period` out.",
+            ),
             SpecFault::BadJoint { why, .. } => bad_joint(why),
             SpecFault::BadMerge { column, why, .. } => bad_merge(column, why),
             SpecFault::TwoBaselines { .. } => told(

@@ -6,7 +6,7 @@ mod read;
 mod text;
 
 pub use error::{HeaderPlace, RaggedRow, TableError, TableFault};
-pub use read::{parse_csv, read_csv};
+pub use read::{parse_csv, read_bytes, read_csv};
 pub use text::TextCells;
 
 /// A table as it was read: named columns of equal length, nothing judged yet.

@@ -4,6 +4,8 @@
 //! cells mean (a count, a level, a gap) is left to `design`.
 
 use super::{Cells, Column, HeaderPlace, RaggedRow, Table, TableError, TableFault, TextCells};
+use crate::regular_file;
+use std::io::Read;
 use std::path::Path;
 
 /// How many characters of a ragged row are kept for its message.
@@ -18,13 +20,24 @@ const RAGGED_TEXT: usize = 40;
 /// A file that cannot be read, is empty, is no UTF-8 text or has another separator; columns
 /// without a name or with the same name; rows whose number of cells is not the header's.
 pub fn read_csv(file: &str, path: &Path) -> Result<Table, TableError> {
-    let bytes = std::fs::read(path).map_err(|error| TableError {
-        file: file.to_owned(),
-        faults: vec![TableFault::Unreadable {
-            reason: error.to_string(),
-        }],
-    })?;
-    parse_csv(file, &bytes)
+    parse_csv(file, &read_bytes(file, path)?)
+}
+
+/// The bytes of the data file at `path`, which messages call `file`.
+///
+/// # Errors
+/// The file cannot be read, or is a folder, a device or a pipe.
+pub fn read_bytes(file: &str, path: &Path) -> Result<Vec<u8>, TableError> {
+    let mut bytes = Vec::new();
+    regular_file::open(path)
+        .and_then(|mut opened| opened.read_to_end(&mut bytes))
+        .map_err(|error| TableError {
+            file: file.to_owned(),
+            faults: vec![TableFault::Unreadable {
+                reason: error.to_string(),
+            }],
+        })?;
+    Ok(bytes)
 }
 
 /// As [`read_csv`], from bytes in memory.

@@ -54,6 +54,18 @@ fn read(file: &str) -> Result<Table, TableError> {
     read_csv(file, &path(file))
 }
 
+#[test]
+fn what_is_no_regular_file_is_refused_before_it_is_read() {
+    for no_file in ["/dev/zero", env!("CARGO_MANIFEST_DIR")] {
+        let error = read_csv("data.csv", &PathBuf::from(no_file)).expect_err(no_file);
+        let told = lines(&error.diagnostics());
+        assert!(
+            told.contains("[data-unreadable] the data file cannot be read: it is a"),
+            "{told}"
+        );
+    }
+}
+
 /// What is said to a file that is no table.
 fn unreadable(file: &str) -> String {
     lines(&read(file).expect_err("no table").diagnostics())
@@ -158,7 +170,7 @@ fn exposures_that_are_none() {
 }
 
 #[test]
-fn rows_that_stand_for_no_number_of_rows() {
+fn rows_that_stand_for_no_number_of_rows_or_too_many() {
     let mut spec = study();
     spec.data.stands_for = Some(at("alike"));
     insta::assert_snapshot!(unfit("stands_for.csv", &spec));

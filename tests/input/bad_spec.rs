@@ -7,7 +7,7 @@ use std::path::{Path, PathBuf};
 use proptest::prelude::*;
 use proptest::test_runner::FileFailurePersistence;
 use ratewright::output::diagnostic::{Look, render};
-use ratewright::spec::{SpecError, parse, read};
+use ratewright::spec::{SpecError, SpecFault, parse, read};
 
 fn folder() -> PathBuf {
     Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/bad_spec")
@@ -53,6 +53,8 @@ fn every_kind_of_fault_has_a_file_and_an_entry_in_the_docs() {
     }
     let missing = read(Path::new("no such file.toml")).expect_err("it is not there");
     codes.extend(missing.faults.iter().map(|fault| fault.code()));
+    let table = parse("landings.csv", "landing,falls\n").expect_err("a table");
+    codes.extend(table.faults.iter().map(|fault| fault.code()));
     codes.extend(a_large_file().faults.iter().map(|fault| fault.code()));
     // Both sides: a fault without a file, and an entry of a fault that no longer exists.
     let problems = include_str!("../../docs/problems.md");
@@ -96,25 +98,62 @@ fn colour_adds_escape_sequences_and_no_word() {
     }
 }
 
-/// The error of a table that was named in place of the spec.
+/// The error of a file larger than any spec.
 fn a_large_file() -> SpecError {
-    let mut table = tempfile::NamedTempFile::new().expect("a file");
-    table
-        .write_all("landing,falls\n".repeat(100_000).as_bytes())
+    let mut file = tempfile::NamedTempFile::new().expect("a file");
+    file.write_all("# nothing\n".repeat(200_000).as_bytes())
         .expect("written");
-    let mut error = read(table.path()).expect_err("no spec");
-    error.source.file = "landings.csv".into();
-    error
+    read(file.path()).expect_err("no spec")
 }
 
 #[test]
 fn a_table_in_place_of_the_spec_is_told() {
+    let folder = tempfile::tempdir().expect("a folder");
+    let rows = "landing,falls,boardings\nA,3,120\nB,0,90\n";
+    let files: [(&str, Vec<u8>); 7] = [
+        ("pools.csv", rows.into()),
+        ("pools", format!("\u{feff}{}", rows.replace(',', ";")).into()),
+        ("pools.dat", rows.replace(',', "\t").into()),
+        ("large.csv", rows.repeat(50_000).into()),
+        ("one_column.CSV", "falls\n3\n".into()),
+        ("latin.csv", b"landing,falls\nB\xE4der,3\n".to_vec()),
+        ("pools.xlsx", b"PK\x03\x04\xFF\xFE\x00\x00".to_vec()),
+    ];
+    for (name, bytes) in files {
+        let path = folder.path().join(name);
+        std::fs::write(&path, bytes).expect("written");
+        let error = read(&path).expect_err(name);
+        assert_eq!(error.faults, [SpecFault::IsTable], "{name}");
+        let message = message_of(&error);
+        assert!(
+            message.contains("Problem: a table was named in place of the spec"),
+            "{message}"
+        );
+        assert!(message.contains("ratewright draft TABLE"), "{message}");
+    }
+    // A spec with a slip stays one, by whatever name.
+    let text = GOOD.replacen("title    = \"", "title    = ", 1);
+    assert!(matches!(
+        parse("spec.csv", &text).expect_err("no TOML").faults[0],
+        SpecFault::Syntax { .. }
+    ));
+}
+
+#[test]
+fn a_file_larger_than_any_spec_is_told() {
     let message = message_of(&a_large_file());
     assert!(
         message.starts_with("Problem: the spec is larger than 1,048,576 bytes"),
         "{message}"
     );
-    assert!(message.contains("landings.csv"), "{message}");
+}
+
+#[test]
+fn ten_places_that_are_no_toml_are_shown_and_the_rest_counted() {
+    let error = parse("s.toml", &"[study]\nnonsense\n".repeat(80)).expect_err("no TOML");
+    let message = message_of(&error);
+    assert_eq!(message.matches(" --> s.toml").count(), 10, "{message}");
+    assert!(message.contains("more places"), "{message}");
 }
 
 #[test]
@@ -142,6 +181,8 @@ fn a_file_that_is_not_there_or_is_a_folder_is_told() {
     assert!(told(Path::new("no such file.toml")).contains("no such file.toml"));
     let folder = told(Path::new(env!("CARGO_MANIFEST_DIR")));
     assert!(folder.contains("(spec-unreadable)"), "{folder}");
+    let device = told(Path::new("/dev/zero"));
+    assert!(device.contains("it is a device or a pipe"), "{device}");
 }
 
 #[test]

@@ -3,7 +3,7 @@
 use crate::study::*;
 use proptest::prelude::*;
 use ratewright::design::{self, Audit, CellRule, ColumnCoding, Design, DesignFault};
-use ratewright::spec::{Centre, Data, RowsWithGaps, Spec, Standing};
+use ratewright::spec::{Centre, Covariate, Data, Joint, RowsWithGaps, Spec, Standing};
 use ratewright::table::{Cells, Table};
 
 const LANDINGS: &str = "\
@@ -61,10 +61,68 @@ fn a_category_has_a_column_for_each_level_but_the_reference_and_merged_levels_sh
     assert_eq!(names(&design), ["decking=grooved", "decking=other"]);
     assert_eq!(design.columns[0], [0.0, 0.0, 1.0, 1.0, 0.0, 0.0, 0.0, 1.0]);
     assert_eq!(design.columns[1], [0.0, 0.0, 0.0, 0.0, 1.0, 1.0, 0.0, 0.0]);
-    assert_eq!(design.terms[1].change, "other against plain");
+    assert_eq!(design.terms[1].change, "other (mesh, paint) against plain");
     // The central 95 % of a log-normal from 0.25 to 4: mean 0, sd ln 4 / 1.959963984540054.
     assert!(design.terms[0].prior_mean.abs() < 1e-15);
     assert!((design.terms[0].prior_sd - 1.386_294_361_119_890_6 / 1.959_963_984_540_054).abs() < 1e-15);
+}
+
+#[test]
+fn a_merged_level_is_told_with_its_members() {
+    let changes = |covariate: Covariate, joints: Vec<Joint>| {
+        let mut spec = study();
+        spec.covariates = vec![covariate, number("slope", Centre::Value(8.0), 2.0)];
+        spec.joints = joints;
+        let design = built(&spec, &table(LANDINGS));
+        let remarks = design::remarks(&spec, &table(LANDINGS), &design);
+        let merges = remarks
+            .iter()
+            .filter(|remark| remark.code() == "merged-into-level")
+            .map(|remark| remark.to_string());
+        (
+            design
+                .terms
+                .iter()
+                .map(|term| term.change.clone())
+                .collect::<Vec<String>>(),
+            merges.collect::<Vec<String>>(),
+        )
+    };
+    // The name is itself a level.
+    let (told, remarks) = changes(
+        merged("decking", "plain", "grooved", &["mesh", "paint"]),
+        vec![joint("decking", "slope")],
+    );
+    assert_eq!(told[0], "grooved (with mesh and paint) against plain");
+    assert_eq!(
+        told[2],
+        "factor on the ratio of grooved (with mesh and paint) against plain, for each 2 more in slope"
+    );
+    assert_eq!(
+        remarks,
+        [
+            "`merge` takes `mesh`, `paint` of `decking` into \"grooved\", which is itself a level of the file: they can no \
+          longer be told apart. If that is meant, list \"grooved\" among its levels too; if not, choose a name that no \
+          level has."
+        ]
+    );
+    // So it is when the spec lists it, which shows that it is meant.
+    let (told, remarks) = changes(
+        merged("decking", "plain", "grooved", &["grooved", "mesh", "paint"]),
+        vec![],
+    );
+    assert_eq!(told[0], "grooved (with mesh and paint) against plain");
+    assert_eq!(remarks, [""; 0]);
+    // The reference is merged.
+    let (told, remarks) = changes(merged("decking", "plain", "plain", &["paint"]), vec![]);
+    assert_eq!(
+        told[..2],
+        ["grooved against plain (with paint)", "mesh against plain (with paint)"]
+    );
+    assert_eq!(remarks.len(), 1);
+    let (told, remarks) = changes(merged("decking", "smooth", "smooth", &["plain", "paint"]), vec![]);
+    assert_eq!(told[0], "grooved against smooth (plain, paint)");
+    assert_eq!(remarks, [""; 0]);
 }
 
 #[test]

@@ -96,6 +96,26 @@ fn names_that_need_quoting_are_quoted() {
 }
 
 #[test]
+fn signs_that_turn_the_text_are_escaped_in_comments_too() {
+    let mut text = "site\u{202E},falls,visits,wet\u{2067}floor,note\u{2028}s\u{1B}[2J\n".to_owned();
+    for row in 0..30 {
+        let wet = ["y\u{200F}es", "no"][row % 2];
+        text.push_str(&format!("s{row},{},{},{wet},remark {row}\n", row % 3, 100 + row));
+    }
+    let drafted = draft(&table(&text)).unwrap();
+    let told = |sign: char| !matches!(sign, '\n' | '…') && (sign.is_control() || !sign.is_ascii());
+    assert_eq!(drafted.text.chars().find(|&sign| told(sign)), None, "{}", drafted.text);
+    assert!(
+        drafted.text.contains("# - \"note\\u2028s\\u001B[2J\": a text with 30"),
+        "{}",
+        drafted.text
+    );
+    // What was escaped reads as it was.
+    assert_eq!(drafted.spec.data.unit.value, "site\u{202E}");
+    assert_eq!(drafted.spec.covariates[0].column.value, "wet\u{2067}floor");
+}
+
+#[test]
 fn incidents_without_exposure_are_told_aloud() {
     let drafted = draft(&table("site,falls,visits\na,1,0\nb,0,0\nc,3,50\nd,1,20\n")).unwrap();
     assert!(
@@ -126,8 +146,127 @@ fn a_table_without_counts_is_refused_with_what_spoils_them() {
     let error = draft(&table("falls\n3\n1\n")).unwrap_err();
     assert_eq!(error.diagnostics()[0].code, "draft-no-unit");
     let docs = std::fs::read_to_string(PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("docs/problems.md")).unwrap();
-    for code in ["draft-no-count", "draft-no-unit"] {
+    for code in ["draft-no-count", "draft-bad-exposure", "draft-no-unit"] {
         assert!(docs.contains(&format!("### `{code}`\n")), "no entry for {code}");
+    }
+}
+
+/// A table of 40 rows, one column of which is given, with what the 21st of its cells is in line 22.
+fn forty(header: &str, cell: &str, clean: impl Fn(usize) -> String) -> Table {
+    let mut text = format!("site,falls,{header}\n");
+    for row in 0..40 {
+        let value = if row == 20 { cell.to_owned() } else { clean(row) };
+        text.push_str(&format!("s{row},{},{value}\n", row % 4));
+    }
+    table(&text)
+}
+
+#[test]
+fn a_cell_that_spoils_the_exposure_is_told() {
+    for cell in ["-3", "\"1,234\"", "inf", "NAN", "1e400", "12 km"] {
+        for header in ["boardings", "exposure", "hours"] {
+            let error = draft(&forty(header, cell, |row| (100 + 7 * row).to_string())).unwrap_err();
+            let DraftFault::BadExposure { cells } = &error.fault else {
+                panic!("{header} {cell}: {error:?}")
+            };
+            assert_eq!(cells.len(), 1, "{header} {cell}");
+            assert_eq!(
+                (cells[0].line, cells[0].column.as_str(), cells[0].value.as_str()),
+                (22, header, cell.trim_matches('"'))
+            );
+            assert_eq!(error.diagnostics()[0].code, "draft-bad-exposure");
+        }
+    }
+    // Separators in every row: all are counted, the first ten shown.
+    let error = draft(&forty("boardings", "\"9,999\"", |row| format!("\"1,{:03}\"", 7 * row))).unwrap_err();
+    let told = &error.diagnostics()[0];
+    assert_eq!((told.places.len(), told.places_in_all), (10, 40));
+}
+
+#[test]
+fn a_name_for_opportunity_over_something_else_is_no_exposure() {
+    let by_turns = |values: [&'static str; 3]| move |row: usize| values[row % 3].to_owned();
+    for (header, clean) in [
+        ("service", by_turns(["bus", "ferry", "tram"])),
+        ("time", by_turns(["08:30", "12:15", "17:45"])),
+        ("time", by_turns(["-2", "0", "3"])),
+    ] {
+        let drafted = draft(&forty(header, &clean(20), clean)).unwrap();
+        assert_eq!(drafted.spec.exposure, None, "{header}");
+        assert!(
+            drafted.text.contains("# No column looks like an exposure"),
+            "{}",
+            drafted.text
+        );
+    }
+    // A clean column is taken before an equal one that is spoilt.
+    let drafted = draft(&table(
+        "site,falls,people,visits\na,1,x,10\nb,0,20,30\nc,2,30,20\nd,1,40,20\n",
+    ))
+    .unwrap();
+    assert_eq!(drafted.spec.exposure.unwrap().column.value, "visits");
+}
+
+#[test]
+fn spoilt_counts_are_told_and_no_other_column_steps_in() {
+    let error = draft(&table("site,falls,doors\na,-3,2\nb,12,4\nc,1,3\n")).unwrap_err();
+    match &error.fault {
+        DraftFault::NoCount { spoilt } => assert_eq!((spoilt[0].line, spoilt[0].value.as_str()), (2, "-3")),
+        other => panic!("{other:?}"),
+    }
+}
+
+#[test]
+fn what_spoils_a_column_of_numbers_is_told() {
+    for (cell, told) in [
+        (
+            "inf",
+            "# - \"depth\": a column of numbers, but 1 cell is no number: inf in line 22",
+        ),
+        (
+            "NAN",
+            "# - \"depth\": a column of numbers, but 1 cell is no number: NAN in line 22",
+        ),
+        (
+            "3 m",
+            "# - \"depth\": a column of numbers, but 1 cell is no number: 3 m in line 22",
+        ),
+    ] {
+        let drafted = draft(&forty("depth", cell, |row| format!("{row}.5"))).unwrap();
+        assert!(drafted.text.contains(told), "{}", drafted.text);
+    }
+    // Few values, one of them infinite: it is no level.
+    let drafted = draft(&forty("depth", "inf", |row| (row % 3).to_string())).unwrap();
+    assert!(drafted.text.contains("inf in line 22"), "{}", drafted.text);
+    // A few numbers and a word are levels.
+    let drafted = draft(&forty("doors", "many", |row| (row % 3).to_string())).unwrap();
+    assert!(
+        drafted.design.coding.terms.contains(&"doors=many".to_owned()),
+        "{}",
+        drafted.text
+    );
+}
+
+#[test]
+fn other_outcomes_are_no_covariates() {
+    let mut text = "site,deaths,injuries,claim rate,claim_id,hours,falls programme\n".to_owned();
+    for row in 0..40 {
+        text.push_str(&format!(
+            "s{row},{},{},{}.5,{},{},{}\n",
+            row % 4,
+            row % 7,
+            row % 5,
+            1000 + 3 * row,
+            100 + 7 * row,
+            row % 2
+        ));
+    }
+    let drafted = draft(&table(&text)).unwrap();
+    assert_eq!(drafted.spec.incidents.column.value, "deaths");
+    assert_eq!(drafted.design.coding.terms, ["falls programme=1"]);
+    for column in ["injuries", "claim rate"] {
+        let told = format!("# - \"{column}\": it is named like incidents too, and another outcome is no cause");
+        assert!(drafted.text.contains(&told), "{}", drafted.text);
     }
 }
 
@@ -152,7 +291,7 @@ proptest! {
         match draft(&table) {
             Ok(drafted) => prop_assert!(drafted.text.contains("provisional = true")),
             Err(error) => {
-                prop_assert!(matches!(error.fault, DraftFault::NoCount { .. } | DraftFault::NoUnit | DraftFault::NoDesign(_)), "{error}");
+                prop_assert!(matches!(error.fault, DraftFault::NoCount { .. } | DraftFault::BadExposure { .. } | DraftFault::NoUnit | DraftFault::NoDesign(_)), "{error}");
                 prop_assert!(!error.diagnostics().is_empty());
             }
         }

@@ -1,8 +1,10 @@
 //! Which other columns of an unprepared table can be covariates, and how.
 
 use super::super::types::PARAMETERS;
+use super::PROGRAMME;
 use super::look::{Facts, Numbers};
-use super::roles::Roles;
+use super::roles::{INCIDENTS, LABELS, Roles};
+use crate::table::Table;
 
 /// A category has at most this many levels in a draft.
 const MOST_LEVELS: usize = 12;
@@ -39,7 +41,8 @@ pub(super) struct LeftOut {
 /// Sorts the columns without a role into covariates and columns left out, in the order of the file.
 /// A unit of few levels, such as a district, may matter as a category too; it comes last, so that
 /// it and not the covariate that it determines is then found to be one too many.
-pub(super) fn entries(facts: &[Facts], roles: &Roles, rows: usize) -> (Vec<Entry>, Vec<LeftOut>) {
+pub(super) fn entries(table: &Table, facts: &[Facts], roles: &Roles) -> (Vec<Entry>, Vec<LeftOut>) {
+    let rows = table.rows();
     let mut entries = Vec::new();
     let mut left_out = Vec::new();
     let mut terms = 1;
@@ -52,7 +55,7 @@ pub(super) fn entries(facts: &[Facts], roles: &Roles, rows: usize) -> (Vec<Entry
     for place in others.chain(unit_too.then_some(roles.unit)) {
         let facts = &facts[place];
         let width = facts.levels.len().saturating_sub(1);
-        let found = match entry(facts, rows) {
+        let found = match entry(table, facts) {
             Ok(_) if entries.len() == MOST_COVARIATES => {
                 Err(format!("{MOST_COVARIATES} covariates are enough to start with; choose"))
             }
@@ -82,7 +85,8 @@ pub(super) fn entries(facts: &[Facts], roles: &Roles, rows: usize) -> (Vec<Entry
     (entries, left_out)
 }
 
-fn entry(facts: &Facts, rows: usize) -> Result<Entry, String> {
+fn entry(table: &Table, facts: &Facts) -> Result<Entry, String> {
+    let rows = table.rows();
     let levels = facts.levels.len();
     if PARAMETERS.contains(&facts.name()) {
         return Err("a parameter of the model has this name".to_owned());
@@ -92,6 +96,15 @@ fn entry(facts: &Facts, rows: usize) -> Result<Entry, String> {
     }
     if levels <= 1 {
         return Err("it is the same in every row".to_owned());
+    }
+    if is_another_outcome(facts, rows) {
+        return Err(
+            "it is named like incidents too, and another outcome is no cause; add it if it was settled before them"
+                .to_owned(),
+        );
+    }
+    if let Some(because) = spoilt_numbers(table, facts) {
+        return Err(because);
     }
     let (kind, comment) = match &facts.numbers {
         Some(numbers) if levels > FEW_VALUES => number(facts, numbers, levels)?,
@@ -108,6 +121,29 @@ fn entry(facts: &Facts, rows: usize) -> Result<Entry, String> {
         column: facts.name().to_owned(),
         kind,
         comment,
+    })
+}
+
+/// Whether a column counts or measures incidents of another kind.
+fn is_another_outcome(facts: &Facts, rows: usize) -> bool {
+    facts.is_named(&INCIDENTS) && !facts.is_named(&LABELS) && !facts.is_named(&PROGRAMME) && facts.is_number_like(rows)
+}
+
+/// What keeps a column from being one of numbers that it is but for some cells. A few numbers
+/// among a few words may be levels, but infinity and "not a number" are no levels of anything.
+fn spoilt_numbers(table: &Table, facts: &Facts) -> Option<String> {
+    let as_level = |row: usize| facts.column.number(row).is_none() && facts.levels.len() <= MOST_LEVELS;
+    let &first = facts.no_numbers.iter().find(|&&row| !as_level(row))?;
+    facts.is_number_like(table.rows()).then(|| {
+        let cells = match facts.no_numbers.len() {
+            1 => "1 cell is no number".to_owned(),
+            many => format!("{many} cells are no numbers, the first"),
+        };
+        format!(
+            "a column of numbers, but {cells}: {} in line {}",
+            facts.column.label(first),
+            table.lines[first]
+        )
     })
 }
 

@@ -21,6 +21,10 @@ pub(super) struct Facts<'t> {
     pub levels: Vec<(String, usize)>,
     /// What its numbers look like, when every cell that holds something holds a finite number.
     pub numbers: Option<Numbers>,
+    /// The rows whose cells hold something else than a finite number.
+    pub no_numbers: Vec<usize>,
+    /// The cells that begin as a number does, be it written `1,234` or `12 km`.
+    number_like: usize,
     /// Mean length of its cells, in characters.
     pub length: f64,
 }
@@ -67,16 +71,16 @@ fn of_column(column: &Column, rows: usize) -> Facts<'_> {
             }
         }
     }
-    let read: Option<Vec<f64>> = filled
-        .iter()
-        .map(|&row| column.number(row).filter(|number| number.is_finite()))
-        .collect();
+    let finite = |row: usize| column.number(row).filter(|number| number.is_finite());
+    let no_numbers: Vec<usize> = filled.iter().copied().filter(|&row| finite(row).is_none()).collect();
+    let numbers: Vec<f64> = filled.iter().filter_map(|&row| finite(row)).collect();
+    let number_like = filled.iter().filter(|&&row| begins_as_number(&column.label(row)));
     Facts {
         column,
         gaps: rows - filled.len(),
-        numbers: read
-            .filter(|numbers| !numbers.is_empty())
-            .map(|numbers| of_numbers(&numbers)),
+        number_like: number_like.count(),
+        numbers: (no_numbers.is_empty() && !numbers.is_empty()).then(|| of_numbers(&numbers)),
+        no_numbers,
         levels,
         length: length as f64 / filled.len().max(1) as f64,
     }
@@ -85,6 +89,11 @@ fn of_column(column: &Column, rows: usize) -> Facts<'_> {
 fn is_gap(column: &Column, row: usize) -> bool {
     let label = column.label(row);
     label.is_empty() || USUAL_GAP_MARKS.contains(&label.as_ref())
+}
+
+fn begins_as_number(cell: &str) -> bool {
+    cell.trim_start_matches(['+', '-', '.'])
+        .starts_with(|sign: char| sign.is_ascii_digit())
 }
 
 fn of_numbers(numbers: &[f64]) -> Numbers {
@@ -116,6 +125,12 @@ impl Facts<'_> {
     /// Whether a cell is empty or a usual gap mark.
     pub fn is_gap(&self, row: usize) -> bool {
         is_gap(self.column, row)
+    }
+
+    /// Whether most of the cells that hold something begin as a number does, so that the others
+    /// spoil a column of numbers.
+    pub fn is_number_like(&self, rows: usize) -> bool {
+        2 * self.number_like > rows - self.gaps
     }
 
     /// The usual gap marks that occur.

@@ -6,14 +6,16 @@
 mod entries;
 mod look;
 mod roles;
+mod spoilt;
 mod write;
 
 use super::build::build;
-use super::fault::{BadCell, DesignError, DesignFault};
+use super::cell_rule::BadCell;
+use super::fault::{DesignError, DesignFault};
 use super::types::Design;
 use crate::diagnostic::{Diagnostic, Place};
 use crate::spec::{self, Spec, SpecError};
-use crate::table::Table;
+use crate::table::{Column, Table};
 use entries::{Entry, LeftOut};
 use roles::NoRole;
 use std::fmt;
@@ -58,10 +60,15 @@ pub struct DraftError {
 /// Why no spec can be drafted.
 #[derive(Debug, Clone, PartialEq)]
 pub enum DraftFault {
-    /// No column could be a count.
+    /// No column could be a count, or the one that is named like incidents holds other cells too.
     NoCount {
         /// The first cell that is no count of each column that is named like one.
         spoilt: Vec<BadCell>,
+    },
+    /// The column that is named like an exposure holds cells that are none.
+    BadExposure {
+        /// Those cells.
+        cells: Vec<BadCell>,
     },
     /// No column could name the unit of each row.
     NoUnit,
@@ -94,19 +101,20 @@ pub fn draft(table: &Table) -> Result<Draft, DraftError> {
     let roles = roles::roles(table, &facts).map_err(|missing| match missing {
         NoRole::Unit => refused(DraftFault::NoUnit),
         NoRole::Incidents => {
-            let spoilt = roles::spoilt_counts(table, &facts)
-                .into_iter()
-                .map(|(column, row)| BadCell {
-                    line: table.lines[row],
-                    column: column.name.clone(),
-                    value: column.label(row).into_owned(),
-                });
+            let spoilt = roles::spoilt_counts(&facts, table.rows());
+            let spoilt = spoilt.into_iter().map(|(column, row)| bad_cell(table, column, row));
             refused(DraftFault::NoCount {
                 spoilt: spoilt.collect(),
             })
         }
+        NoRole::Exposure { place, rows } => {
+            let bad = |row| bad_cell(table, facts[place].column, row);
+            refused(DraftFault::BadExposure {
+                cells: rows.into_iter().map(bad).collect(),
+            })
+        }
     })?;
-    let (mut entries, mut left_out) = entries::entries(&facts, &roles, table.rows());
+    let (mut entries, mut left_out) = entries::entries(table, &facts, &roles);
     loop {
         let sheet = Sheet {
             table,
@@ -126,6 +134,14 @@ pub fn draft(table: &Table) -> Result<Draft, DraftError> {
             }));
         }
         leave_out(&refusal, &mut entries, &mut left_out);
+    }
+}
+
+fn bad_cell(table: &Table, column: &Column, row: usize) -> BadCell {
+    BadCell {
+        line: table.lines[row],
+        column: column.name.clone(),
+        value: column.label(row).into_owned(),
     }
 }
 
@@ -237,27 +253,37 @@ impl DraftError {
         let file = Place::File {
             file: self.table_file.clone(),
         };
+        let place = |cell: &BadCell| Place::Cell {
+            file: self.table_file.clone(),
+            line: Some(cell.line),
+            column: Some(cell.column.clone()),
+            value: Some(cell.value.clone()),
+        };
         match &self.fault {
             DraftFault::NoCount { spoilt } => {
-                let place = |cell: &BadCell| Place::Cell {
-                    file: self.table_file.clone(),
-                    line: Some(cell.line),
-                    column: Some(cell.column.clone()),
-                    value: Some(cell.value.clone()),
-                };
-                let places = if spoilt.is_empty() {
-                    vec![file]
+                let (message, places) = if spoilt.is_empty() {
+                    ("no column could be the incident counts", vec![file])
                 } else {
-                    spoilt.iter().map(place).collect()
+                    (
+                        "what is named like incident counts holds cells that are no counts",
+                        spoilt.iter().map(place).collect(),
+                    )
                 };
                 vec![Diagnostic::new(
                     "draft-no-count",
-                    "no column could be the incident counts",
+                    message,
                     places,
                     "a count column holds whole numbers from 0 in every cell that is not empty; correct its cells, or \
                      write the spec by hand",
                 )]
             }
+            DraftFault::BadExposure { cells } => vec![Diagnostic::new(
+                "draft-bad-exposure",
+                "the column that is named like an exposure holds cells that are no exposures",
+                cells.iter().map(place).collect(),
+                "write each exposure as a plain number from 0 without separators or units, and leave the cell empty \
+                 where it is not known; if the column measures no opportunity for incidents, give it another name",
+            )],
             DraftFault::NoUnit => vec![Diagnostic::new(
                 "draft-no-unit",
                 "no column could say which unit (place, team, school) each row belongs to",

@@ -2,11 +2,12 @@
 
 use super::super::types::LARGEST_COUNT;
 use super::look::Facts;
+use super::spoilt::{meant_as_exposure, no_counts, no_exposures};
 use crate::table::{Column, Table};
 use std::collections::HashSet;
 
 /// Words for what is counted.
-const INCIDENTS: [&str; 42] = [
+pub(super) const INCIDENTS: [&str; 42] = [
     "incident",
     "incidents",
     "fall",
@@ -53,7 +54,7 @@ const INCIDENTS: [&str; 42] = [
 /// Words that fit a count and much else.
 const COUNTS: [&str; 8] = ["count", "counts", "number", "total", "n", "y", "tally", "outcome"];
 /// Words for opportunity.
-const OPPORTUNITY: [&str; 40] = [
+pub(super) const OPPORTUNITY: [&str; 40] = [
     "population",
     "visits",
     "holders",
@@ -108,7 +109,7 @@ const UNITS: [&str; 26] = [
     "id", "code",
 ];
 /// Words for a label that is no measure.
-const LABELS: [&str; 7] = ["id", "code", "key", "ref", "index", "row", "nr"];
+pub(super) const LABELS: [&str; 7] = ["id", "code", "key", "ref", "index", "row", "nr"];
 /// Cells longer than this on average are remarks and not names.
 const LONG: f64 = 40.0;
 /// A guess below this is none.
@@ -127,6 +128,11 @@ pub(super) struct Roles {
 /// Why a draft cannot be written.
 pub(super) enum NoRole {
     Incidents,
+    /// The column that is named like an exposure, and the rows whose cells are none.
+    Exposure {
+        place: usize,
+        rows: Vec<usize>,
+    },
     Unit,
 }
 
@@ -140,10 +146,24 @@ pub(super) fn roles(table: &Table, facts: &[Facts]) -> Result<Roles, NoRole> {
         scores.max_by_key(|&(score, place)| (score, std::cmp::Reverse(place)))
     };
     let (best, incidents) = scored(&|facts| incidents_score(facts, rows), &[]).ok_or(NoRole::Incidents)?;
-    if best <= LEAST_SCORE {
+    // Where the column that is named for the counts is spoilt, another one must not step in.
+    let instead = !facts[incidents].is_named(&INCIDENTS)
+        && facts.iter().any(|facts| {
+            facts.is_named(&INCIDENTS)
+                && !facts.is_named(&LABELS)
+                && facts.is_number_like(rows)
+                && !no_counts(facts, rows).is_empty()
+        });
+    if best <= LEAST_SCORE || instead {
         return Err(NoRole::Incidents);
     }
     let exposure = scored(&|facts| exposure_score(facts, rows), &[incidents]).map(|(_, place)| place);
+    if let Some(place) = exposure {
+        let spoilt = no_exposures(&facts[place], rows);
+        if !spoilt.is_empty() {
+            return Err(NoRole::Exposure { place, rows: spoilt });
+        }
+    }
     let taken: Vec<usize> = exposure.into_iter().chain([incidents]).collect();
     let (_, unit) = scored(&|facts| unit_score(facts, rows), &taken).ok_or(NoRole::Unit)?;
     let orders = |place: &usize| !taken.contains(place) && *place != unit && orders_units(table, facts, unit, *place);
@@ -177,9 +197,15 @@ fn incidents_score(facts: &Facts, rows: usize) -> Option<i32> {
     Some(points(&rules))
 }
 
+/// Spoilt columns are scored too: one that is named for the exposure must not be passed over in
+/// silence for a cell that is none.
 fn exposure_score(facts: &Facts, rows: usize) -> Option<i32> {
-    let numbers = facts.numbers.as_ref()?;
-    if numbers.least < 0.0 || numbers.greatest <= 0.0 || 2 * facts.gaps > rows || numbers.counts_up {
+    let spoilt = !no_exposures(facts, rows).is_empty();
+    let could_be = match &facts.numbers {
+        Some(numbers) if !spoilt => numbers.greatest > 0.0 && !numbers.counts_up,
+        _ => meant_as_exposure(facts, rows),
+    };
+    if !could_be || 2 * facts.gaps > rows {
         return None;
     }
     let rules = [
@@ -187,6 +213,7 @@ fn exposure_score(facts: &Facts, rows: usize) -> Option<i32> {
         (facts.is_named(&OPPORTUNITY), 50),
         (facts.is_named(&DURATION), 20),
         (facts.is_named(&LABELS), -200),
+        (spoilt, -1),
     ];
     Some(points(&rules)).filter(|&score| score > 0)
 }
@@ -232,20 +259,10 @@ fn points(rules: &[(bool, i32)]) -> i32 {
 }
 
 /// For each column that is named like a count and holds none: the row of its first cell that is no count.
-pub(super) fn spoilt_counts<'t>(table: &Table, facts: &[Facts<'t>]) -> Vec<(&'t Column, usize)> {
-    let spoilt = |facts: &Facts<'t>| {
-        let column = facts.column;
-        let no_count = |row: &usize| {
-            let count = column
-                .number(*row)
-                .is_some_and(|count| (0.0..=LARGEST_COUNT).contains(&count) && count.fract() == 0.0);
-            !count && !facts.is_gap(*row)
-        };
-        (0..table.rows()).find(no_count).map(|row| (column, row))
-    };
+pub(super) fn spoilt_counts<'t>(facts: &[Facts<'t>], rows: usize) -> Vec<(&'t Column, usize)> {
     facts
         .iter()
         .filter(|facts| facts.is_named(&INCIDENTS) || facts.is_named(&COUNTS))
-        .filter_map(spoilt)
+        .filter_map(|facts| Some((facts.column, *no_counts(facts, rows).first()?)))
         .collect()
 }

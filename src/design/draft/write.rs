@@ -222,7 +222,7 @@ impl Sheet<'_> {
             None => {
                 writeln!(
                     text,
-                    "\n# No column is named like an exposure: every row counts as 1. If one measures the"
+                    "\n# No column looks like an exposure: every row counts as 1. If one measures the"
                 )?;
                 writeln!(
                     text,
@@ -315,9 +315,15 @@ fn one_line(text: &str) -> String {
             '\n' => escaped.push_str("\\n"),
             '\r' => escaped.push_str("\\r"),
             '\t' => escaped.push_str("\\t"),
-            sign if sign.is_control() => escaped.push_str(&format!("\\u{:04X}", sign as u32)),
+            sign if sign.is_control() || turns_text(sign) => escaped.push_str(&format!("\\u{:04X}", sign as u32)),
             sign => escaped.push(sign),
         }
     }
     escaped
+}
+
+/// Whether a character changes the order or the line in which what follows it is shown, so that a
+/// comment could be made to look like a key.
+fn turns_text(sign: char) -> bool {
+    matches!(sign, '\u{61C}' | '\u{200E}' | '\u{200F}' | '\u{2028}'..='\u{202E}' | '\u{2066}'..='\u{2069}' | '\u{FEFF}')
 }

@@ -68,8 +68,8 @@ pub(super) const REPORT: TableInfo = TableInfo {
             defaulted(
                 "interval",
                 Kind::Number(Bounds {
-                    lower: End::Excluded(0.0),
-                    upper: End::Excluded(1.0),
+                    lower: End::Included(0.5),
+                    upper: End::Included(0.999),
                 }),
                 "0.9",
                 DefaultValue::Number(0.95),
