@@ -1,6 +1,7 @@
 //! Takes all that a fit found; gives the run folder, terminal text, JSON, CSV and Parquet.
 
 pub mod compare;
+pub mod consistency;
 pub mod diagnostic;
 mod error;
 pub mod files;

@@ -7,6 +7,7 @@
 
 use crate::check::{UnitCheck, UnitState};
 use crate::output::findings::StudyFacts;
+use crate::output::manifest::Settings;
 use crate::spec::ZeroCounts;
 
 /// What people are shown.
@@ -43,6 +44,21 @@ impl Audience {
         Audience::SmallCountsHidden {
             below: study.hide_counts_below,
             zero: if study.show_zero {
+                ZeroCounts::Shown
+            } else {
+                ZeroCounts::Hidden
+            },
+        }
+    }
+
+    /// The audience that a run was written for.
+    pub fn of_run(settings: &Settings) -> Audience {
+        if settings.whole {
+            return Audience::Whole;
+        }
+        Audience::SmallCountsHidden {
+            below: settings.hide_counts_below,
+            zero: if settings.show_zero {
                 ZeroCounts::Shown
             } else {
                 ZeroCounts::Hidden
