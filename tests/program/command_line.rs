@@ -485,9 +485,9 @@ mod signals {
     #[test]
     fn a_full_disk_is_told_with_the_file_and_leaves_nothing() {
         let place = place();
-        // Files of at most 8 blocks: the draws need more. The signal that would end the process
-        // is ignored, so that the write itself fails, as it does on a full disk.
-        let script = "trap '' XFSZ; ulimit -f 8; exec \"$0\" fit landings.toml --quiet";
+        // Files of at most 8 blocks: the draws need more. The limit's signal would end the process
+        // unless it is watched; then the write itself fails, as it does on a full disk.
+        let script = "ulimit -f 8; exec \"$0\" fit landings.toml --quiet";
         let output = Process::new("sh")
             .current_dir(place.path())
             .args(["-c", script, env!("CARGO_BIN_EXE_ratewright")])
@@ -500,6 +500,12 @@ mod signals {
 
     #[test]
     fn an_interrupted_fit_leaves_nothing() {
+        for signal in ["INT", "TERM", "HUP"] {
+            interrupted_by(signal);
+        }
+    }
+
+    fn interrupted_by(signal: &str) {
         let place = place();
         // A precision that takes minutes.
         let spec = place.path().join("landings.toml");
@@ -516,7 +522,7 @@ mod signals {
             std::thread::sleep(Duration::from_millis(20));
         }
         let sent = Process::new("sh")
-            .args(["-c", &format!("kill -INT {}", child.id())])
+            .args(["-c", &format!("kill -{signal} {}", child.id())])
             .status()
             .unwrap();
         assert!(sent.success());
