@@ -97,8 +97,8 @@ pub fn first_mismatch(
             difference,
             cause: match cause(then, now, rows) {
                 _ if !is_whole => Cause::Altered,
-                // Spec, data and version are the run's, and no arithmetic lies between data and rows.
-                Cause::Unknown if output.file == "rows.parquet" => Cause::AlteredWithHash,
+                // Spec, rows and version are the run's, and no arithmetic lies between the rows read and written.
+                Cause::Unknown | Cause::UnknownFromOwnRows if output.file == "rows.parquet" => Cause::AlteredWithHash,
                 known => known,
             },
         }));
