@@ -260,7 +260,7 @@ fn place_at_or_below(value: f64) -> Option<Place> {
 /// The last place that a simulation error supports: the error is at most [`UNITS_OF_ERROR`] units
 /// of it. Far below everything shown where the error is 0.
 fn finest(error: f64) -> Place {
-    const FAR_BELOW: Place = -12;
+    const FAR_BELOW: Place = -300;
     match place_at_or_below(error) {
         None => FAR_BELOW,
         Some(place) if error <= UNITS_OF_ERROR * power_of_ten(place) => place,
