@@ -14,6 +14,7 @@ pub mod replaying;
 pub mod run_folder;
 mod schema;
 pub mod shown;
+pub mod soundness;
 pub mod tables;
 pub mod terminal;
 mod text;
