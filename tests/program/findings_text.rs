@@ -34,7 +34,8 @@ fn the_terminal_says_so_when_the_precision_was_not_met() {
 #[test]
 fn estimates_of_a_poor_simulation_say_so_first_and_why() {
     let blocks = ["The answer", "Rate ratios", "The rate itself"];
-    let failing: [(fn(&mut SamplingFinding), &str); 6] = [
+    type Change = fn(&mut SamplingFinding);
+    let failing: [(Change, &str); 6] = [
         (|s| s.largest_r_hat = Some(1.0104), "R-hat is 1.0104, above 1.01"),
         (|s| s.largest_r_hat = None, "could not be computed"),
         (
