@@ -130,12 +130,12 @@ fn parts(covariate: &CovariateCoding) -> Vec<(String, Part)> {
 }
 
 impl Part {
-    /// As the circumstance of a sentence: `where decking is grooved`, `with each 2 more in slope_deg`.
+    /// As the circumstance of a sentence: `where decking is grooved`, `for each 2 more in slope_deg`.
     pub fn circumstance(&self) -> String {
         match self {
             Part::Level { column, level, .. } => format!("where {column} is {level}"),
-            Part::Step { column, step, .. } => format!("with each {} more in {column}", as_written(*step)),
-            Part::Doubling { column, .. } => format!("with each doubling of {column}"),
+            Part::Step { column, step, .. } => format!("for each {} more in {column}", as_written(*step)),
+            Part::Doubling { column, .. } => format!("for each doubling of {column}"),
         }
     }
 

@@ -10,6 +10,14 @@
 const WIDE: f64 = 3.0;
 /// Simulation error, in units of the last place shown, that a figure may have.
 const UNITS_OF_ERROR: f64 = 1.5;
+/// From here on a rounded figure stands in the exponent form; nobody reads twenty digits.
+const LARGEST_PLAIN: f64 = 1e7;
+/// From here on a whole number does: counts up to here are told exactly.
+const LARGEST_WHOLE: f64 = 1e9;
+/// Below this too.
+const SMALLEST_PLAIN: f64 = 1e-4;
+/// Most decimals of the exponent form.
+const DECIMALS_OF_A_POWER: i32 = 3;
 /// No figure is told finer than this place.
 const FINEST_SHOWN: Place = -6;
 
@@ -25,8 +33,6 @@ pub struct Told {
     pub lower: String,
     /// Upper end of the interval.
     pub upper: String,
-    /// Last place of the estimate, as a power of ten.
-    pub place: i32,
 }
 
 /// An estimate, its interval, and the simulation error of each.
@@ -103,7 +109,6 @@ impl Measured {
             estimate: figure(self.estimate, places[0]),
             lower: figure(self.lower, places[1]),
             upper: figure(self.upper, places[2]),
-            place: places[0],
         }
     }
 }
@@ -114,18 +119,52 @@ impl Measured {
 pub fn figure(value: f64, place: i32) -> String {
     let unit = power_of_ten(place);
     if value > 0.0 && value < unit / 2.0 {
-        return format!("below {}", grouped(unit, place));
+        return format!("below {}", sized(unit, place));
     }
-    grouped(value, place)
+    sized(value, place)
 }
 
-/// A whole number (or one that is rounded to it), thousands set apart by commas.
+/// Rounded to a place: plain, or in the exponent form where that would be a row of zeros.
+fn sized(value: f64, place: Place) -> String {
+    let size = value.abs();
+    if size >= LARGEST_PLAIN || (size > 0.0 && size < SMALLEST_PLAIN) {
+        in_powers(value, place)
+    } else {
+        grouped(value, place)
+    }
+}
+
+/// The exponent form, rounded to a place: `3.9 × 10^46`.
+fn in_powers(value: f64, place: Place) -> String {
+    let Some(first) = place_at_or_below(value.abs()) else {
+        return grouped(value, place);
+    };
+    let decimals = (first - place).clamp(0, DECIMALS_OF_A_POWER) as usize;
+    let text = format!("{value:.decimals$e}");
+    match text.split_once('e') {
+        Some((digits, exponent)) => format!("{digits} × 10^{exponent}"),
+        None => text,
+    }
+}
+
+/// A whole number (or one that is rounded to it), thousands set apart by commas; in the exponent
+/// form from 10^9 on.
 pub fn whole(value: f64) -> String {
+    if value.abs() >= LARGEST_WHOLE {
+        return in_powers(value, 0);
+    }
     grouped(value, 0)
 }
 
 /// A plain number as a person would write it: all its digits, thousands set apart by commas.
 pub fn as_written(value: f64) -> String {
+    if value != 0.0 && !(1e-7..1e15).contains(&value.abs()) {
+        let text = format!("{value:e}");
+        return match text.split_once('e') {
+            Some((digits, exponent)) => format!("{digits} × 10^{exponent}"),
+            None => text,
+        };
+    }
     let text = format!("{value}");
     let (head, tail) = text.split_once('.').unwrap_or((&text, ""));
     // Four digits stand as they are: they may be a year.
@@ -147,16 +186,32 @@ pub fn level(interval: f64) -> String {
     format!("{} %", text.trim_end_matches('0').trim_end_matches('.'))
 }
 
-/// How much lower or higher a ratio is than 1, in words; `place` is the ratio's own last place.
-pub fn change_in_words(ratio: f64, place: i32) -> String {
+/// How much lower or higher than 1 a ratio is, in words, from the ratio as it is shown.
+///
+/// From the text and not from the value behind it: rounded on its own, a percentage contradicts the
+/// ratio beside it (0.78 shown as 0.8, and 22 % lower).
+pub fn change_in_words(shown: &str) -> String {
+    let (bound, digits) = match shown.strip_prefix("below ") {
+        Some(digits) => ("more than ", digits),
+        None => ("", shown),
+    };
+    let plain = digits.replace(',', "").replace(" × 10^", "e");
+    let Ok(ratio) = plain.parse::<f64>() else {
+        return format!("{shown} times as high");
+    };
     if ratio >= 2.0 {
-        return format!("{} times as high", figure(ratio, place));
+        return format!("{digits} times as high");
     }
-    let percent = grouped((ratio - 1.0).abs() * 100.0, place + 2);
+    if ratio < 0.001 {
+        return "more than 99.9 % lower".to_owned();
+    }
+    let decimals = plain.split_once('.').map_or(0, |(_, tail)| tail.len());
+    let percent = grouped((ratio - 1.0).abs() * 100.0, 2 - decimals.clamp(2, 8) as Place);
     if percent.chars().all(|c| c == '0' || c == '.') {
-        "about the same".to_owned()
+        // "below 1" says on which side, and no more.
+        if bound.is_empty() { "about the same" } else { "lower" }.to_owned()
     } else if ratio < 1.0 {
-        format!("{percent} % lower")
+        format!("{bound}{percent} % lower")
     } else {
         format!("{percent} % higher")
     }
@@ -166,10 +221,10 @@ pub fn change_in_words(ratio: f64, place: i32) -> String {
 /// count of draws can show, and to tens only where so few draws support no more.
 pub fn probability(probability: f64, effective_draws: f64) -> String {
     let error = (probability * (1.0 - probability) / effective_draws.max(1.0)).sqrt();
-    if probability > 0.995 {
+    if probability > 0.99 {
         return "above 99 %".to_owned();
     }
-    if probability < 0.005 {
+    if probability < 0.01 {
         return "below 1 %".to_owned();
     }
     if error > 0.01 {
@@ -205,7 +260,7 @@ fn place_at_or_below(value: f64) -> Option<Place> {
 /// The last place that a simulation error supports: the error is at most [`UNITS_OF_ERROR`] units
 /// of it. Far below everything shown where the error is 0.
 fn finest(error: f64) -> Place {
-    const FAR_BELOW: Place = -12;
+    const FAR_BELOW: Place = -300;
     match place_at_or_below(error) {
         None => FAR_BELOW,
         Some(place) if error <= UNITS_OF_ERROR * power_of_ten(place) => place,
@@ -304,11 +359,42 @@ mod tests {
 
     #[test]
     fn changes_read_as_words() {
-        assert_eq!(change_in_words(0.7612, -2), "24 % lower");
-        assert_eq!(change_in_words(1.0812, -2), "8 % higher");
-        assert_eq!(change_in_words(0.9981, -3), "0.2 % lower");
-        assert_eq!(change_in_words(0.9981, -2), "about the same");
-        assert_eq!(change_in_words(2.4671, -1), "2.5 times as high");
+        assert_eq!(change_in_words("0.76"), "24 % lower");
+        assert_eq!(change_in_words("1.08"), "8 % higher");
+        assert_eq!(change_in_words("0.998"), "0.2 % lower");
+        assert_eq!(change_in_words("1.00"), "about the same");
+        assert_eq!(change_in_words("2.5"), "2.5 times as high");
+        assert_eq!(change_in_words("1,900"), "1,900 times as high");
+        assert_eq!(change_in_words("0.8"), "20 % lower");
+        assert_eq!(change_in_words("1.9"), "90 % higher");
+        assert_eq!(change_in_words("below 0.01"), "more than 99 % lower");
+        assert_eq!(change_in_words("below 1"), "lower");
+    }
+
+    #[test]
+    fn no_percentage_says_more_than_can_be_said() {
+        assert_eq!(change_in_words("5.2 × 10^-13"), "more than 99.9 % lower");
+        assert_eq!(change_in_words("0.0002"), "more than 99.9 % lower");
+        assert_eq!(change_in_words("0.0010"), "99.90 % lower");
+        assert_eq!(change_in_words("3.9 × 10^46"), "3.9 × 10^46 times as high");
+    }
+
+    #[test]
+    fn an_extreme_figure_is_told_by_its_power_of_ten() {
+        assert_eq!(figure(3.9e46, 45), "3.9 × 10^46");
+        assert_eq!(figure(12_345_678.0, 5), "1.23 × 10^7");
+        assert_eq!(figure(9_345_678.0, 5), "9,300,000");
+        assert_eq!(figure(5.177e-13, -14), "5.2 × 10^-13");
+        assert_eq!(figure(1e-30, -6), "below 1 × 10^-6");
+        assert_eq!(figure(0.00012, -5), "0.00012");
+        assert_eq!(roughly(5.177e-13), "5.2 × 10^-13");
+        assert_eq!(whole(38_999_999.0), "38,999,999");
+        assert_eq!(whole(39_000_000_000_000_000_000.0), "3.900 × 10^19");
+        assert_eq!(as_written(1e300), "1 × 10^300");
+        assert_eq!(
+            told(1e-12, 1e-13, 3e46, 0.0),
+            "1.0 × 10^-12 (1.0 × 10^-13 to 3.0 × 10^46)"
+        );
     }
 
     #[test]
@@ -316,6 +402,11 @@ mod tests {
         assert_eq!(probability(1.0, 1e4), "above 99 %");
         assert_eq!(probability(0.0, 1e4), "below 1 %");
         assert_eq!(probability(0.987, 1e4), "99 %");
+        assert_eq!(probability(0.005, 1e5), "below 1 %");
+        assert_eq!(probability(0.0099, 1e5), "below 1 %");
+        assert_eq!(probability(0.01, 1e5), "1 %");
+        assert_eq!(probability(0.99, 1e5), "99 %");
+        assert_eq!(probability(0.9901, 1e5), "above 99 %");
         assert_eq!(probability(0.5, 400.0), "about 50 %");
         assert_eq!(probability(0.98, 100.0), "above 90 %");
     }

@@ -6,7 +6,7 @@
 //! where"), never of cause.
 
 use crate::answer::meaning::{Meaning, Part};
-use crate::answer::number::{Measured, as_written, change_in_words, level, probability};
+use crate::answer::number::{Measured, Told, as_written, change_in_words, level, probability};
 
 /// The figures that a sentence tells, on the scale that it tells them on.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -91,11 +91,11 @@ fn alone(part: &Part, while_at: &[String], incidents: &str, others: Others, evid
         Verdict::Open => format!(
             "The data do not settle whether the rate of {incidents} is lower or higher {circumstance}{compared}: \
              {figures}, {}. {}",
-            still_possible(evidence, told.place),
+            still_possible(&told),
             evidence.chance(verdict)
         ),
         Verdict::Lower | Verdict::Higher => {
-            let change = change_in_words(evidence.measured.estimate, told.place);
+            let change = change_in_words(&told.estimate);
             let compared = match (change.as_str(), part) {
                 // "2.5 times as high than" is no English.
                 (change, Part::Level { reference, .. }) if change.ends_with("as high") => {
@@ -134,11 +134,11 @@ fn joint(first: &Part, second: &Part, incidents: &str, evidence: &Evidence) -> S
         Verdict::Open => format!(
             "The data do not settle whether {subject} is lower or higher {circumstance}{}: {figures}, {}. {}",
             second.compared_with(),
-            still_possible(evidence, told.place),
+            still_possible(&told),
             evidence.chance(verdict)
         ),
         Verdict::Lower | Verdict::Higher => {
-            let change = change_in_words(evidence.measured.estimate, told.place);
+            let change = change_in_words(&told.estimate);
             let compared = match second {
                 Part::Level { reference, .. } if change.contains(" as high") || change.starts_with("about") => {
                     format!(" as where it is {reference}")
@@ -155,9 +155,8 @@ fn joint(first: &Part, second: &Part, incidents: &str, evidence: &Evidence) -> S
 }
 
 /// What an interval around 1 leaves open: `from 29 % lower to 21 % higher`.
-fn still_possible(evidence: &Evidence, place: i32) -> String {
-    let lower = change_in_words(evidence.measured.lower, place.min(-2));
-    let upper = change_in_words(evidence.measured.upper, place.min(-1));
+fn still_possible(told: &Told) -> String {
+    let (lower, upper) = (change_in_words(&told.lower), change_in_words(&told.upper));
     format!("anything from {lower} to {upper}")
 }
 
@@ -262,7 +261,7 @@ mod tests {
         assert_eq!(
             told,
             "Where decking is grooved, the rate of falls is 24 % lower than where it is plain: rate ratio 0.76 \
-             (95 % interval 0.61 to 0.94). The probability that it is lower is 99 %."
+             (95 % interval 0.61 to 0.94). The probability that it is lower is above 99 %."
         );
     }
 
@@ -276,7 +275,7 @@ mod tests {
         );
         assert_eq!(
             told,
-            "With each 2 more in slope_deg, the rate of falls is 21 % higher: rate ratio 1.21 (95 % interval 1.07 to \
+            "For each 2 more in slope_deg, the rate of falls is 21 % higher: rate ratio 1.21 (95 % interval 1.07 to \
              1.36). The probability that it is higher is above 99 %. The other columns of the model are held the same."
         );
     }
@@ -308,6 +307,18 @@ mod tests {
             "The data do not settle whether the rate of falls is lower or higher where decking is grooved than where \
              it is plain: rate ratio 0.93 (95 % interval 0.71 to 1.21), anything from 29 % lower to 21 % higher. The \
              probability that it is lower is 71 %."
+        );
+    }
+
+    #[test]
+    fn percentages_agree_with_the_ratios_beside_them() {
+        let mut rough = evidence(1.21, 0.781, 1.904, 0.3);
+        rough.measured.error_of_lower = 0.03;
+        rough.measured.error_of_upper = 0.03;
+        let told = ratio_sentence(&alone(grooved()), "falls", Others::None, &rough);
+        assert!(
+            told.contains("rate ratio 1.2 (95 % interval 0.8 to 1.9), anything from 20 % lower to 90 % higher."),
+            "{told}"
         );
     }
 
@@ -344,7 +355,7 @@ mod tests {
         );
         assert_eq!(
             told,
-            "With each 2 more in slope_deg, the rate ratio of falls for decking grooved against plain is 18 % lower: \
+            "For each 2 more in slope_deg, the rate ratio of falls for decking grooved against plain is 18 % lower: \
              factor 0.82 (95 % interval 0.71 to 0.94). The probability that it is lower is 99 %."
         );
     }

@@ -74,6 +74,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> ExitCode {
 }
 
 fn dispatch(command: &Command) -> Result<Outcome, Error> {
+    interrupt::let_large_writes_fail()?;
     match command {
         Command::Fit(arguments) => fit::run(arguments),
         Command::Vet(arguments) => vet::run(arguments),

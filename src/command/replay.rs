@@ -8,7 +8,7 @@ use crate::error::Error;
 use crate::output::files::{self, RunContent};
 use crate::output::replaying::{self, Rows};
 use crate::output::shown::Audience;
-use crate::output::{OutputError, Replace, RunFolder, parquet, run_folder};
+use crate::output::{OutputError, Replace, RunFolder, consistency, parquet, run_folder};
 use crate::{design, spec};
 use clap::Args;
 use std::num::NonZeroUsize;
@@ -48,6 +48,7 @@ pub fn run(arguments: &ReplayArgs) -> Result<Outcome, Error> {
     }
 
     let spec = spec::read(&run.join("spec.toml"))?;
+    consistency::check(run, &manifest, &spec)?;
     let (table, source) = match &arguments.data {
         Some(path) => {
             let (table, fact) = read_table(path)?;
@@ -82,11 +83,7 @@ pub fn run(arguments: &ReplayArgs) -> Result<Outcome, Error> {
         coding: &design.coding,
         draws: &concluded.draws,
         findings: &concluded.findings,
-        audience: if manifest.settings.whole {
-            Audience::Whole
-        } else {
-            Audience::of_study(&concluded.findings.study)
-        },
+        audience: Audience::of_run(&manifest.settings),
     };
     let now = files::write(&folder, &content)?;
     interrupt.check()?;

@@ -25,19 +25,24 @@ pub fn first_difference(first: &Path, second: &Path, file: &str) -> Result<Optio
         std::fs::read(&path).map_err(OutputError::read(&path))
     };
     let (a, b) = (read(first)?, read(second)?);
+    let (first_size, second_size) = (a.len(), b.len());
     if a == b {
         return Ok(None);
     }
     let found = match Path::new(file).extension().and_then(|extension| extension.to_str()) {
         Some("json") => of_json(&a, &b),
         Some("csv") => of_csv(&a, &b),
-        // A file that was altered may be no Parquet any more: then only the bytes differ.
         Some("parquet") => match (
             parquet::read_all(&first.join(file)),
             parquet::read_all(&second.join(file)),
         ) {
             (Ok(a), Ok(b)) => of_columns(&a, &b),
-            _ => None,
+            // A file that was emptied, cut or written over is no Parquet any more.
+            (a, b) => Some(Difference {
+                place: "the file as a whole".to_owned(),
+                first: Some(as_a_whole(a.ok(), first_size)),
+                second: Some(as_a_whole(b.ok(), second_size)),
+            }),
         },
         _ => of_lines(&a, &b),
     };
@@ -46,6 +51,19 @@ pub fn first_difference(first: &Path, second: &Path, file: &str) -> Result<Optio
         first: None,
         second: None,
     })))
+}
+
+/// What can be said of a Parquet file of `size` bytes that is not compared cell by cell.
+fn as_a_whole(columns: Option<Vec<parquet::Compared>>, size: usize) -> String {
+    match columns {
+        None if size == 0 => "it is empty, and cannot be read as Parquet".to_owned(),
+        None => format!("its {size} bytes cannot be read as Parquet"),
+        Some(columns) => format!(
+            "{} columns of {} rows",
+            columns.len(),
+            columns.first().map_or(0, |column| column.cells.len())
+        ),
+    }
 }
 
 /// The first difference of two JSON values, in the order of the first.

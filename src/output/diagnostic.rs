@@ -10,6 +10,7 @@ use annotate_snippets::{AnnotationKind, Group, Level, Renderer, Snippet};
 use anstyle::{Effects, Style};
 
 use crate::diagnostic::{Diagnostic, Place};
+use crate::output::text::is_unseen;
 use crate::spec::Source;
 
 /// Columns that text of ours is wrapped to.
@@ -186,7 +187,7 @@ fn shortened(text: &str) -> String {
 fn clean(text: &str) -> String {
     let mut out = String::with_capacity(text.len());
     for letter in text.chars() {
-        if letter.is_control() {
+        if is_unseen(letter) {
             out.extend(letter.escape_default());
         } else {
             out.push(letter);

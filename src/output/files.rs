@@ -61,6 +61,12 @@ pub fn write(folder: &RunFolder, content: &RunContent) -> Result<Manifest, Outpu
     put("rate_ratios.csv", tables::rate_ratios(findings)?.as_bytes())?;
     put("units.csv", tables::units(findings, content.audience)?.as_bytes())?;
     put("findings.json", json::text("findings.json", findings)?.as_bytes())?;
+    debug_assert!(
+        outputs
+            .iter()
+            .map(|output: &FileFact| output.file.as_str())
+            .eq(manifest::HASHED)
+    );
     let manifest = Manifest {
         ratewright: env!("CARGO_PKG_VERSION").to_owned(),
         layouts: Layouts::CURRENT,

@@ -153,6 +153,16 @@ pub enum StopReason {
     MostDraws,
 }
 
+impl StopReason {
+    /// As files spell it.
+    pub fn word(self) -> &'static str {
+        match self {
+            StopReason::PrecisionMet => "precision-met",
+            StopReason::MostDraws => "most-draws",
+        }
+    }
+}
+
 /// The mode and its Laplace approximation.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]

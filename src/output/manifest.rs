@@ -16,6 +16,18 @@ use std::path::Path;
 /// Name of the manifest in a run.
 pub const FILE: &str = "manifest.json";
 
+/// Every hashed file of a run, in the order that they are written in: no run holds fewer or others.
+pub const HASHED: [&str; 8] = [
+    "spec.toml",
+    "rows.parquet",
+    "coding.json",
+    "draws.parquet",
+    "coefficients.csv",
+    "rate_ratios.csv",
+    "units.csv",
+    "findings.json",
+];
+
 /// The manifest.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
@@ -34,7 +46,7 @@ pub struct Manifest {
     pub settings: Settings,
     /// What happened to the rows of the data file: `rows.parquet` holds only those that were used.
     pub audit: Audit,
-    /// Every hashed file of the run, in the order that they were written in.
+    /// The files that [`HASHED`] names, in its order.
     pub outputs: Vec<FileFact>,
 }
 
@@ -128,7 +140,8 @@ impl Manifest {
     /// Reads a run's manifest.
     ///
     /// # Errors
-    /// The folder is no run, its manifest is damaged, or another version's layout stands in it.
+    /// The folder is no run, its manifest is damaged (entries of hashed files are missing, unknown or
+    /// out of order included), or another version's layout stands in it.
     pub fn read(run: &Path) -> Result<Manifest, OutputError> {
         let path = run.join(FILE);
         let text = match std::fs::read_to_string(&path) {
@@ -162,7 +175,24 @@ impl Manifest {
                 left_by: left_by.to_owned(),
             });
         }
-        serde_json::from_value(value).map_err(damaged)
+        let manifest: Manifest = serde_json::from_value(value).map_err(damaged)?;
+        // With entries taken out, a replay would compare nothing and agree.
+        let named: Vec<&str> = manifest.outputs.iter().map(|output| output.file.as_str()).collect();
+        if named != HASHED {
+            return Err(OutputError::Damaged {
+                path,
+                because: format!(
+                    "it has to name these hashed files, in this order: {}; it names {}",
+                    HASHED.join(", "),
+                    if named.is_empty() {
+                        "none".to_owned()
+                    } else {
+                        named.join(", ")
+                    }
+                ),
+            });
+        }
+        Ok(manifest)
     }
 
     /// The manifest as the text of its file.

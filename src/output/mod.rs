@@ -1,6 +1,7 @@
 //! Takes all that a fit found; gives the run folder, terminal text, JSON, CSV and Parquet.
 
 pub mod compare;
+pub mod consistency;
 pub mod diagnostic;
 mod error;
 pub mod files;
@@ -13,6 +14,7 @@ pub mod replaying;
 pub mod run_folder;
 mod schema;
 pub mod shown;
+pub mod soundness;
 pub mod tables;
 pub mod terminal;
 mod text;

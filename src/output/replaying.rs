@@ -33,7 +33,11 @@ pub enum Cause {
         /// That version.
         then: String,
     },
-    /// None of the above.
+    /// A file was altered and its hash in the manifest with it.
+    AlteredWithHash,
+    /// None of the above: the replay started from the run's own rows.
+    UnknownFromOwnRows,
+    /// None of the above: the replay started from the very data file of the run.
     Unknown,
 }
 
@@ -91,10 +95,11 @@ pub fn first_mismatch(
         return Ok(Some(Mismatch {
             file: output.file.clone(),
             difference,
-            cause: if is_whole {
-                cause(then, now, rows)
-            } else {
-                Cause::Altered
+            cause: match cause(then, now, rows) {
+                _ if !is_whole => Cause::Altered,
+                // Spec, rows and version are the run's, and no arithmetic lies between the rows read and written.
+                Cause::Unknown | Cause::UnknownFromOwnRows if output.file == "rows.parquet" => Cause::AlteredWithHash,
+                known => known,
             },
         }));
     }
@@ -104,7 +109,7 @@ pub fn first_mismatch(
             difference: Some(difference),
             cause: match cause(then, now, rows) {
                 // With every file the same, only the manifest itself can have been changed.
-                Cause::Unknown => Cause::Altered,
+                Cause::Unknown | Cause::UnknownFromOwnRows => Cause::Altered,
                 known => known,
             },
         }),
@@ -120,7 +125,8 @@ fn cause(then: &Manifest, now: &Manifest, rows: &Rows) -> Cause {
         _ if then.ratewright != now.ratewright => Cause::OtherVersion {
             then: then.ratewright.clone(),
         },
-        _ => Cause::Unknown,
+        Rows::OfTheRun => Cause::UnknownFromOwnRows,
+        Rows::OfFile(_) => Cause::Unknown,
     }
 }
 
@@ -184,6 +190,13 @@ pub fn disagreement(mismatch: &Mismatch) -> String {
         Cause::OtherVersion { then } => format!(
             "version {then} left the run, and this is version {}",
             env!("CARGO_PKG_VERSION")
+        ),
+        Cause::AlteredWithHash => format!("{file} and its hash in {} were altered after the run", manifest::FILE),
+        Cause::UnknownFromOwnRows => format!(
+            "not certain. Either {file}, spec.toml or rows.parquet was altered after the run and its hash in {} with \
+             it, or this processor gives other figures. A replay from the data file (--data FILE) tells an altered \
+             rows.parquet",
+            manifest::FILE
         ),
         Cause::Unknown => "unknown: spec, data and version are those of the run. Please report it, with the processor \
                            of both machines"

@@ -27,6 +27,7 @@ pub fn coefficients(findings: &Findings) -> Result<String, OutputError> {
             "split_r_hat",
             "laplace_mean",
             "laplace_sd",
+            "stopped",
         ],
     );
     for c in &findings.coefficients {
@@ -45,6 +46,7 @@ pub fn coefficients(findings: &Findings) -> Result<String, OutputError> {
             c.split_r_hat.map_or(Cell::Absent, Cell::Number),
             Cell::Number(c.laplace_mean),
             Cell::Number(c.laplace_sd),
+            Cell::Text(findings.sampling.stopped.word()),
         ])?;
     }
     Ok(table.text)
@@ -54,7 +56,15 @@ pub fn coefficients(findings: &Findings) -> Result<String, OutputError> {
 pub fn rate_ratios(findings: &Findings) -> Result<String, OutputError> {
     let mut table = Sheet::new(
         "rate_ratios.csv",
-        &["term", "change", "rate_ratio", "lower", "upper", "prob_below_one"],
+        &[
+            "term",
+            "change",
+            "rate_ratio",
+            "lower",
+            "upper",
+            "prob_below_one",
+            "stopped",
+        ],
     );
     for r in &findings.rate_ratios {
         table.row(&[
@@ -64,6 +74,7 @@ pub fn rate_ratios(findings: &Findings) -> Result<String, OutputError> {
             Cell::Number(r.lower),
             Cell::Number(r.upper),
             Cell::Number(r.prob_below_one),
+            Cell::Text(findings.sampling.stopped.word()),
         ])?;
     }
     Ok(table.text)
@@ -86,17 +97,24 @@ pub fn units(findings: &Findings, audience: Audience) -> Result<String, OutputEr
             "state",
         ],
     );
-    for u in &findings.units.units {
-        let (from, to, tail, state) = match audience.observed(u) {
-            Observed::Count(count) => (count, count, Cell::Number(u.tail_probability), state_word(u.state)),
-            Observed::Hidden { from, to } => (from as f64, to as f64, Cell::Absent, "hidden"),
+    let units = &findings.units.units;
+    for (u, shown) in units.iter().zip(audience.observed(units)) {
+        let ends = |from: f64, to: f64| (Cell::Number(from), Cell::Number(to));
+        let ((from, to), tail, state) = match shown {
+            Observed::Count(count) => (
+                ends(count, count),
+                Cell::Number(u.tail_probability),
+                state_word(u.state),
+            ),
+            Observed::Hidden { from, to } => (ends(from as f64, to as f64), Cell::Absent, "hidden"),
+            Observed::HiddenToo => ((Cell::Absent, Cell::Absent), Cell::Absent, "hidden"),
         };
         table.row(&[
             Cell::Text(&u.unit),
             Cell::Number(u.rows),
             Cell::Number(u.exposure),
-            Cell::Number(from),
-            Cell::Number(to),
+            from,
+            to,
             Cell::Number(u.expected),
             Cell::Number(u.lower),
             Cell::Number(u.upper),
@@ -142,6 +160,20 @@ pub fn harmless(text: &str) -> String {
     }
 }
 
+/// Text without control characters other than tabs and line breaks, which a quoted cell may hold: the
+/// others are written out (`\u{1b}`), since a table is often looked at in a terminal.
+fn without_controls(text: &str) -> String {
+    let mut out = String::with_capacity(text.len());
+    for c in text.chars() {
+        if c.is_control() && !matches!(c, '\t' | '\n' | '\r') {
+            out.extend(c.escape_unicode());
+        } else {
+            out.push(c);
+        }
+    }
+    out
+}
+
 /// One cell.
 enum Cell<'a> {
     /// Text.
@@ -173,7 +205,7 @@ impl<'a> Sheet<'a> {
             }
             match cell {
                 Cell::Absent => {}
-                Cell::Text(text) => self.text.push_str(&quoted(&harmless(text))),
+                Cell::Text(text) => self.text.push_str(&quoted(&harmless(&without_controls(text)))),
                 Cell::Number(value) if value.is_finite() => self.text.push_str(&number(*value)),
                 Cell::Number(_) => {
                     return Err(OutputError::NotFinite {
@@ -193,7 +225,7 @@ impl<'a> Sheet<'a> {
 
 /// In quotation marks where the comma form needs them (RFC 4180).
 fn quoted(text: &str) -> String {
-    if text.contains([',', '"', '\n', '\r']) {
+    if text.contains([',', '"', '\n', '\r', '\t']) {
         format!("\"{}\"", text.replace('"', "\"\""))
     } else {
         text.to_owned()
@@ -211,6 +243,12 @@ mod tests {
         assert_eq!(harmless("\tx"), "'\tx");
         assert_eq!(harmless("a=b"), "a=b");
         assert_eq!(number(-1.5), "-1.5");
+    }
+
+    #[test]
+    fn controls_are_written_out_but_for_tabs_and_line_breaks() {
+        assert_eq!(without_controls("a\u{1b}[2J\u{9b}b\u{0}"), "a\\u{1b}[2J\\u{9b}b\\u{0}");
+        assert_eq!(quoted(&without_controls("a\tb\r\n")), "\"a\tb\r\n\"");
     }
 
     #[test]

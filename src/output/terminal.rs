@@ -8,7 +8,8 @@ use crate::design::Audit;
 use crate::output::findings::{CoefficientFinding, Findings, SamplingFinding, StopReason};
 use crate::output::gather::NOTE_ON_UNITS;
 use crate::output::shown::{Audience, Observed};
-use crate::output::text::{Align, Line, Page, name, shell_word};
+use crate::output::soundness::failed_limits;
+use crate::output::text::{Align, Line, Page, shell_word};
 use std::path::Path;
 
 /// Most units outside that are listed; `units.csv` has them all.
@@ -34,11 +35,15 @@ pub fn findings(findings: &Findings, audience: Audience, run: &Path) -> String {
 
 fn the_answer(page: &mut Page, findings: &Findings) {
     page.heading("The answer");
+    not_precise_enough(page, findings);
     page.paragraph(&findings.answer.sentence);
-    if findings.sampling.stopped == StopReason::MostDraws {
-        page.paragraph(
-            "Sampling stopped before the precision asked for was met: see \"The simulation\" below before using this.",
-        );
+}
+
+/// Stands before every block of estimates of a simulation that failed a limit.
+fn not_precise_enough(page: &mut Page, findings: &Findings) {
+    let failed = failed_limits(&findings.sampling);
+    if !failed.is_empty() {
+        page.paragraph(&format!("NOT PRECISE ENOUGH TO REPORT: {}.", failed.join("; ")));
     }
 }
 
@@ -47,6 +52,7 @@ fn rate_ratios(page: &mut Page, findings: &Findings) {
         return;
     }
     page.heading("Rate ratios");
+    not_precise_enough(page, findings);
     let interval = format!("{} interval", level(findings.study.interval));
     let header = [
         ("term", Align::Left),
@@ -61,7 +67,7 @@ fn rate_ratios(page: &mut Page, findings: &Findings) {
         };
         let told = measured(coefficient).exp_times(1.0).told_apart_from_one();
         lines.push(Line::Cells(vec![
-            name(&ratio.term),
+            ratio.term.clone(),
             told.estimate,
             format!("{} to {}", told.lower, told.upper),
             probability(ratio.prob_below_one, coefficient.effective_draws),
@@ -82,6 +88,7 @@ fn rate_and_scatter(page: &mut Page, findings: &Findings) {
     let baseline = parameter(findings, "baseline").filter(|baseline| findings.answer.term != baseline.term);
     if baseline.is_some() || scatter.is_some() {
         page.heading("The rate itself");
+        not_precise_enough(page, findings);
     }
     if let Some(baseline) = baseline {
         let evidence = answer::Evidence {
@@ -114,38 +121,49 @@ fn rate_and_scatter(page: &mut Page, findings: &Findings) {
 fn units(page: &mut Page, findings: &Findings, audience: Audience) {
     let check = &findings.units;
     page.heading("Does each count fit the model?");
-    let judged = |wanted: Option<bool>| {
-        check
-            .units
-            .iter()
-            .filter(|unit| audience.is_outside(unit) == wanted)
-            .count()
-    };
-    let outside = judged(Some(true));
-    let not_judged = match judged(None) {
-        0 => String::new(),
-        units => format!(" ({} with small counts left open)", whole(units as f64)),
-    };
-    page.paragraph(&format!(
-        "Of {} (column {}), {} outside the {} interval that the model predicts{not_judged}; if the model \
-         were right, about {} would by chance.",
-        if check.units.len() == 1 {
-            "1 unit".to_owned()
-        } else {
-            format!("{} units", whole(check.units.len() as f64))
-        },
-        findings.study.unit_column,
-        match outside {
-            0 => "none lies".to_owned(),
-            1 => "1 lies".to_owned(),
-            more => format!("{} lie", whole(more as f64)),
-        },
-        level(findings.study.interval),
-        roughly(check.outside_by_chance)
-    ));
+    let shown = audience.observed(&check.units);
+    let judged: Vec<bool> = check
+        .units
+        .iter()
+        .zip(&shown)
+        .filter_map(|(unit, shown)| shown.is_outside(unit))
+        .collect();
+    let outside = judged.iter().filter(|&&outside| outside).count();
+    let interval = level(findings.study.interval);
+    let all = check.units.len();
+    let left_out = all - judged.len();
+    if left_out == 0 {
+        page.paragraph(&format!(
+            "Of {} (column {}), {} outside the {interval} interval that the model predicts. If the model were right, \
+             about {} would by chance.",
+            counted(all, "unit"),
+            findings.study.unit_column,
+            lying(outside),
+            roughly(check.outside_by_chance)
+        ));
+    } else {
+        page.paragraph(&format!(
+            "Of {} (column {}), {} judged here, and of those {} outside the {interval} interval that the model \
+             predicts. The other {} left out of this so that no small count can be worked out. If the model were \
+             right, about {} of all {} would lie outside by chance.",
+            counted(all, "unit"),
+            findings.study.unit_column,
+            be(judged.len()),
+            lying(outside),
+            be(left_out),
+            roughly(check.outside_by_chance),
+            whole(all as f64)
+        ));
+    }
 
-    let is_shown = |unit: &&UnitCheck| matches!(audience.observed(unit), Observed::Count(_));
-    let mut by_tail: Vec<&UnitCheck> = check.units.iter().filter(is_shown).collect();
+    let mut by_tail: Vec<&UnitCheck> = check
+        .units
+        .iter()
+        .zip(&shown)
+        .filter(|(_, shown)| matches!(shown, Observed::Count(_)))
+        .map(|(unit, _)| unit)
+        .collect();
+    let hidden = all - by_tail.len();
     let nearness = |unit: &UnitCheck| unit.tail_probability.min(1.0 - unit.tail_probability);
     by_tail.sort_by(|a, b| nearness(a).total_cmp(&nearness(b)));
     let (inside, outside): (Vec<&UnitCheck>, Vec<&UnitCheck>) =
@@ -175,12 +193,15 @@ fn units(page: &mut Page, findings: &Findings, audience: Audience) {
             whole((outside.len() - OUTSIDE_SHOWN) as f64)
         ));
     }
-    let hidden = check.units.len() - check.units.iter().filter(is_shown).count();
     if hidden > 0 {
+        let second = if shown.contains(&Observed::HiddenToo) {
+            " Only one is so small: the other is left out so that the first does not follow from a total."
+        } else {
+            ""
+        };
         page.paragraph(&format!(
-            "{} of the units {} not named here or judged one by one: a count below {} could identify a person.",
-            whole(hidden as f64),
-            if hidden == 1 { "is" } else { "are" },
+            "Not named here or judged one by one: {}, since a count below {} could identify a person.{second}",
+            counted(hidden, "unit"),
             findings.study.hide_counts_below
         ));
     }
@@ -196,7 +217,7 @@ fn unit_line(unit: &UnitCheck) -> Line {
         UnitState::Inside => "inside",
     };
     Line::Cells(vec![
-        name(&unit.unit),
+        unit.unit.clone(),
         whole(unit.observed),
         if unit.expected < 100.0 {
             figure(unit.expected, -1)
@@ -211,11 +232,11 @@ fn unit_line(unit: &UnitCheck) -> Line {
 /// What happened to the rows of the file.
 pub(super) fn rows(page: &mut Page, audit: &Audit) {
     page.heading("The rows");
-    page.paragraph(&format!(
-        "{} of the {} rows of the file are used.",
-        whole(audit.rows_used as f64),
-        whole(audit.rows_read as f64)
-    ));
+    page.paragraph(&match (audit.rows_used, audit.rows_read) {
+        (1, 1) => "The one row of the file is used.".to_owned(),
+        (used, read) if used == read => format!("All {} rows of the file are used.", whole(read as f64)),
+        (used, read) => format!("Of the {} of the file, {} used.", counted(read, "row"), be(used)),
+    });
     if audit.rows_not_kept > 0 {
         let rows = audit.rows_not_kept;
         page.paragraph(&format!("{} {} left out by keep.", whole(rows as f64), was(rows)));
@@ -248,6 +269,13 @@ fn simulation(page: &mut Page, findings: &Findings) {
              figures above show only digits that the simulation supports; raise most_draws for more."
         ),
     });
+    let failed = failed_limits(s);
+    if !failed.is_empty() {
+        page.paragraph("What failed:");
+        for limit in &failed {
+            page.item(&format!("{limit}."));
+        }
+    }
     page.paragraph(&errors_in_words(s));
     let r_hat = match s.largest_r_hat {
         Some(r_hat) => format!(
@@ -304,6 +332,32 @@ fn the_run(page: &mut Page, run: &Path) {
     page.verbatim(&run.display().to_string());
     page.paragraph("To repeat it to the last digit:");
     page.verbatim(&format!("ratewright replay {}", shell_word(run)));
+}
+
+/// `1 unit`, `1,200 units`.
+fn counted(number: usize, noun: &str) -> String {
+    match number {
+        1 => format!("1 {noun}"),
+        more => format!("{} {noun}s", whole(more as f64)),
+    }
+}
+
+/// `1 is`, `1,200 are`, `none is`.
+fn be(number: usize) -> String {
+    match number {
+        0 => "none is".to_owned(),
+        1 => "1 is".to_owned(),
+        more => format!("{} are", whole(more as f64)),
+    }
+}
+
+/// `1 lies`, `3 lie`, `none lies`.
+fn lying(number: usize) -> String {
+    match number {
+        0 => "none lies".to_owned(),
+        1 => "1 lies".to_owned(),
+        more => format!("{} lie", whole(more as f64)),
+    }
 }
 
 /// `was` for one, `were` for any other number.

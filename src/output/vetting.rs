@@ -5,7 +5,7 @@ use crate::check::{PriorLook, PriorRange, PriorState};
 use crate::design::Audit;
 use crate::output::findings::Note;
 use crate::output::terminal;
-use crate::output::text::{Align, Line, Page, name};
+use crate::output::text::{Align, Line, Page};
 use serde::Serialize;
 
 /// All that `vet` found; what `vet --json` prints.
@@ -41,8 +41,12 @@ pub fn text(vetting: &Vetting) -> String {
     );
     terminal::rows(&mut page, &vetting.data);
     page.paragraph(&format!(
-        "They belong to {} units (column {}).",
-        whole(vetting.data.units as f64),
+        "{} (column {}).",
+        match (vetting.data.rows_used, vetting.data.units) {
+            (1, _) => "It is the one unit".to_owned(),
+            (_, 1) => "They belong to one unit".to_owned(),
+            (_, units) => format!("They belong to {} units", whole(units as f64)),
+        },
         vetting.unit_column
     ));
     if !vetting.remarks.is_empty() {
@@ -93,7 +97,7 @@ fn ranges(page: &mut Page, vetting: &Vetting) {
     )];
     lines.push(cells("rate over all rows".to_owned(), &prior.expected_rate));
     for ratio in &prior.rate_ratios {
-        lines.push(cells(format!("rate ratio, {}", name(&ratio.term)), &ratio.ratio));
+        lines.push(cells(format!("rate ratio, {}", ratio.term), &ratio.ratio));
         lines.push(Line::Words(ratio.change.clone()));
     }
     page.table(&header, &lines);

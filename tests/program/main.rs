@@ -13,5 +13,6 @@ mod docs;
 mod findings_schema;
 mod findings_text;
 mod prior_look;
+mod replays;
 mod run_folder;
 mod stand_in;
