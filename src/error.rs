@@ -44,8 +44,9 @@ impl Error {
         match self {
             Error::Spec(_) | Error::Table(_) | Error::Design { .. } | Error::Draft(_) => 2,
             Error::Fit(FitError::Stopped) | Error::Interrupted => 130,
-            Error::Fit(FitError::NotDetermined { .. } | FitError::NoStart | FitError::NoCovariance) => 2,
-            Error::Fit(FitError::StepLimit) | Error::Stdout(_) | Error::NoInterrupt(_) => 1,
+            // What cannot be fitted is a matter of spec and data.
+            Error::Fit(_) => 2,
+            Error::Stdout(_) | Error::NoInterrupt(_) => 1,
             Error::Output(error) => error.exit_code(),
         }
     }
@@ -61,9 +62,9 @@ impl Error {
             Error::Fit(FitError::Stopped) | Error::Interrupted => Vec::new(),
             Error::Fit(error) => vec![Diagnostic::new(
                 fit_code(error),
-                "the model could not be fitted",
-                Vec::new(),
                 error.to_string(),
+                Vec::new(),
+                error.help(),
             )],
             Error::Stdout(error) => vec![Diagnostic::new(
                 "stdout",
@@ -96,6 +97,7 @@ fn fit_code(error: &FitError) -> &'static str {
         FitError::NoStart => "no-start",
         FitError::StepLimit => "step-limit",
         FitError::NoCovariance => "no-covariance",
+        FitError::NeverMoved { .. } => "never-moved",
         FitError::Stopped => "stopped",
     }
 }

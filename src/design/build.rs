@@ -42,6 +42,9 @@ fn refused(spec: &Spec, table: &Table, faults: Vec<DesignFault>) -> DesignError 
     }
 }
 
+/// More coefficients than this are a mistake in the spec: a name taken for a category.
+pub(super) const MOST_COEFFICIENTS: usize = 1_000;
+
 fn assemble(spec: &Spec, table: &Table, faults: &mut Vec<DesignFault>) -> Option<Design> {
     rows::missing_columns(spec, table, faults);
     let chosen = rows::choose(spec, table, faults);
@@ -167,6 +170,13 @@ fn coding_of(spec: &Spec, used: &Rows, faults: &mut Vec<DesignFault>) -> Option<
         joints,
         terms: Vec::new(),
     };
+    // Before anything is made for each term: two categories of a thousand levels and their joint term
+    // would be a million columns, from a file of twenty kilobytes.
+    let coefficients = coding.coefficients();
+    if coefficients > MOST_COEFFICIENTS {
+        faults.push(DesignFault::TooManyTerms { coefficients });
+        return None;
+    }
     coding.terms = coding.names_and_changes().into_iter().map(|(name, _)| name).collect();
     Some((coding, all_values))
 }

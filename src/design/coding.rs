@@ -100,6 +100,17 @@ impl Coding {
         Ok(columns)
     }
 
+    /// Number of coefficients: the baseline and the coded columns.
+    pub fn coefficients(&self) -> usize {
+        let of = |covariate: &CovariateCoding| match &covariate.coding {
+            ColumnCoding::Category { levels, .. } => levels.len(),
+            ColumnCoding::Number { .. } | ColumnCoding::LogNumber { .. } => 1,
+        };
+        let single: usize = self.covariates.iter().map(of).sum();
+        let joint = |[first, second]: &[usize; 2]| of(&self.covariates[*first]) * of(&self.covariates[*second]);
+        1 + single + self.joints.iter().map(joint).sum::<usize>()
+    }
+
     /// For each coded column its name and the change that its rate ratio stands for, in words:
     /// those of each covariate in order, then those of each joint term.
     pub fn names_and_changes(&self) -> Vec<(String, String)> {

@@ -97,6 +97,11 @@ pub enum DesignFault {
         /// Coefficients: the terms and the baseline.
         coefficients: usize,
     },
+    /// More coefficients than a study can mean.
+    TooManyTerms {
+        /// Coefficients: the terms and the baseline.
+        coefficients: usize,
+    },
     /// Terms that the other terms determine.
     Collinear {
         /// Each such term.

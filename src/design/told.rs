@@ -1,5 +1,6 @@
 //! The faults of a design in words.
 
+use super::build::MOST_COEFFICIENTS;
 use super::cell_rule::BadCell;
 use super::fault::{CollinearTerm, DesignError, DesignFault, LevelRole, MissingColumn, UnknownLevel};
 use crate::diagnostic::{Diagnostic, PLACES_SHOWN, Place};
@@ -112,6 +113,16 @@ impl DesignError {
                     file: self.table_file.clone(),
                 }],
                 "take covariates out or merge levels until the rows are well above the coefficients",
+            ),
+            DesignFault::TooManyTerms { coefficients } => Diagnostic::new(
+                "too-many-terms",
+                format!(
+                    "the spec asks for {coefficients} coefficients (the baseline and its terms), and {MOST_COEFFICIENTS} are the most"
+                ),
+                vec![Place::File {
+                    file: self.table_file.clone(),
+                }],
+                "take out covariates that are names rather than kinds, merge levels, or take out a joint term",
             ),
             DesignFault::Collinear { terms } => self.collinear(terms),
             DesignFault::UnknownAnswer {

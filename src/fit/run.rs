@@ -61,29 +61,46 @@ pub enum FitError {
     StepLimit,
     /// The curvature at the mode could not be inverted.
     NoCovariance,
+    /// No chain ever moved in this parameter: its draws are no result.
+    NeverMoved {
+        /// The parameter.
+        parameter: String,
+    },
     /// The watcher asked to stop.
     Stopped,
+}
+
+impl FitError {
+    /// What to do next, in one sentence.
+    pub fn help(&self) -> &'static str {
+        match self {
+            FitError::NotDetermined { .. } => "Give it a narrower plausible range, or leave it out.",
+            FitError::NoStart => {
+                "Look for values far from their centre (a step that is too small), or for an exposure in the wrong unit."
+            }
+            FitError::StepLimit => "Look for values far from their centre, or for extremely wide or narrow ranges.",
+            FitError::NoCovariance => "Two covariates may say the same: `ratewright vet SPEC` names such terms.",
+            FitError::NeverMoved { .. } => {
+                "Give the sampler more room (`most_draws`), or look for extremely narrow ranges; nothing was written."
+            }
+            FitError::Stopped => "Start it again when there is time.",
+        }
+    }
 }
 
 impl std::fmt::Display for FitError {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
         match self {
-            FitError::NotDetermined { parameter } => write!(
-                f,
-                "data and priors together do not determine `{parameter}`: give it a narrower plausible range, or leave it out"
-            ),
-            FitError::NoStart => write!(
-                f,
-                "the model's density is zero at the crude rate: check for values far from their centre (a step that is too small), or for an exposure in the wrong unit"
-            ),
-            FitError::StepLimit => write!(
-                f,
-                "the search for the most plausible values did not end: check for values far from their centre, or for extremely wide ranges"
-            ),
+            FitError::NotDetermined { parameter } => {
+                write!(f, "data and priors together do not determine `{parameter}`")
+            }
+            FitError::NoStart => write!(f, "the model's density is zero at the crude rate"),
+            FitError::StepLimit => write!(f, "the search for the most plausible values did not end"),
             FitError::NoCovariance => write!(
                 f,
-                "the model's curvature could not be inverted at the most plausible values: two covariates may say the same; `vet` names them"
+                "the model's curvature could not be inverted at the most plausible values"
             ),
+            FitError::NeverMoved { parameter } => write!(f, "no chain ever moved in `{parameter}`"),
             FitError::Stopped => write!(f, "stopped before the end"),
         }
     }
@@ -123,6 +140,11 @@ pub fn run(model: &Model, spec: &Spec, machine: Machine, watch: &dyn Watch) -> R
         SamplingFailed::NoCovariance => FitError::NoCovariance,
         SamplingFailed::Stopped => FitError::Stopped,
     })?;
+    if let Some(place) = sampled.assessments.iter().position(|a| a.sd <= 0.0) {
+        return Err(FitError::NeverMoved {
+            parameter: model.parameters()[place].clone(),
+        });
+    }
     Ok(Fit {
         mode,
         laplace,

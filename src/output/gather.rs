@@ -125,7 +125,13 @@ fn sampling(spec: &Spec, fit: &Fit) -> SamplingFinding {
         precision_asked: spec.sampling.precision,
         worst_error_of_mean: worst(&mut moved().map(|a| a.error_of_mean / a.sd)),
         worst_error_of_interval_end: worst(&mut moved().map(|a| a.error_of_lower.max(a.error_of_upper) / a.sd)),
-        largest_r_hat: fit.assessments.iter().filter_map(|a| a.split_r_hat).reduce(f64::max),
+        // One that cannot be computed is worse than any figure.
+        largest_r_hat: fit
+            .assessments
+            .iter()
+            .map(|a| a.split_r_hat)
+            .reduce(|a, b| Some(a?.max(b?)))
+            .flatten(),
         fewest_effective_draws: fewest(&mut fit.assessments.iter().map(|a| a.effective_draws)),
         fewest_effective_tail_draws: fewest(&mut fit.assessments.iter().map(|a| a.effective_tail_draws)),
         reference: fit.reference.clone(),

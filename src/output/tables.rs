@@ -223,9 +223,10 @@ impl<'a> Sheet<'a> {
     }
 }
 
-/// In quotation marks where the comma form needs them (RFC 4180).
+/// In quotation marks where the comma form needs them (RFC 4180), and where a spreadsheet of another
+/// country would end the cell: what follows a semicolon might then be run as a formula.
 fn quoted(text: &str) -> String {
-    if text.contains([',', '"', '\n', '\r', '\t']) {
+    if text.contains([',', ';', '"', '\n', '\r', '\t']) {
         format!("\"{}\"", text.replace('"', "\"\""))
     } else {
         text.to_owned()

@@ -220,6 +220,21 @@ fn more_coefficients_than_rows_and_an_answer_that_is_no_term() {
     insta::assert_snapshot!(unfit("few_rows.csv", &spec));
 }
 
+/// Twenty kilobytes that would have asked for ten gigabytes of coded columns.
+#[test]
+fn a_joint_term_of_two_long_categories_is_refused_before_it_is_made() {
+    let mut text = "landing,falls,boardings,decking,season\n".to_owned();
+    for row in 0..1_200 {
+        text.push_str(&format!("L{row},1,10,d{},s{}\n", row % 900, row % 800));
+    }
+    let mut spec = with(vec![category("decking", "d0"), category("season", "s0")]);
+    spec.joints = vec![joint("decking", "season")];
+    let error = design::build(&spec, &parse_csv("long.csv", text.as_bytes()).unwrap()).unwrap_err();
+    let told = error.diagnostics();
+    assert_eq!((told.len(), told[0].code), (1, "too-many-terms"));
+    assert!(told[0].message.contains("720000 coefficients"), "{}", told[0].message);
+}
+
 #[test]
 fn levels_that_no_row_has() {
     let mut spec = with(vec![
