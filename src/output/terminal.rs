@@ -141,6 +141,12 @@ fn units(page: &mut Page, findings: &Findings, audience: Audience) {
             lying(outside),
             roughly(check.outside_by_chance)
         ));
+    } else if judged.is_empty() {
+        page.paragraph(&format!(
+            "Of {} (column {}), none is judged here, so that no small count can be worked out.",
+            counted(all, "unit"),
+            findings.study.unit_column
+        ));
     } else {
         page.paragraph(&format!(
             "Of {} (column {}), {} judged here, and of those {} outside the {interval} interval that the model \
@@ -150,7 +156,11 @@ fn units(page: &mut Page, findings: &Findings, audience: Audience) {
             findings.study.unit_column,
             be(judged.len()),
             lying(outside),
-            be(left_out),
+            if left_out == 1 {
+                "one is".to_owned()
+            } else {
+                be(left_out)
+            },
             roughly(check.outside_by_chance),
             whole(all as f64)
         ));

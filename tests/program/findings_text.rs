@@ -103,6 +103,21 @@ fn the_only_small_count_is_hidden_with_a_second_one() {
 }
 
 #[test]
+fn where_no_unit_may_be_judged_none_is() {
+    let mut findings = crate::stand_in::findings();
+    findings.units.units.truncate(1);
+    findings.units.units[0].observed = 3.0;
+    findings.units.units[0].lower = 2.0;
+    let told = terminal_text(&findings, Audience::of_study(&findings.study));
+    let told = told.split_whitespace().collect::<Vec<_>>().join(" ");
+    assert!(
+        told.contains("Of 1 unit (column landing), none is judged here, so that no small count can be worked out."),
+        "{told}"
+    );
+    assert!(!told.contains("lies outside") && !told.contains("North quay"), "{told}");
+}
+
+#[test]
 fn one_is_told_as_one() {
     let mut findings = crate::stand_in::findings();
     findings.units.units.truncate(1);
