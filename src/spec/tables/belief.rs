@@ -1,7 +1,7 @@
 //! The model and what is believed of it: `[family]`, `[baseline]`, `[[covariate]]`, `[[joint]]`.
 
 use super::build::{choice, defaulted, not_yet, only_with, optional, required, table};
-use crate::spec::keys::{Bounds, DefaultValue, KeyInfo, Kind, TableInfo, Times};
+use crate::spec::keys::{Bounds, DefaultValue, End, KeyInfo, Kind, TableInfo, Times};
 
 /// `provisional`, which may stand beside every prior.
 const PROVISIONAL: KeyInfo = defaulted(
@@ -35,7 +35,7 @@ pub(super) const FAMILY: TableInfo = TableInfo {
                 &["negative-binomial"],
                 required(
                     "scatter_up_to",
-                    Kind::Number(Bounds::POSITIVE),
+                    Kind::Number(SCATTERS),
                     "1.0",
                     "Prior of the scatter, the coefficient of variation of the true rate among rows that look alike: \
                      it exceeds this value with probability 0.05.",
@@ -47,6 +47,13 @@ pub(super) const FAMILY: TableInfo = TableInfo {
     )
 };
 
+/// A scatter of 0.0001 no count can tell from none, and one of 100 no table has: beyond them the
+/// key was misunderstood.
+const SCATTERS: Bounds = Bounds {
+    lower: End::Included(1e-4),
+    upper: End::Included(100.0),
+};
+
 /// `earlier` of [baseline].
 pub(in crate::spec) const EARLIER: TableInfo = table(
     "earlier",
@@ -54,13 +61,19 @@ pub(in crate::spec) const EARLIER: TableInfo = table(
     &[
         required(
             "incidents",
-            Kind::Number(Bounds::POSITIVE),
+            Kind::Number(Bounds {
+                lower: End::Excluded(0.0),
+                upper: End::Included(1e9),
+            }),
             "12",
             "Incidents seen earlier.",
         ),
         required(
             "exposure",
-            Kind::Number(Bounds::POSITIVE),
+            Kind::Number(Bounds {
+                lower: End::Included(1e-9),
+                upper: End::Included(1e15),
+            }),
             "150000",
             "Exposure that they were seen over, in the units of the exposure column (not per `per`).",
         ),
