@@ -20,7 +20,7 @@ use serde::{Deserialize, Serialize};
 /// Row-by-draw evaluations that the check may cost, within the two limits that follow.
 const ROW_DRAWS: usize = 16_000_000;
 /// Fewest draws used, where there are as many.
-const FEWEST_DRAWS: usize = 1_000;
+const FEWEST_DRAWS: usize = 400;
 /// Most draws used: a tail probability is then known to within 0.004 or so.
 const MOST_DRAWS: usize = 8_000;
 /// Draws from which the simulation error of a tail probability is estimated.

@@ -35,16 +35,29 @@ pub fn findings(findings: &Findings, audience: Audience, run: &Path) -> String {
 
 fn the_answer(page: &mut Page, findings: &Findings) {
     page.heading("The answer");
-    not_precise_enough(page, findings);
+    not_precise_enough(page, findings, Reasons::InFull);
     page.paragraph(&findings.answer.sentence);
 }
 
+/// How much of why a simulation failed is told.
+#[derive(Clone, Copy)]
+enum Reasons {
+    /// Every limit that failed.
+    InFull,
+    /// They stand further up.
+    Above,
+}
+
 /// Stands before every block of estimates of a simulation that failed a limit.
-fn not_precise_enough(page: &mut Page, findings: &Findings) {
+fn not_precise_enough(page: &mut Page, findings: &Findings, reasons: Reasons) {
     let failed = failed_limits(&findings.sampling);
-    if !failed.is_empty() {
-        page.paragraph(&format!("NOT PRECISE ENOUGH TO REPORT: {}.", failed.join("; ")));
+    if failed.is_empty() {
+        return;
     }
+    page.paragraph(&match reasons {
+        Reasons::InFull => format!("NOT PRECISE ENOUGH TO REPORT: {}.", failed.join("; ")),
+        Reasons::Above => "NOT PRECISE ENOUGH TO REPORT, for the reasons above.".to_owned(),
+    });
 }
 
 fn rate_ratios(page: &mut Page, findings: &Findings) {
@@ -52,7 +65,7 @@ fn rate_ratios(page: &mut Page, findings: &Findings) {
         return;
     }
     page.heading("Rate ratios");
-    not_precise_enough(page, findings);
+    not_precise_enough(page, findings, Reasons::Above);
     let interval = format!("{} interval", level(findings.study.interval));
     let header = [
         ("term", Align::Left),
@@ -88,7 +101,7 @@ fn rate_and_scatter(page: &mut Page, findings: &Findings) {
     let baseline = parameter(findings, "baseline").filter(|baseline| findings.answer.term != baseline.term);
     if baseline.is_some() || scatter.is_some() {
         page.heading("The rate itself");
-        not_precise_enough(page, findings);
+        not_precise_enough(page, findings, Reasons::Above);
     }
     if let Some(baseline) = baseline {
         let evidence = answer::Evidence {
