@@ -33,7 +33,12 @@ fn the_terminal_says_so_when_the_precision_was_not_met() {
 
 #[test]
 fn estimates_of_a_poor_simulation_say_so_first_and_why() {
-    let blocks = ["The answer", "Rate ratios", "The rate itself"];
+    // The answer tells why; the others point to it.
+    let blocks = [
+        ("The answer", ": "),
+        ("Rate ratios", ", for"),
+        ("The rate itself", ", for"),
+    ];
     type Change = fn(&mut SamplingFinding);
     let failing: [(Change, &str); 6] = [
         (|s| s.largest_r_hat = Some(1.0104), "R-hat is 1.0104, above 1.01"),
@@ -54,10 +59,12 @@ fn estimates_of_a_poor_simulation_say_so_first_and_why() {
         change(&mut findings.sampling);
         let told = terminal_text(&findings, Audience::Whole);
         let told = told.split_whitespace().collect::<Vec<_>>().join(" ");
-        for block in blocks {
-            let starts = format!("{block} NOT PRECISE ENOUGH TO REPORT: ");
+        for (block, goes_on) in blocks {
+            let starts = format!("{block} NOT PRECISE ENOUGH TO REPORT{goes_on}");
             assert!(told.contains(&starts), "{starts} {told}");
         }
+        let answer = &told[..told.find("Rate ratios").unwrap()];
+        assert!(answer.contains(why), "{answer}");
         let simulation = &told[told.find("The simulation").unwrap()..];
         assert!(simulation.contains(why), "{simulation}");
     }
