@@ -10,6 +10,7 @@
 mod cases;
 mod conjugacy;
 mod convergence;
+mod designs;
 mod elementary;
 mod model;
 mod numeric;

@@ -1,12 +1,14 @@
 //! The log posterior: its derivatives against finite differences, its limits, and that it says the
 //! same whatever the company.
 
-use ratewright::design::{Audit, Coding, Design, Term};
+use crate::designs::design;
+use ratewright::design::Design;
 use ratewright::model::{BaselinePrior, Model, NormalPrior, PREDICTOR_LIMIT, ScatterPrior};
 use ratewright::numeric::{Purpose, Stream, ln};
 
-/// A design of made-up rows: `terms` standard normal columns, counts about `mean`.
-fn design(rows: usize, terms: usize, mean: f64, seed: u64) -> Design {
+/// A design of made-up rows: `terms` standard normal columns, counts about `mean`, and each fifth
+/// row standing for two.
+fn made_up(rows: usize, terms: usize, mean: f64, seed: u64) -> Design {
     let mut stream = Stream::new(seed, Purpose::Simulation, 0);
     let columns: Vec<Vec<f64>> = (0..terms)
         .map(|_| (0..rows).map(|_| stream.normal()).collect())
@@ -14,46 +16,14 @@ fn design(rows: usize, terms: usize, mean: f64, seed: u64) -> Design {
     let exposure: Vec<f64> = (0..rows).map(|_| 0.5 + stream.uniform()).collect();
     let counts = exposure
         .iter()
-        .map(|e| stream.poisson(mean * e * stream_gamma(rows, seed)))
+        .map(|e| {
+            let factor = stream.gamma(4.0) / 4.0;
+            stream.poisson(mean * e * factor)
+        })
         .collect();
-    let names: Vec<String> = (0..terms).map(|k| format!("x{k}")).collect();
-    Design {
-        terms: names
-            .iter()
-            .map(|name| Term {
-                name: name.clone(),
-                change: "per 1".to_owned(),
-                prior_mean: 0.1,
-                prior_sd: 0.7,
-            })
-            .collect(),
-        columns,
-        log_exposure: exposure.iter().map(|e| ln(*e)).collect(),
-        exposure,
-        counts,
-        stands_for: (0..rows).map(|row| 1.0 + f64::from(u8::from(row % 5 == 0))).collect(),
-        unit_of: (0..rows).collect(),
-        units: (0..rows).map(|row| row.to_string()).collect(),
-        lines: (0..rows as u64).collect(),
-        coding: Coding {
-            exposure_column: None,
-            per: 1.0,
-            covariates: vec![],
-            joints: vec![],
-            terms: names,
-        },
-        audit: Audit {
-            rows_read: rows,
-            rows_not_kept: 0,
-            lines_dropped: vec![],
-            rows_used: rows,
-            units: rows,
-        },
-    }
-}
-
-fn stream_gamma(rows: usize, seed: u64) -> f64 {
-    Stream::new(seed, Purpose::Simulation, rows as u64).gamma(4.0) / 4.0
+    let mut made = design(columns, exposure, counts);
+    made.stands_for = (0..rows).map(|row| 1.0 + f64::from(u8::from(row % 5 == 0))).collect();
+    made
 }
 
 fn model(design: &Design, scatter: bool) -> Model {
@@ -79,7 +49,7 @@ fn difference(f: impl Fn(f64) -> f64) -> f64 {
 #[test]
 fn gradient_and_hessian_are_the_differences_of_value_and_gradient() {
     for (seed, scatter, largest) in [(1, false, 4.0), (2, true, 4.0), (3, true, 3_000.0), (4, true, 0.3)] {
-        let design = design(150, 6, largest, seed);
+        let design = made_up(150, 6, largest, seed);
         let model = model(&design, scatter);
         let d = model.dimension();
         let mut stream = Stream::new(seed, Purpose::Simulation, 99);
@@ -126,7 +96,7 @@ fn gradient_and_hessian_are_the_differences_of_value_and_gradient() {
 
 #[test]
 fn the_negative_binomial_tends_to_the_poisson_as_the_scatter_vanishes() {
-    let design = design(130, 3, 5.0, 8);
+    let design = made_up(130, 3, 5.0, 8);
     let (poisson, negative_binomial) = (model(&design, false), model(&design, true));
     let at = [1.2, 0.1, -0.2, 0.3];
     let limit = poisson.log_density(&at) + ln(3.0);
@@ -155,7 +125,7 @@ fn the_negative_binomial_tends_to_the_poisson_as_the_scatter_vanishes() {
 
 #[test]
 fn a_row_that_stands_for_three_is_three_rows() {
-    let mut once = design(90, 2, 6.0, 5);
+    let mut once = made_up(90, 2, 6.0, 5);
     once.stands_for = (0..90).map(|row| [1.0, 3.0, 2.0][row % 3]).collect();
     let mut repeated = once.clone();
     let pick = |values: &[f64]| -> Vec<f64> {
@@ -180,7 +150,7 @@ fn a_row_that_stands_for_three_is_three_rows() {
 
 #[test]
 fn a_density_does_not_depend_on_its_company() {
-    let design = design(200, 5, 4.0, 6);
+    let design = made_up(200, 5, 4.0, 6);
     let model = model(&design, true);
     let d = model.dimension();
     let mut stream = Stream::new(6, Purpose::Simulation, 1);
@@ -198,7 +168,7 @@ fn a_density_does_not_depend_on_its_company() {
 
 #[test]
 fn wild_points_have_a_density_and_never_nan() {
-    let design = design(70, 2, 4.0, 7);
+    let design = made_up(70, 2, 4.0, 7);
     let model = model(&design, true);
     for wild in [f64::NAN, f64::INFINITY, -f64::INFINITY, 1e300, -1e300, 700.0, -700.0] {
         for place in 0..4 {

@@ -1,7 +1,7 @@
 //! The scatter where counts are large and it is small: its posterior may be a thousand times
 //! narrower than its prior, and its mode inside or at 0 by the luck of the data.
 
-use ratewright::design::{Audit, Coding, Design};
+use crate::designs::design;
 use ratewright::fit::{self, Goal, Plan, Unwatched, sample};
 use ratewright::model::{BaselinePrior, Model, NormalPrior, ScatterPrior};
 use ratewright::numeric::{Purpose, Stream, exp, ln};
@@ -18,31 +18,8 @@ fn model(rows: usize, mean: f64, scatter: f64, seed: u64) -> Model {
         };
         stream.poisson(mean * factor)
     };
-    let design = Design {
-        terms: vec![],
-        columns: vec![],
-        exposure: vec![1.0; rows],
-        log_exposure: vec![0.0; rows],
-        counts: (0..rows).map(|_| count()).collect(),
-        stands_for: vec![1.0; rows],
-        unit_of: (0..rows).collect(),
-        units: (0..rows).map(|row| row.to_string()).collect(),
-        lines: (0..rows as u64).collect(),
-        coding: Coding {
-            exposure_column: None,
-            per: 1.0,
-            covariates: vec![],
-            joints: vec![],
-            terms: vec![],
-        },
-        audit: Audit {
-            rows_read: rows,
-            rows_not_kept: 0,
-            lines_dropped: vec![],
-            rows_used: rows,
-            units: rows,
-        },
-    };
+    let counts = (0..rows).map(|_| count()).collect();
+    let design = design(vec![], vec![1.0; rows], counts);
     let baseline = BaselinePrior::Range(NormalPrior {
         mean: ln(mean),
         sd: 1.0,
