@@ -69,6 +69,15 @@ impl Diagnostic {
     }
 }
 
+/// The messages alone, on one line, for an error's `Display`.
+pub fn one_line(diagnostics: &[Diagnostic]) -> String {
+    let messages: Vec<&str> = diagnostics
+        .iter()
+        .map(|diagnostic| diagnostic.message.as_str())
+        .collect();
+    messages.join("; ")
+}
+
 /// The candidate that is spelt most like `word`, if one is near enough to be meant; the first of
 /// equals.
 ///

@@ -1,7 +1,7 @@
 //! The one error of the program: a variant for each folder that can fail.
 
 use crate::design::{DesignError, DraftError};
-use crate::diagnostic::Diagnostic;
+use crate::diagnostic::{Diagnostic, one_line};
 use crate::fit::FitError;
 use crate::output::OutputError;
 use crate::spec::{Source, SpecError};
@@ -104,14 +104,10 @@ fn fit_code(error: &FitError) -> &'static str {
 
 impl fmt::Display for Error {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        let messages: Vec<String> = self
-            .diagnostics()
-            .into_iter()
-            .map(|diagnostic| diagnostic.message)
-            .collect();
-        match messages.as_slice() {
-            [] => f.write_str("interrupted"),
-            messages => f.write_str(&messages.join("; ")),
+        match one_line(&self.diagnostics()) {
+            // An interruption is told by nothing else.
+            told if told.is_empty() => f.write_str("interrupted"),
+            told => f.write_str(&told),
         }
     }
 }

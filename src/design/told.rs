@@ -3,7 +3,7 @@
 use super::build::MOST_COEFFICIENTS;
 use super::cell_rule::BadCell;
 use super::fault::{CollinearTerm, DesignError, DesignFault, LevelRole, MissingColumn, UnknownLevel};
-use crate::diagnostic::{Diagnostic, PLACES_SHOWN, Place};
+use crate::diagnostic::{Diagnostic, PLACES_SHOWN, Place, one_line};
 use std::fmt;
 use std::ops::Range;
 
@@ -256,17 +256,12 @@ fn with_baseline(terms: &[String]) -> Vec<String> {
 
 impl fmt::Display for DesignError {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        let messages: Vec<String> = self
-            .diagnostics()
-            .into_iter()
-            .map(|diagnostic| diagnostic.message)
-            .collect();
         write!(
             f,
             "{} with {}: {}",
             self.spec_file,
             self.table_file,
-            messages.join("; ")
+            one_line(&self.diagnostics())
         )
     }
 }

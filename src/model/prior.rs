@@ -68,14 +68,6 @@ impl BaselinePrior {
             }
         }
     }
-
-    /// Where a search for the mode may start: the centre of the prior.
-    pub fn centre(&self) -> f64 {
-        match *self {
-            BaselinePrior::Range(normal) => normal.mean,
-            BaselinePrior::Earlier { incidents, exposure } => ln(incidents) - ln(exposure),
-        }
-    }
 }
 
 /// Exponential prior of the scatter, by its rate.

@@ -1,6 +1,6 @@
 //! What can be wrong with a data file before anyone asks what its columns mean.
 
-use crate::diagnostic::{Diagnostic, Place};
+use crate::diagnostic::{Diagnostic, Place, one_line};
 use std::fmt;
 
 /// A data file that cannot be read as a table, with everything that is wrong with it.
@@ -231,12 +231,7 @@ fn cells_found(rows: &[RaggedRow]) -> String {
 
 impl fmt::Display for TableError {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        let messages: Vec<String> = self
-            .diagnostics()
-            .into_iter()
-            .map(|diagnostic| diagnostic.message)
-            .collect();
-        write!(f, "{}: {}", self.file, messages.join("; "))
+        write!(f, "{}: {}", self.file, one_line(&self.diagnostics()))
     }
 }
 

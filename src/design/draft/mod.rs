@@ -13,7 +13,7 @@ use super::build::build;
 use super::cell_rule::BadCell;
 use super::fault::{DesignError, DesignFault};
 use super::types::Design;
-use crate::diagnostic::{Diagnostic, Place};
+use crate::diagnostic::{Diagnostic, Place, one_line};
 use crate::spec::{self, Spec, SpecError};
 use crate::table::{Column, Table};
 use entries::{Entry, LeftOut};
@@ -298,12 +298,7 @@ impl DraftError {
 
 impl fmt::Display for DraftError {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        let messages: Vec<String> = self
-            .diagnostics()
-            .into_iter()
-            .map(|diagnostic| diagnostic.message)
-            .collect();
-        write!(f, "{}: {}", self.table_file, messages.join("; "))
+        write!(f, "{}: {}", self.table_file, one_line(&self.diagnostics()))
     }
 }
 
