@@ -1,5 +1,6 @@
 //! All that can be wrong with a spec, each with its facts in fields.
 
+use crate::diagnostic::one_line;
 use std::fmt;
 use std::ops::Range;
 
@@ -380,8 +381,7 @@ impl SpecFault {
 impl fmt::Display for SpecError {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         write!(f, "the spec {} cannot be used: ", self.source.file)?;
-        let messages: Vec<String> = self.diagnostics().into_iter().map(|told| told.message).collect();
-        f.write_str(&messages.join("; "))
+        f.write_str(&one_line(&self.diagnostics()))
     }
 }
 
