@@ -5,11 +5,12 @@
 //! one-dimensional quadrature; the moments of that mixture are the Laplace figures. They are right
 //! where the scatter's mode is at 0 and no single Gaussian could be.
 
-use super::newton::{ClimbFailed, climb};
-use super::profile::{NEGLIGIBLE, Profile, Section, profile, section_near};
+use super::newton::{ClimbFailed, EXACT, Surface, climb};
+use super::nodes::nodes;
+use super::profile::{Section, profile};
 use super::watch::Watch;
 use crate::model::Model;
-use crate::numeric::{exp, legendre};
+use crate::numeric::exp;
 
 /// The mode of the posterior.
 #[derive(Debug, Clone)]
@@ -52,19 +53,20 @@ impl Laplace {
     }
 }
 
-/// Mode and Laplace approximation of a model.
+/// Mode and Laplace approximation of a model, on at most `threads` threads.
 ///
 /// # Errors
 /// [`ClimbFailed`] says why there is no mode, or that the watcher asked to stop.
-pub fn laplace(model: &Model, watch: &dyn Watch) -> Result<(Mode, Laplace), ClimbFailed> {
+pub fn laplace(model: &Model, threads: usize, watch: &dyn Watch) -> Result<(Mode, Laplace), ClimbFailed> {
+    let surface = Surface { model, threads };
     if model.scatter_place().is_some() {
-        return by_profile(model, watch);
+        return by_profile(surface, watch);
     }
-    let reached = climb(model, None, &model.start())?;
+    let reached = climb(surface, None, &model.start(), EXACT)?;
     let covariance = reached.factor.inverse();
     let mode = Mode {
         point: reached.coefficients.clone(),
-        log_density: reached.derivatives.value,
+        log_density: reached.derivatives.value + 0.5 * reached.rise,
         covariance: covariance.clone(),
         scatter: None,
         steps: reached.steps,
@@ -78,9 +80,9 @@ pub fn laplace(model: &Model, watch: &dyn Watch) -> Result<(Mode, Laplace), Clim
     ))
 }
 
-fn by_profile(model: &Model, watch: &dyn Watch) -> Result<(Mode, Laplace), ClimbFailed> {
-    let profile = profile(model, watch)?;
-    let nodes = nodes(model, &profile, watch)?;
+fn by_profile(surface: Surface, watch: &dyn Watch) -> Result<(Mode, Laplace), ClimbFailed> {
+    let profile = profile(surface, watch)?;
+    let nodes = nodes(surface, &profile, watch)?;
     let steps = |sections: &mut dyn Iterator<Item = &Section>| sections.map(|section| section.steps).sum::<u64>();
     let taken = steps(&mut profile.grid.iter().chain(&profile.peaks)) + steps(&mut nodes.iter().map(|(node, _)| node));
     Ok((mode_at(&profile.peaks[0], taken), moments(&nodes)))
@@ -117,58 +119,6 @@ fn mode_at(section: &Section, steps: u64) -> Mode {
         }),
         steps,
     }
-}
-
-/// Edges of the quadrature's panels around a peak, in its widths.
-const EDGES: [f64; 9] = [-9.0, -5.0, -2.5, -1.0, 0.0, 1.0, 2.5, 5.0, 9.0];
-
-/// Sections at the nodes of the quadrature over the scatter, each with its weight.
-///
-/// Panels end at the places of the grid, which is fine enough where the posterior runs into 0, and
-/// around each peak inside at multiples of its width, since it may be narrower than the grid. They
-/// reach from the last place of the grid without mass below to the first above.
-fn nodes(model: &Model, profile: &Profile, watch: &dyn Watch) -> Result<Vec<(Section, f64)>, ClimbFailed> {
-    let known = || profile.grid.iter().chain(&profile.peaks);
-    let top = known()
-        .map(|section| section.log_mass)
-        .fold(f64::NEG_INFINITY, f64::max);
-    let matters = |section: &&Section| section.log_mass > top - NEGLIGIBLE;
-    let lowest = known().filter(matters).map(|s| s.scatter).fold(f64::INFINITY, f64::min);
-    let highest = known().filter(matters).map(|s| s.scatter).fold(0.0, f64::max);
-    let places = || profile.grid.iter().map(|section| section.scatter);
-    let from = places().filter(|place| *place < lowest).fold(0.0, f64::max);
-    let to = places().filter(|place| *place > highest).fold(f64::INFINITY, f64::min);
-    let to = if to.is_finite() { to } else { highest };
-    let mut edges: Vec<f64> = places().filter(|place| (from..=to).contains(place)).collect();
-    for peak in profile.peaks.iter().filter(matters).filter(|peak| peak.curvature < 0.0) {
-        let width = 1.0 / (-peak.curvature).sqrt();
-        edges.extend(EDGES.iter().map(|t| (peak.scatter + t * width).clamp(from, to)));
-    }
-    edges.sort_by(f64::total_cmp);
-    // Edges of two peaks may fall together: a panel a millionth of its place wide says nothing.
-    edges.dedup_by(|b, a| *b - *a <= 1e-6 * *b);
-    let mut nodes: Vec<(Section, f64)> = Vec::new();
-    for pair in edges.windows(2) {
-        if watch.stop_asked() {
-            return Err(ClimbFailed::Stopped);
-        }
-        for (scatter, weight) in legendre(pair[0], pair[1]) {
-            let nearest = nodes.last().map_or(&profile.grid[0], |(section, _)| section);
-            let nearest = closest(profile, nearest, scatter);
-            nodes.push((section_near(model, nearest, scatter)?, weight));
-        }
-    }
-    Ok(nodes)
-}
-
-/// The known section closest to a scatter: the last one, or one of the profile.
-fn closest<'a>(profile: &'a Profile, last: &'a Section, scatter: f64) -> &'a Section {
-    let far = |section: &Section| (section.scatter - scatter).abs();
-    let known = profile.grid.iter().chain(&profile.peaks);
-    known.fold(
-        last,
-        |best, section| if far(section) < far(best) { section } else { best },
-    )
 }
 
 /// Mean and covariance of the mixture of Gaussians over the nodes.

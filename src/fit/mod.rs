@@ -7,6 +7,7 @@ mod draws;
 mod effective;
 mod laplace;
 mod newton;
+mod nodes;
 mod profile;
 mod reference;
 mod run;

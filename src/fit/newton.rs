@@ -14,20 +14,37 @@ use argmin::core::{
 
 /// Far more steps than a concave problem needs; a limit all the same, since every loop has one.
 const MOST_STEPS: u64 = 200;
-/// The squared length of the Newton step, in the metric of the Hessian (so in posterior standard
-/// deviations), at which one last full step is taken: convergence is quadratic, so that step ends
-/// at the limit of rounding.
-const LAST_STEP: f64 = 1e-12;
+/// A log density to climb, and how many threads evaluate it.
+#[derive(Clone, Copy)]
+pub struct Surface<'a> {
+    /// The model.
+    pub model: &'a Model,
+    /// Threads; they change no bit.
+    pub threads: usize,
+}
+
+/// When a search may end: the squared length of the Newton step, in the metric of the Hessian (so in
+/// posterior standard deviations), at which that step is taken unseen and is the last. Convergence is
+/// quadratic: a last step of 1e-6 standard deviations leaves an error of 1e-12 or so.
+pub const EXACT: f64 = 1e-12;
+/// For the nodes of a quadrature: their heights are then off by less than 1e-14.
+pub const NODE: f64 = 1e-10;
+/// For a look at where the density rises and falls.
+pub const ROUGH: f64 = 1e-3;
 
 /// Where the search ended.
 #[derive(Debug, Clone)]
 pub struct Climb {
-    /// Baseline and coefficients, without the scatter.
+    /// Baseline and coefficients, without the scatter, after the last step.
     pub coefficients: Vec<f64>,
-    /// Derivatives there, in all parameters.
+    /// Derivatives before the last step, in all parameters.
     pub derivatives: Derivatives,
-    /// Factor of the negative Hessian in the coefficients.
+    /// Factor of the negative Hessian in the coefficients, before the last step.
     pub factor: Cholesky,
+    /// The last step.
+    pub last_step: Vec<f64>,
+    /// Its gradient times itself: half of it is how much the last step rises.
+    pub rise: f64,
     /// Steps taken.
     pub steps: u64,
 }
@@ -49,12 +66,12 @@ pub enum ClimbFailed {
 }
 
 /// Climbs to the mode of the coefficients with the scatter held at `scatter` (absent under the
-/// Poisson), from `start`.
+/// Poisson), from `start`, until a step is as short as `settled` says ([`EXACT`] or another).
 ///
 /// # Errors
 /// [`ClimbFailed`] says why no mode was found.
-pub fn climb(model: &Model, scatter: Option<f64>, start: &[f64]) -> Result<Climb, ClimbFailed> {
-    let outcome = Executor::new(Slice { model, scatter }, Newton::default())
+pub fn climb(surface: Surface, scatter: Option<f64>, start: &[f64], settled: f64) -> Result<Climb, ClimbFailed> {
+    let outcome = Executor::new(Slice { surface, scatter }, Newton::until(settled))
         .configure(|state: Steps| state.param(start.to_vec()).max_iters(MOST_STEPS))
         .timer(false)
         .run();
@@ -64,18 +81,10 @@ pub fn climb(model: &Model, scatter: Option<f64>, start: &[f64]) -> Result<Climb
     };
     let steps = outcome.state().get_iter();
     let newton = outcome.solver;
-    match (newton.failure, newton.reached, newton.finished) {
-        (Some(failure), _, _) => Err(failure),
-        (None, Some((coefficients, derivatives)), true) => {
-            let factor = negative_hessian(&derivatives, coefficients.len())?;
-            Ok(Climb {
-                coefficients,
-                derivatives,
-                factor,
-                steps,
-            })
-        }
-        _ => Err(ClimbFailed::StepLimit),
+    match (newton.failure, newton.arrived) {
+        (Some(failure), _) => Err(failure),
+        (None, Some(climb)) => Ok(Climb { steps, ..climb }),
+        (None, None) => Err(ClimbFailed::StepLimit),
     }
 }
 
@@ -93,7 +102,7 @@ fn negative_hessian(derivatives: &Derivatives, size: usize) -> Result<Cholesky, 
 
 /// The log density on the slice of one scatter.
 struct Slice<'a> {
-    model: &'a Model,
+    surface: Surface<'a>,
     scatter: Option<f64>,
 }
 
@@ -104,18 +113,29 @@ impl Operator for Slice<'_> {
     fn apply(&self, coefficients: &Vec<f64>) -> Result<Option<Derivatives>, Error> {
         let mut point = coefficients.clone();
         point.extend(self.scatter);
-        Ok(self.model.derivatives(&point, 1))
+        Ok(self.surface.model.derivatives(&point, self.surface.threads))
     }
 }
 
 type Steps = IterState<Vec<f64>, (), (), (), (), f64>;
 
 /// The solver: argmin calls it, step by step.
-#[derive(Default)]
 struct Newton {
-    reached: Option<(Vec<f64>, Derivatives)>,
-    finished: bool,
+    settled: f64,
+    here: Option<(Vec<f64>, Derivatives)>,
+    arrived: Option<Climb>,
     failure: Option<ClimbFailed>,
+}
+
+impl Newton {
+    fn until(settled: f64) -> Self {
+        Newton {
+            settled,
+            here: None,
+            arrived: None,
+            failure: None,
+        }
+    }
 }
 
 impl<'a> Solver<Slice<'a>, Steps> for Newton {
@@ -128,7 +148,7 @@ impl<'a> Solver<Slice<'a>, Steps> for Newton {
         match problem.apply(&start)? {
             Some(derivatives) => {
                 state = state.param(start.clone()).cost(-derivatives.value);
-                self.reached = Some((start, derivatives));
+                self.here = Some((start, derivatives));
             }
             None => {
                 state = state.param(start);
@@ -139,7 +159,7 @@ impl<'a> Solver<Slice<'a>, Steps> for Newton {
     }
 
     fn next_iter(&mut self, problem: &mut Problem<Slice<'a>>, state: Steps) -> Result<(Steps, Option<KV>), Error> {
-        let Some((place, here)) = self.reached.take() else {
+        let Some((place, here)) = self.here.take() else {
             return Ok((state, None));
         };
         let size = place.len();
@@ -153,10 +173,23 @@ impl<'a> Solver<Slice<'a>, Steps> for Newton {
         let mut step = here.gradient[..size].to_vec();
         factor.solve(&mut step);
         let rise: f64 = step.iter().zip(&here.gradient).map(|(s, g)| s * g).sum();
-        let last = rise <= LAST_STEP;
+        let ahead = |share: f64| -> Vec<f64> { place.iter().zip(&step).map(|(x, s)| x + share * s).collect() };
+        if rise <= self.settled {
+            let coefficients = ahead(1.0);
+            let state = state.param(coefficients.clone()).cost(-here.value - 0.5 * rise);
+            self.arrived = Some(Climb {
+                coefficients,
+                derivatives: here,
+                factor,
+                last_step: step,
+                rise,
+                steps: 0,
+            });
+            return Ok((state, None));
+        }
         let mut share = 1.0;
         let (place, there) = loop {
-            let trial: Vec<f64> = place.iter().zip(&step).map(|(x, s)| x + share * s).collect();
+            let trial = ahead(share);
             match problem.apply(&trial)? {
                 // Near the mode the rise is below what rounding lets the value show: judged by the
                 // bare value, one simulated study halved its steps 200 times over and never arrived.
@@ -171,14 +204,13 @@ impl<'a> Solver<Slice<'a>, Steps> for Newton {
                 _ => share *= 0.5,
             }
         };
-        self.finished |= last;
         let state = state.param(place.clone()).cost(-there.value);
-        self.reached = Some((place, there));
+        self.here = Some((place, there));
         Ok((state, None))
     }
 
     fn terminate(&mut self, _state: &Steps) -> TerminationStatus {
-        if self.finished {
+        if self.arrived.is_some() {
             TerminationStatus::Terminated(TerminationReason::SolverConverged)
         } else if self.failure.is_some() {
             TerminationStatus::Terminated(TerminationReason::SolverExit("no mode".to_owned()))

@@ -10,9 +10,8 @@
 //! that began at 0.01 missed the whole posterior of counts in the ten thousands, which tell a
 //! scatter of 0.001 from 0.
 
-use super::newton::{ClimbFailed, climb};
+use super::newton::{ClimbFailed, EXACT, ROUGH, Surface, climb};
 use super::watch::Watch;
-use crate::model::Model;
 
 /// The grid goes at least up to here, and on while the density still rises or has mass.
 const FAR: f64 = 32.0;
@@ -53,22 +52,26 @@ pub struct Profile {
     pub peaks: Vec<Section>,
 }
 
-/// The section at one scatter, its coefficients searched from `start`.
-pub fn section(model: &Model, scatter: f64, start: &[f64]) -> Result<Section, ClimbFailed> {
-    let reached = climb(model, Some(scatter), start)?;
+/// The section at one scatter, its coefficients searched from `start` until `settled`.
+///
+/// The last Newton step is not evaluated: the height after it and the slope follow to second order,
+/// and the step is so short that the third is below rounding (a rough section needs no more digits).
+pub fn section(surface: Surface, scatter: f64, start: &[f64], settled: f64) -> Result<Section, ClimbFailed> {
+    let reached = climb(surface, Some(scatter), start, settled)?;
     let size = reached.coefficients.len();
     let d = size + 1;
     let hessian = &reached.derivatives.hessian;
     let mixed: Vec<f64> = (0..size).map(|i| hessian[i * d + size]).collect();
     let mut drift = mixed.clone();
     reached.factor.solve(&mut drift);
-    let through_coefficients: f64 = mixed.iter().zip(&drift).map(|(m, s)| m * s).sum();
+    let along = |direction: &[f64]| -> f64 { mixed.iter().zip(direction).map(|(m, s)| m * s).sum() };
+    let height = reached.derivatives.value + 0.5 * reached.rise;
     Ok(Section {
         scatter,
-        height: reached.derivatives.value,
-        log_mass: reached.derivatives.value - 0.5 * reached.factor.log_determinant(),
-        slope: reached.derivatives.gradient[size],
-        curvature: hessian[size * d + size] + through_coefficients,
+        height,
+        log_mass: height - 0.5 * reached.factor.log_determinant(),
+        slope: reached.derivatives.gradient[size] + along(&reached.last_step),
+        curvature: hessian[size * d + size] + along(&drift),
         covariance: reached.factor.inverse(),
         coefficients: reached.coefficients,
         drift,
@@ -77,16 +80,25 @@ pub fn section(model: &Model, scatter: f64, start: &[f64]) -> Result<Section, Cl
 }
 
 /// The section at a scatter near a known one: the search starts where the drift points.
-pub fn section_near(model: &Model, known: &Section, scatter: f64) -> Result<Section, ClimbFailed> {
-    let ahead = scatter - known.scatter;
-    let start: Vec<f64> = known
-        .coefficients
-        .iter()
-        .zip(&known.drift)
-        .map(|(b, s)| b + ahead * s)
-        .collect();
-    // Far ahead the straight line may leave the region where the density is above 0.
-    section(model, scatter, &start).or_else(|_| section(model, scatter, &known.coefficients))
+pub fn section_near(surface: Surface, known: &Section, scatter: f64, settled: f64) -> Result<Section, ClimbFailed> {
+    let start = known.ahead(scatter, None);
+    // Far ahead the line may leave the region where the density is above 0.
+    section(surface, scatter, &start, settled).or_else(|_| section(surface, scatter, &known.coefficients, settled))
+}
+
+impl Section {
+    /// Where the best coefficients should lie at another scatter: along the drift, bent by the change
+    /// of the drift since the section before.
+    pub fn ahead(&self, scatter: f64, before: Option<&Section>) -> Vec<f64> {
+        let step = scatter - self.scatter;
+        let bend = |i: usize| {
+            before.map_or(0.0, |before| {
+                0.5 * (self.drift[i] - before.drift[i]) / (self.scatter - before.scatter)
+            })
+        };
+        let ahead = |i: usize| self.coefficients[i] + step * (self.drift[i] + step * bend(i));
+        (0..self.coefficients.len()).map(ahead).collect()
+    }
 }
 
 /// Mass further than this below the largest, on the log scale, is left out: e^-30 is below 1e-13.
@@ -96,15 +108,15 @@ pub const NEGLIGIBLE: f64 = 30.0;
 ///
 /// # Errors
 /// [`ClimbFailed`] where the coefficients have no mode at some scatter, or the watcher asks to stop.
-pub fn profile(model: &Model, watch: &dyn Watch) -> Result<Profile, ClimbFailed> {
-    let mut grid = vec![section(model, 0.0, &model.start())?];
-    let mut scatter = 0.25 * model.finest_scatter();
+pub fn profile(surface: Surface, watch: &dyn Watch) -> Result<Profile, ClimbFailed> {
+    let mut grid = vec![section(surface, 0.0, &surface.model.start(), EXACT)?];
+    let mut scatter = 0.25 * surface.model.finest_scatter();
     let mut most_mass = grid[0].log_mass;
     loop {
         if watch.stop_asked() {
             return Err(ClimbFailed::Stopped);
         }
-        let next = section_near(model, &grid[grid.len() - 1], scatter)?;
+        let next = section_near(surface, &grid[grid.len() - 1], scatter, ROUGH)?;
         most_mass = most_mass.max(next.log_mass);
         let over = next.slope <= 0.0 && next.log_mass < most_mass - NEGLIGIBLE;
         grid.push(next);
@@ -117,7 +129,7 @@ pub fn profile(model: &Model, watch: &dyn Watch) -> Result<Profile, ClimbFailed>
     let mut peaks = vec![grid[0].clone()];
     for pair in grid.windows(2) {
         if pair[0].slope > 0.0 && pair[1].slope <= 0.0 {
-            peaks.push(refine(model, &pair[0], &pair[1])?);
+            peaks.push(refine(surface, &pair[0], &pair[1])?);
         }
     }
     peaks.sort_by(|a, b| b.height.total_cmp(&a.height));
@@ -126,14 +138,14 @@ pub fn profile(model: &Model, watch: &dyn Watch) -> Result<Profile, ClimbFailed>
 
 /// The maximum between two sections whose slopes point at each other: Newton's steps on the slope,
 /// halving the bracket where a step would leave it.
-fn refine(model: &Model, low: &Section, high: &Section) -> Result<Section, ClimbFailed> {
+fn refine(surface: Surface, low: &Section, high: &Section) -> Result<Section, ClimbFailed> {
     let (mut low, mut high) = (low.clone(), high.clone());
     let mut best = low.clone();
     for _ in 0..MOST_REFINEMENTS {
         let newton = best.scatter - best.slope / best.curvature;
         let middle = 0.5 * (low.scatter + high.scatter);
         let inside = best.curvature < 0.0 && newton > low.scatter && newton < high.scatter;
-        let next = section_near(model, &best, if inside { newton } else { middle })?;
+        let next = section_near(surface, &best, if inside { newton } else { middle }, EXACT)?;
         let moved = (next.scatter - best.scatter).abs();
         best = next;
         if best.slope > 0.0 {

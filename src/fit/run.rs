@@ -114,7 +114,7 @@ impl std::error::Error for FitError {}
 /// [`FitError`] says what stood in the way.
 pub fn run(model: &Model, spec: &Spec, machine: Machine, watch: &dyn Watch) -> Result<Fit, FitError> {
     watch.told(Stage::Mode);
-    let (mode, laplace) = laplace(model, watch).map_err(|failed| match failed {
+    let (mode, laplace) = laplace(model, machine.threads, watch).map_err(|failed| match failed {
         ClimbFailed::Stopped => FitError::Stopped,
         ClimbFailed::BadStart => FitError::NoStart,
         ClimbFailed::StepLimit => FitError::StepLimit,

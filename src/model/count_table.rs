@@ -7,7 +7,9 @@
 //! Statistics 15, 209-225, writes the likelihood so). Above [`TABLE`] the few counts left take a
 //! log-gamma difference that is stable for small a.
 
-use crate::numeric::{ln_1p, ln_rising};
+use super::blocks::{Eight, LANES};
+use super::kernel::{self, Instructions};
+use crate::numeric::ln_rising;
 use std::collections::BTreeMap;
 
 /// Counts up to here are served by the table.
@@ -16,8 +18,8 @@ const TABLE: usize = 1_024;
 /// How often each count occurs, as the likelihood needs it.
 #[derive(Debug, Clone)]
 pub struct CountTable {
-    /// `above[j]`: rows with a count above j, each as often as it stands for others.
-    above: Vec<f64>,
+    /// Entry j, eight to a chunk: rows with a count above j, each as often as it stands for others.
+    above: Vec<Eight>,
     /// Counts above [`TABLE`] and how often each occurs.
     large: Vec<(f64, f64)>,
 }
@@ -44,10 +46,10 @@ impl CountTable {
             .keys()
             .next_back()
             .map_or(0, |count| (*count as usize).min(TABLE));
-        let mut above = vec![0.0; longest];
+        let mut above = vec![Eight::ZERO; longest.div_ceil(LANES)];
         for (count, times) in &occurrences {
-            for entry in &mut above[..(*count as usize).min(longest)] {
-                *entry += times;
+            for j in 0..(*count as usize).min(longest) {
+                above[j / LANES].0[j % LANES] += times;
             }
         }
         let large = occurrences
@@ -58,11 +60,8 @@ impl CountTable {
     }
 
     /// The part at a = c^2.
-    pub fn value(&self, a: f64) -> f64 {
-        let mut sum = 0.0;
-        for (j, rows) in self.above.iter().enumerate() {
-            sum += rows * ln_1p(a * j as f64);
-        }
+    pub fn value(&self, a: f64, instructions: Instructions) -> f64 {
+        let mut sum = kernel::sum_of_count_logs(instructions, &self.above, a);
         for (count, times) in &self.large {
             sum += times * ln_rising(TABLE as f64, *count, a).value;
         }
@@ -70,13 +69,13 @@ impl CountTable {
     }
 
     /// The part and its derivatives at a = c^2.
-    pub fn derivatives(&self, a: f64) -> CountPart {
+    pub fn derivatives(&self, a: f64, instructions: Instructions) -> CountPart {
         let mut part = CountPart {
-            value: self.value(a),
+            value: self.value(a, instructions),
             first: 0.0,
             second: 0.0,
         };
-        for (j, rows) in self.above.iter().enumerate() {
+        for (j, rows) in self.above.iter().flat_map(|chunk| chunk.0).enumerate() {
             let j = j as f64;
             let share = j / (1.0 + a * j);
             part.first += rows * share;

@@ -224,7 +224,7 @@ impl Model {
                 value += sum * coefficient;
             }
             if let (Some(scatter), Some(a)) = (&self.scatter, self.dispersion(point)) {
-                value += scatter.counts.value(a);
+                value += scatter.counts.value(a, self.instructions);
             }
             if value.is_finite() {
                 out[place] = value;
@@ -322,7 +322,7 @@ impl Model {
             let last = d - 1;
             let c = point[last].abs();
             let sign = if point[last] < 0.0 { -1.0 } else { 1.0 };
-            let counts = scatter.counts.derivatives(dispersion.unwrap_or(0.0));
+            let counts = scatter.counts.derivatives(dispersion.unwrap_or(0.0), self.instructions);
             if dispersion.is_some() {
                 value += counts.value;
                 summed += counts.value;

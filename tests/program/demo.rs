@@ -112,5 +112,5 @@ fn the_mode_is_found_where_its_last_rise_cannot_be_seen() {
     let csv = pools::csv(&pools::simulate(205));
     let table = table::parse_csv("pools.csv", csv.as_bytes()).unwrap();
     let design = design::build(&spec, &table).unwrap();
-    fit::laplace(&Model::new(&spec, &design), &Unwatched).unwrap();
+    fit::laplace(&Model::new(&spec, &design), 1, &Unwatched).unwrap();
 }

@@ -54,7 +54,7 @@ fn without_priors_the_mode_is_the_maximum_of_the_likelihood() {
         let reference = reference(case);
         let classical = &reference["classical"]["statsmodels"];
         let model = without_priors(&spec, &design);
-        let (mode, _) = fit::laplace(&model, &Unwatched).unwrap();
+        let (mode, _) = fit::laplace(&model, 1, &Unwatched).unwrap();
         let d = model.dimension();
         let boundary = classical["boundary"].as_bool() == Some(true);
         // Standard errors of the NB2 fits come from the observed information of the joint fit.
@@ -97,7 +97,7 @@ fn without_priors_the_mode_is_the_maximum_of_the_likelihood() {
 #[test]
 fn the_profile_gives_the_scatters_moments_where_its_mode_is_at_zero() {
     let (spec, design) = study("clinic.nb2");
-    let (mode, laplace) = fit::laplace(&Model::new(&spec, &design), &Unwatched).unwrap();
+    let (mode, laplace) = fit::laplace(&Model::new(&spec, &design), 1, &Unwatched).unwrap();
     assert_eq!(mode.scatter, Some(ScatterMode::AtZero));
     let reference = reference("clinic.nb2");
     let exact = &reference["independent_check"]["quadrature"]["parameters"];

@@ -66,7 +66,7 @@ fn the_profile_finds_the_scatter_at_every_size_of_counts() {
     ] {
         for seed in 1..=6 {
             let model = model(60, mean, scatter, seed);
-            let (mode, laplace) = fit::laplace(&model, &Unwatched).unwrap();
+            let (mode, laplace) = fit::laplace(&model, 1, &Unwatched).unwrap();
             let (exact, exact_sd) = by_brute_force(&model, mode.point[0], laplace.mean[1] + 12.0 * laplace.sd(1));
             let (found, sd) = (laplace.mean[1], laplace.sd(1));
             assert!(
@@ -82,7 +82,7 @@ fn chains_move_at_every_size_of_counts() {
     for (mean, scatter) in [(300.0, 0.0), (2_000.0, 0.0), (20_000.0, 0.0), (1e5, 0.008)] {
         for seed in 1..=25 {
             let model = model(60, mean, scatter, seed);
-            let (_, laplace) = fit::laplace(&model, &Unwatched).unwrap();
+            let (_, laplace) = fit::laplace(&model, 1, &Unwatched).unwrap();
             let plan = Plan {
                 chains: 4,
                 steps: Steps::Mixed,

@@ -27,7 +27,7 @@ mod values;
 pub use derivatives::derivatives;
 pub use instructions::Instructions;
 pub use predictor::Points;
-pub use values::{furthest, sums_of_logs, sums_of_means};
+pub use values::{furthest, sum_of_count_logs, sums_of_logs, sums_of_means};
 
 /// Points evaluated on a block while it is in the first-level cache. Their linear predictors take
 /// 4 KB beside the block's columns; more points would gain nothing, since arithmetic is the limit

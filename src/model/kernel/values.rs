@@ -3,7 +3,7 @@
 use super::LOCKSTEP;
 use super::instructions::{Instructions, for_each_set};
 use super::predictor::{BlockValues, Part, Points, predict};
-use crate::model::blocks::{BLOCK, Block, Blocks, DEPTH, LANES};
+use crate::model::blocks::{BLOCK, Block, Blocks, DEPTH, Eight, LANES};
 use crate::numeric::{exp_within, ln, ln_1p};
 
 /// The logarithm of a product of [`DEPTH`] factors 1 + a mu is taken at once where the linear
@@ -187,6 +187,31 @@ fn add_logs_of_rows(block: &Block, size: f64, x: &mut [f64; BLOCK], sums: &mut [
             sums[lane] += factor * x[depth * LANES + lane];
         }
     }
+}
+
+/// The sum over j of `above_j * log(1 + a j)`, eight entries to a chunk from j = 0 on.
+pub fn sum_of_count_logs(instructions: Instructions, above: &[Eight], a: f64) -> f64 {
+    let mut out = 0.0;
+    count_logs(instructions, above, a, &mut out);
+    out
+}
+
+for_each_set! {
+    /// [`sum_of_count_logs`].
+    fn count_logs(above: &[Eight], a: f64, out: &mut f64) = count_logs_kernel;
+}
+
+#[inline(always)]
+fn count_logs_kernel<const TILE: usize>(above: &[Eight], a: f64, out: &mut f64) {
+    let mut sums = [0.0; LANES];
+    let mut j: [f64; LANES] = std::array::from_fn(|lane| lane as f64);
+    for chunk in above {
+        for lane in 0..LANES {
+            sums[lane] += chunk.0[lane] * ln_1p(a * j[lane]);
+            j[lane] += LANES as f64;
+        }
+    }
+    *out = add_up(&sums);
 }
 
 /// The eight lanes of a sum, always in this order.
