@@ -6,7 +6,7 @@
 //! order, so the result does not depend on the width of the processor's vectors, on the number of
 //! points evaluated together, or on threads.
 
-use crate::design::Design;
+use crate::design::LikelihoodRows;
 use crate::numeric::{exp, ln_1p};
 
 /// Rows in a block.
@@ -27,8 +27,9 @@ pub struct Blocks {
     /// For each block, for each term, its values of the block's rows.
     columns: Vec<Lane>,
     log_exposure: Vec<Lane>,
+    /// Sum of the counts of all that each row stands for.
     counts: Vec<Lane>,
-    /// How many identical rows each row stands for.
+    /// How many rows of the study each row stands for.
     weights: Vec<Lane>,
     /// The largest absolute log exposure, and of each term the largest absolute value.
     largest_offset: f64,
@@ -56,10 +57,10 @@ pub struct RowSums {
 }
 
 impl Blocks {
-    /// Lays out the rows of a design, in their order.
-    pub fn new(design: &Design) -> Self {
-        let rows = design.counts.len();
-        let terms = design.columns.len();
+    /// Lays out the rows of a likelihood, in their order.
+    pub fn new(likelihood: &LikelihoodRows) -> Self {
+        let rows = likelihood.rows();
+        let terms = likelihood.columns.len();
         let blocks = rows.div_ceil(BLOCK);
         let padded = |values: &[f64]| {
             let mut out = vec![[0.0; BLOCK]; blocks];
@@ -69,7 +70,7 @@ impl Blocks {
             out
         };
         let mut columns = vec![[0.0; BLOCK]; blocks * terms];
-        for (term, column) in design.columns.iter().enumerate() {
+        for (term, column) in likelihood.columns.iter().enumerate() {
             for (row, value) in column.iter().enumerate() {
                 columns[row / BLOCK * terms + term][row % BLOCK] = *value;
             }
@@ -80,22 +81,17 @@ impl Blocks {
             blocks,
             rows,
             columns,
-            log_exposure: padded(&design.log_exposure),
-            counts: padded(&design.counts),
-            weights: padded(&design.stands_for),
-            largest_offset: largest(&design.log_exposure),
-            largest: design.columns.iter().map(|column| largest(column)).collect(),
+            log_exposure: padded(&likelihood.log_exposure),
+            counts: padded(&likelihood.counts),
+            weights: padded(&likelihood.weights),
+            largest_offset: largest(&likelihood.log_exposure),
+            largest: likelihood.columns.iter().map(|column| largest(column)).collect(),
         }
     }
 
     /// Number of coded columns.
     pub fn terms(&self) -> usize {
         self.terms
-    }
-
-    /// Number of rows, without those that fill up the last block.
-    pub fn rows(&self) -> usize {
-        self.rows
     }
 
     /// Whether every row's linear predictor is within [`PREDICTOR_LIMIT`] at these coefficients
@@ -168,7 +164,7 @@ impl Blocks {
         }
     }
 
-    /// For each point, the sum over rows of `weight * (y + 1/a) * log(1 + a mu)`, with a = c^2 of
+    /// For each point, the sum over rows of `(count + weight/a) * log(1 + a mu)`, with a = c^2 of
     /// that point in `dispersions`, each above 0.
     pub fn sum_of_log_terms(&self, points: &[f64], stride: usize, dispersions: &[f64], out: &mut [f64]) {
         let mut sums = vec![[0.0; LANES]; out.len()];
@@ -184,7 +180,7 @@ impl Blocks {
                     lane[row] = a * exp(lane[row]);
                 }
                 for row in 0..BLOCK {
-                    lane[row] = weights[row] * (counts[row] + size) * ln_1p(lane[row]);
+                    lane[row] = (counts[row] + weights[row] * size) * ln_1p(lane[row]);
                 }
                 add_to_lanes(&lane, sum);
             }
@@ -194,15 +190,16 @@ impl Blocks {
         }
     }
 
-    /// Derivatives at one point of `y * predictor - mu` for the Poisson (`dispersion` absent), of
-    /// `y * predictor - (y + 1/a) log(1 + a mu)` for the negative binomial with a = c^2 =
+    /// Derivatives at one point of `Y * predictor - W mu` for the Poisson (`dispersion` absent), of
+    /// `Y * predictor - (Y + W/a) log(1 + a mu)` for the negative binomial with a = c^2 =
     /// `dispersion`; at a = 0 the latter is its limit, the Poisson, but the derivatives by a are
-    /// there. The value leaves out y times the predictor, which the model knows in closed form.
+    /// there. Y is a row's count and W its weight. The value leaves out Y times the predictor, which
+    /// the model knows in closed form.
     ///
     /// With m = mu, D = 1 + a m and x = a m (Cameron & Trivedi 2013, section 3.3, for the first
     /// derivatives):
-    /// by the predictor (y - m)/D; twice -m (1 + a y)/D^2; by a: m^2 h(x) - y m/D, where
-    /// h(x) = (log(1+x) - x/(1+x))/x^2; twice m^3 h'(x) + y m^2/D^2; mixed -(y - m) m/D^2.
+    /// by the predictor (Y - W m)/D; twice -m (W + a Y)/D^2; by a: W m^2 h(x) - Y m/D, where
+    /// h(x) = (log(1+x) - x/(1+x))/x^2; twice W m^3 h'(x) + Y m^2/D^2; mixed -(Y - W m) m/D^2.
     pub fn derivatives(&self, point: &[f64], dispersion: Option<f64>) -> RowSums {
         let size = self.terms + 1;
         let mut sums = RowSums {
@@ -228,17 +225,17 @@ impl Blocks {
             for row in 0..BLOCK {
                 let (w, y, m) = (weights[row], counts[row], means[row]);
                 let d = 1.0 / (1.0 + a * m);
-                score[row] = w * (y - m) * d;
-                curvature[row] = -w * m * (1.0 + a * y) * d * d;
+                score[row] = (y - w * m) * d;
+                curvature[row] = -m * (w + a * y) * d * d;
             }
             if dispersion.is_some() {
                 for row in 0..BLOCK {
                     let (w, y, m) = (weights[row], counts[row], means[row]);
                     let d = 1.0 / (1.0 + a * m);
                     let (h, slope) = log_remainder(a * m);
-                    by_a[row] = w * (m * m * h - y * m * d);
-                    by_a_twice[row] = w * (m * m * m * slope + y * m * m * d * d);
-                    mixed[row] = -w * (y - m) * m * d * d;
+                    by_a[row] = w * m * m * h - y * m * d;
+                    by_a_twice[row] = w * m * m * m * slope + y * m * m * d * d;
+                    mixed[row] = -(y - w * m) * m * d * d;
                 }
                 sums.by_dispersion += sum_of(&by_a);
                 sums.by_dispersion_twice += sum_of(&by_a_twice);
@@ -246,7 +243,7 @@ impl Blocks {
             }
             for row in 0..BLOCK {
                 value[row] = if a > 0.0 {
-                    -weights[row] * (counts[row] + 1.0 / a) * ln_1p(a * means[row])
+                    -(counts[row] + weights[row] / a) * ln_1p(a * means[row])
                 } else {
                     -weights[row] * means[row]
                 };

@@ -9,7 +9,7 @@
 use super::blocks::Blocks;
 use super::count_table::CountTable;
 use super::prior::{BaselinePrior, NormalPrior, ScatterPrior};
-use crate::design::Design;
+use crate::design::{Alike, Design, LikelihoodRows, condense};
 use crate::numeric::{ln, ln_factorial};
 use crate::spec::{Baseline, Family, Spec};
 
@@ -22,6 +22,8 @@ const SMALLEST_DISPERSION: f64 = 1e-40;
 #[derive(Debug, Clone)]
 pub struct Model {
     parameters: Vec<String>,
+    /// Rows of the design, before any were taken together.
+    rows: usize,
     blocks: Blocks,
     /// Sum over rows of weight * y, then of weight * y * column for each term.
     count_sums: Vec<f64>,
@@ -94,6 +96,23 @@ impl Model {
         term_priors: Vec<NormalPrior>,
         scatter_prior: Option<ScatterPrior>,
     ) -> Self {
+        let alike = match scatter_prior {
+            None => Alike::Pattern,
+            Some(_) => Alike::PatternAndExposure,
+        };
+        let rows = condense(design, alike);
+        Model::on_rows(design, &rows, baseline_prior, term_priors, scatter_prior)
+    }
+
+    /// The same on rows of the likelihood that the caller made of the design: a second route to the
+    /// same posterior is that on [`LikelihoodRows::of`] the design, none taken together.
+    pub fn on_rows(
+        design: &Design,
+        rows: &LikelihoodRows,
+        baseline_prior: BaselinePrior,
+        term_priors: Vec<NormalPrior>,
+        scatter_prior: Option<ScatterPrior>,
+    ) -> Self {
         let weighted: Vec<f64> = design
             .counts
             .iter()
@@ -120,7 +139,8 @@ impl Model {
         let squares: f64 = design.counts.iter().zip(&weighted).map(|(y, wy)| y * wy).sum();
         Model {
             parameters,
-            blocks: Blocks::new(design),
+            rows: design.counts.len(),
+            blocks: Blocks::new(rows),
             // Half an incident is added, so that a table of zeros has a finite crude rate.
             start: ln((count_sums[0] + 0.5) / exposure),
             finest_scatter: (2.0 / squares.max(2.0)).sqrt().sqrt(),
@@ -156,9 +176,9 @@ impl Model {
         self.finest_scatter
     }
 
-    /// Number of rows.
+    /// Number of rows of the design, whether or not the likelihood takes some together.
     pub fn rows(&self) -> usize {
-        self.blocks.rows()
+        self.rows
     }
 
     /// Where a search for the mode may start: the crude rate, every rate ratio 1.
