@@ -10,6 +10,7 @@
 //! their eight logarithms are one (see `kernel`).
 
 use super::patterns::{Split, split};
+use crate::design::LikelihoodRows;
 use std::ops::Range;
 
 /// Rows side by side.
@@ -45,8 +46,6 @@ pub struct Blocks {
     pub blocks: usize,
     /// How many of them, the first ones, are deep.
     pub deep: usize,
-    /// Rows that are not there to fill up.
-    pub rows: usize,
     /// Where the terms' columns are.
     pub split: Split,
     /// For each chunk, the columns that stay.
@@ -93,9 +92,14 @@ impl<'a> Block<'a> {
 }
 
 impl Blocks {
-    /// Lays out rows. All slices are of one length: coded columns, log exposure, and for each row the
-    /// incidents and the number of all rows that it stands for.
-    pub fn new(columns: &[Vec<f64>], log_exposure: &[f64], counts: &[f64], weights: &[f64], order: Order) -> Self {
+    /// Lays out rows.
+    pub fn new(likelihood_rows: &LikelihoodRows, order: Order) -> Self {
+        let LikelihoodRows {
+            columns,
+            log_exposure,
+            counts,
+            weights,
+        } = likelihood_rows;
         let rows = counts.len();
         let blocks = rows.div_ceil(BLOCK);
         let split = split(columns);
@@ -136,7 +140,6 @@ impl Blocks {
         Blocks {
             blocks,
             deep,
-            rows,
             dense,
             patterns,
             log_exposure: laid(log_exposure),
@@ -212,7 +215,13 @@ mod tests {
         let counts: Vec<f64> = (0..rows).map(|row| f64::from(row * row % 7)).collect();
         let weights: Vec<f64> = (0..rows).map(|row| f64::from(1 + row % 2)).collect();
         let numbers: Vec<f64> = (0..rows).map(f64::from).collect();
-        let blocks = Blocks::new(&[numbers.clone()], &numbers, &counts, &weights, Order::ByCount);
+        let likelihood_rows = LikelihoodRows {
+            columns: vec![numbers.clone()].into(),
+            log_exposure: numbers.clone().into(),
+            counts: counts.clone(),
+            weights: weights.clone().into(),
+        };
+        let blocks = Blocks::new(&likelihood_rows, Order::ByCount);
         assert!(blocks.deep >= 13 && blocks.deep < blocks.blocks, "{}", blocks.deep);
         for block in (0..blocks.deep).map(|block| blocks.block(block)) {
             assert!(block.counts.iter().all(|chunk| *chunk == block.counts[0]));

@@ -10,7 +10,7 @@ use super::blocks::{Blocks, Order};
 use super::count_table::CountTable;
 use super::kernel::{self, Instructions, Points};
 use super::prior::{BaselinePrior, NormalPrior, ScatterPrior};
-use crate::design::Design;
+use crate::design::{Alike, Design, LikelihoodRows, condense};
 use crate::numeric::{ln, ln_factorial};
 use crate::spec::{Baseline, Family, Spec};
 
@@ -27,6 +27,8 @@ pub const PREDICTOR_LIMIT: f64 = 690.0;
 #[derive(Debug, Clone)]
 pub struct Model {
     parameters: Vec<String>,
+    /// Rows of the design, before any were taken together.
+    rows: usize,
     blocks: Blocks,
     instructions: Instructions,
     /// Sum over rows of weight * y, then of weight * y * column for each term.
@@ -100,6 +102,23 @@ impl Model {
         term_priors: Vec<NormalPrior>,
         scatter_prior: Option<ScatterPrior>,
     ) -> Self {
+        let alike = match scatter_prior {
+            None => Alike::Pattern,
+            Some(_) => Alike::PatternAndExposure,
+        };
+        let rows = condense(design, alike);
+        Model::on_rows(design, &rows, baseline_prior, term_priors, scatter_prior)
+    }
+
+    /// The same on rows of the likelihood that the caller made of the design: a second route to the
+    /// same posterior is that on [`LikelihoodRows::of`] the design, none taken together.
+    pub fn on_rows(
+        design: &Design,
+        rows: &LikelihoodRows,
+        baseline_prior: BaselinePrior,
+        term_priors: Vec<NormalPrior>,
+        scatter_prior: Option<ScatterPrior>,
+    ) -> Self {
         let weighted: Vec<f64> = design
             .counts
             .iter()
@@ -130,13 +149,8 @@ impl Model {
         };
         Model {
             parameters,
-            blocks: Blocks::new(
-                &design.columns,
-                &design.log_exposure,
-                &weighted,
-                &design.stands_for,
-                order,
-            ),
+            rows: design.counts.len(),
+            blocks: Blocks::new(rows, order),
             instructions: Instructions::widest(),
             // Half an incident is added, so that a table of zeros has a finite crude rate.
             start: ln((count_sums[0] + 0.5) / exposure),
@@ -178,9 +192,9 @@ impl Model {
         self.finest_scatter
     }
 
-    /// Number of rows.
+    /// Number of rows of the design, whether or not the likelihood takes some together.
     pub fn rows(&self) -> usize {
-        self.blocks.rows
+        self.rows
     }
 
     /// Where a search for the mode may start: the crude rate, every rate ratio 1.

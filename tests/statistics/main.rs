@@ -8,6 +8,7 @@
 #![allow(missing_docs, reason = "tests are named after the behaviour that they hold")]
 
 mod cases;
+mod condense;
 mod conjugacy;
 mod convergence;
 mod designs;
