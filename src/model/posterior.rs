@@ -221,29 +221,57 @@ impl Model {
     /// the model is not defined; never NaN. The result at a point does not depend on its company.
     pub fn log_densities(&self, points: &[f64], out: &mut [f64]) {
         let d = self.dimension();
-        let mut admitted = Vec::with_capacity(points.len());
-        let mut places = Vec::with_capacity(out.len());
+        let prepared = Points::new(&self.blocks, points, d);
+        // Nearly always all points are within the limit and of one kind, and are evaluated as they are.
+        let (mut with_scatter, mut without) = (Vec::new(), Vec::new());
         for (place, point) in points.chunks_exact(d).enumerate() {
             out[place] = f64::NEG_INFINITY;
-            if self.within_limit(point) {
-                admitted.extend_from_slice(point);
-                places.push(place);
+            if self.within_limit(&prepared, place) {
+                match self.dispersion(point) {
+                    Some(a) => with_scatter.push((place, a)),
+                    // The Poisson, or a chain at a scatter of exactly 0 among others.
+                    None => without.push((place, 0.0)),
+                }
             }
         }
-        let mut row_sums = vec![0.0; places.len()];
-        self.row_sums(&admitted, &mut row_sums);
-        for ((point, place), row_sum) in admitted.chunks_exact(d).zip(places).zip(row_sums) {
-            let mut value = self.constant + self.log_prior(point) - row_sum;
-            for (sum, coefficient) in self.count_sums.iter().zip(point) {
-                value += sum * coefficient;
+        for kind in [with_scatter, without] {
+            if kind.is_empty() {
+                continue;
             }
-            if let (Some(scatter), Some(a)) = (&self.scatter, self.dispersion(point)) {
-                value += scatter.counts.value(a, self.instructions);
+            let dispersions: Vec<f64> = kind.iter().map(|(_, a)| *a).collect();
+            let some: Points;
+            let chosen = if kind.len() == out.len() {
+                &prepared
+            } else {
+                let picked = kind.iter().flat_map(|(place, _)| &points[place * d..(place + 1) * d]);
+                some = Points::new(&self.blocks, &picked.copied().collect::<Vec<f64>>(), d);
+                &some
+            };
+            let mut row_sums = vec![0.0; kind.len()];
+            if dispersions[0] > 0.0 {
+                kernel::sums_of_logs(self.instructions, &self.blocks, chosen, &dispersions, &mut row_sums);
+            } else {
+                kernel::sums_of_means(self.instructions, &self.blocks, chosen, &mut row_sums);
             }
-            if value.is_finite() {
-                out[place] = value;
+            for ((place, a), row_sum) in kind.iter().zip(row_sums) {
+                let value = self.around_rows(&points[place * d..(place + 1) * d], *a) - row_sum;
+                if value.is_finite() {
+                    out[*place] = value;
+                }
             }
         }
+    }
+
+    /// All of the log density but the kernels' sums over rows, at a = c^2 = `dispersion`.
+    fn around_rows(&self, point: &[f64], dispersion: f64) -> f64 {
+        let mut value = self.constant + self.log_prior(point);
+        for (sum, coefficient) in self.count_sums.iter().zip(point) {
+            value += sum * coefficient;
+        }
+        if let (Some(scatter), true) = (&self.scatter, dispersion > 0.0) {
+            value += scatter.counts.value(dispersion, self.instructions);
+        }
+        value
     }
 
     /// Log posterior density at one point.
@@ -260,40 +288,14 @@ impl Model {
         (a >= SMALLEST_DISPERSION).then_some(a)
     }
 
-    /// Whether a point is finite and every row's linear predictor within [`PREDICTOR_LIMIT`] there. A
-    /// bound over all rows answers almost always; only where it does not are the rows looked at.
-    fn within_limit(&self, point: &[f64]) -> bool {
-        if !point.iter().all(|value| value.is_finite()) {
-            return false;
-        }
-        let coefficients = &point[..self.blocks.terms() + 1];
-        let points = Points::new(&self.blocks, coefficients, coefficients.len());
-        points.bound(0) <= PREDICTOR_LIMIT
-            || (points.bound(0).is_finite()
-                && kernel::furthest(self.instructions, &self.blocks, &points) <= PREDICTOR_LIMIT)
-    }
-
-    /// The sums over rows, for points that are all within the limit.
-    fn row_sums(&self, points: &[f64], out: &mut [f64]) {
-        let d = self.dimension();
-        let dispersions: Vec<Option<f64>> = points.chunks_exact(d).map(|point| self.dispersion(point)).collect();
-        let prepared = |points: &[f64]| Points::new(&self.blocks, points, d);
-        let (set, blocks) = (self.instructions, &self.blocks);
-        if dispersions.iter().all(Option::is_none) {
-            kernel::sums_of_means(set, blocks, &prepared(points), out);
-        } else if dispersions.iter().all(Option::is_some) {
-            let dispersions: Vec<f64> = dispersions.into_iter().flatten().collect();
-            kernel::sums_of_logs(set, blocks, &prepared(points), &dispersions, out);
-        } else {
-            // A chain at a scatter of exactly 0 among others: each on its own.
-            for ((point, dispersion), out) in points.chunks_exact(d).zip(dispersions).zip(out) {
-                let (points, out) = (prepared(point), std::slice::from_mut(out));
-                match dispersion {
-                    Some(a) => kernel::sums_of_logs(set, blocks, &points, &[a], out),
-                    None => kernel::sums_of_means(set, blocks, &points, out),
-                }
-            }
-        }
+    /// Whether every row's linear predictor is within [`PREDICTOR_LIMIT`] at one of the points. A bound
+    /// over all rows answers almost always; only where it does not are the rows looked at. A point
+    /// that is not finite has no finite bound, save for its scatter, which the sum shows.
+    fn within_limit(&self, points: &Points, place: usize) -> bool {
+        let bound = points.bound(place);
+        bound <= PREDICTOR_LIMIT
+            || (bound.is_finite()
+                && kernel::furthest(self.instructions, &self.blocks, points, place) <= PREDICTOR_LIMIT)
     }
 
     /// Value, gradient and Hessian at a point; `None` where the density is 0. The scatter's
@@ -302,14 +304,15 @@ impl Model {
     pub fn derivatives(&self, point: &[f64], threads: usize) -> Option<Derivatives> {
         let d = self.dimension();
         let size = self.blocks.terms() + 1;
-        if !self.within_limit(point) {
+        let prepared = Points::new(&self.blocks, point, d);
+        if !self.within_limit(&prepared, 0) {
             return None;
         }
         let dispersion = self.dispersion(point);
         let rows = kernel::derivatives(
             self.instructions,
             &self.blocks,
-            &point[..size],
+            &prepared,
             self.scatter.as_ref().map(|_| dispersion.unwrap_or(0.0)),
             threads,
         );

@@ -194,8 +194,8 @@ fn worst(design: &Design, rows: &LikelihoodRows, alike: Alike, point: &[f64]) ->
     let original = model_on(design, &LikelihoodRows::of(design), alike);
     let condensed = model_on(design, rows, alike);
     let (here, there) = (
-        original.derivatives(point).unwrap(),
-        condensed.derivatives(point).unwrap(),
+        original.derivatives(point, 1).unwrap(),
+        condensed.derivatives(point, 1).unwrap(),
     );
     let scale = scale(design, alike, point);
     let off = |a: f64, b: f64, scale: f64| if a == b { 0.0 } else { (a - b).abs() / scale };

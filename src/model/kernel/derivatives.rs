@@ -33,21 +33,20 @@ const SHARE: usize = 64;
 /// eight times, run out of registers and be half as fast.)
 const STRIP: usize = 2;
 
-/// The derivatives at `point` (intercept, then the coefficients), summed over all rows, on at most
+/// The derivatives at the one point of `point`, summed over all rows, on at most
 /// `threads` threads. The value leaves out `Y log mu`, which the model knows in closed form.
 pub fn derivatives(
     instructions: Instructions,
     blocks: &Blocks,
-    point: &[f64],
+    point: &Points,
     dispersion: Option<f64>,
     threads: usize,
 ) -> RowSums {
-    let points = Points::new(blocks, point, point.len());
     let shares = blocks.blocks.div_ceil(SHARE);
     let of_share = |share: usize| -> Sums<f64> {
         let mut sums = Sums::zero(&blocks.split);
         let range = share * SHARE..((share + 1) * SHARE).min(blocks.blocks);
-        add_rows(instructions, blocks, range, &points.part(0, 1), dispersion, &mut sums);
+        add_rows(instructions, blocks, range, &point.part(0, 1), dispersion, &mut sums);
         sums.added_up()
     };
     let threads = threads.clamp(1, shares.max(1));

@@ -40,10 +40,10 @@ pub fn sums_of_logs(
     }
 }
 
-/// The largest absolute linear predictor of any row at the one point of `point`.
-pub fn furthest(instructions: Instructions, blocks: &Blocks, point: &Points) -> f64 {
+/// The largest absolute linear predictor of any row at one of the points.
+pub fn furthest(instructions: Instructions, blocks: &Blocks, points: &Points, place: usize) -> f64 {
     let mut out = 0.0;
-    furthest_of(instructions, blocks, &point.part(0, 1), &mut out);
+    furthest_of(instructions, blocks, &points.part(place, 1), &mut out);
     out
 }
 
