@@ -21,7 +21,7 @@ pub use gamma::{ln_factorial, ln_gamma};
 pub use legendre::legendre;
 pub use negative_binomial::{nb2_cdf, nb2_ln_pmf, nb2_pmf, nb2_sf};
 pub use normal::{normal_cdf, normal_quantile};
-pub use poisson::{poisson_cdf, poisson_ln_pmf, poisson_pmf, poisson_sf};
+pub use poisson::{PoissonCount, poisson_cdf, poisson_ln_pmf, poisson_pmf, poisson_sf};
 pub use random::{Purpose, Stream};
 pub use rising::{RisingSum, ln_rising};
 pub use sum::{dot, mean, sum};
