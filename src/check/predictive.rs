@@ -2,7 +2,7 @@
 
 use super::tabulated::Tabulated;
 use crate::fit::quantile_of_sorted;
-use crate::numeric::{PoissonCount, mean};
+use crate::numeric::{PoissonCount, mean, sum_with};
 
 /// Up to this largest mean the distribution is tabulated count by count; above it, searched.
 const TABULATED_TO: f64 = 200.0;
@@ -120,8 +120,7 @@ fn coarse(means: &[f64]) -> Shape {
 
 fn at_most(means: &[f64], count: f64) -> f64 {
     let count = PoissonCount::new(count);
-    let values: Vec<f64> = means.iter().map(|mean| count.cdf(*mean)).collect();
-    mean(&values)
+    sum_with(means, |so_far, mean| count.add_cdf(so_far, mean)) / means.len().max(1) as f64
 }
 
 /// The smallest whole number at which the distribution function `cdf` reaches `p`, searched outwards

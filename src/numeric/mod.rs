@@ -24,4 +24,4 @@ pub use normal::{normal_cdf, normal_quantile};
 pub use poisson::{PoissonCount, poisson_cdf, poisson_ln_pmf, poisson_pmf, poisson_sf};
 pub use random::{Purpose, Stream};
 pub use rising::{RisingSum, ln_rising};
-pub use sum::{dot, mean, sum, sum_of};
+pub use sum::{dot, mean, sum, sum_of, sum_with};

@@ -105,55 +105,116 @@ impl PoissonCount {
         self.tails(mean, |_| next_pmf).at_most
     }
 
+    /// `sum` + P(Y <= y), for a sum from 0: the bits of that sum, with less work where nothing else shows in it.
+    ///
+    /// Far from the mean the tail that is computed vanishes, and a bound of its series tells so: a number
+    /// below [`UNSEEN`] of the other is less than half of its last bit, and changes nothing.
+    pub fn add_cdf(&self, sum: f64, mean: f64) -> f64 {
+        match self.side_of(mean) {
+            Side::Upper => {
+                let next = exp_to_zero(self.next.ln_pmf(self.y + 1.0, mean));
+                if next < UNSEEN * (1.0 - mean / (self.y + 2.0)) {
+                    sum + 1.0
+                } else {
+                    sum + (1.0 - next * upper_series(self.y + 1.0, mean))
+                }
+            }
+            Side::Lower => {
+                let this = self.pmf(mean);
+                if this < UNSEEN * sum * (1.0 - self.y / mean) {
+                    sum
+                } else {
+                    sum + this * lower_series(self.y, mean)
+                }
+            }
+            Side::Outside | Side::NoMean | Side::Near => sum + self.cdf(mean),
+        }
+    }
+
     /// Both tails: the smaller one is computed, the other is what it leaves of 1. The upper one starts from
     /// the probability of y + 1, which is asked for where it is needed.
     #[inline]
     fn tails(&self, mean: f64, next_pmf: impl FnOnce(f64) -> f64) -> Tails {
-        let y = self.y;
-        if y < 0.0 {
-            return Tails {
+        match self.side_of(mean) {
+            Side::Outside => Tails {
                 at_most: 0.0,
                 above: 1.0,
-            };
-        }
-        if mean == 0.0 {
-            return Tails {
+            },
+            Side::NoMean => Tails {
                 at_most: 1.0,
                 above: 0.0,
-            };
-        }
-        let a = y + 1.0;
-        if a >= 40.0 && (mean - a).abs() <= 0.3 * a {
-            return tails_near_large_mean(y, mean);
-        }
-        if mean < a {
-            // P(Y > y) = p(y + 1) (1 + mean / (y + 2) + mean^2 / ((y + 2) (y + 3)) + ...)
-            let (mut term, mut sum, mut k) = (1.0, 1.0, a);
-            while term > 1e-17 * sum {
-                k += 1.0;
-                term *= mean / k;
-                sum += term;
+            },
+            Side::Near => tails_near_large_mean(self.y, mean),
+            Side::Upper => {
+                let above = next_pmf(self.y + 1.0) * upper_series(self.y + 1.0, mean);
+                Tails {
+                    at_most: 1.0 - above,
+                    above,
+                }
             }
-            let above = next_pmf(a) * sum;
-            Tails {
-                at_most: 1.0 - above,
-                above,
-            }
-        } else {
-            // P(Y <= y) = p(y) (1 + y / mean + y (y - 1) / mean^2 + ...)
-            let (mut term, mut sum, mut k) = (1.0, 1.0, y);
-            while k > 0.0 && term > 1e-17 * sum {
-                term *= k / mean;
-                sum += term;
-                k -= 1.0;
-            }
-            let at_most = self.pmf(mean) * sum;
-            Tails {
-                at_most,
-                above: 1.0 - at_most,
+            Side::Lower => {
+                let at_most = self.pmf(mean) * lower_series(self.y, mean);
+                Tails {
+                    at_most,
+                    above: 1.0 - at_most,
+                }
             }
         }
     }
+
+    fn side_of(&self, mean: f64) -> Side {
+        let a = self.y + 1.0;
+        if self.y < 0.0 {
+            Side::Outside
+        } else if mean == 0.0 {
+            Side::NoMean
+        } else if a >= 40.0 && (mean - a).abs() <= 0.3 * a {
+            Side::Near
+        } else if mean < a {
+            Side::Upper
+        } else {
+            Side::Lower
+        }
+    }
+}
+
+/// Less than 2^-54: this much of a number, added or taken off, is rounded away.
+const UNSEEN: f64 = 5e-17;
+
+/// Where a count lies, which tells how its tails are computed.
+enum Side {
+    /// Below 0, where there is no count.
+    Outside,
+    /// The mean is 0.
+    NoMean,
+    /// Near a large mean: by the uniform expansion.
+    Near,
+    /// Above the mean: the upper tail by its series.
+    Upper,
+    /// Below the mean: the lower tail by its series.
+    Lower,
+}
+
+/// P(Y >= a) / P(Y = a) = 1 + mean / (a + 1) + mean^2 / ((a + 1) (a + 2)) + ..., less than 1 / (1 - mean / (a + 1)).
+fn upper_series(a: f64, mean: f64) -> f64 {
+    let (mut term, mut sum, mut k) = (1.0, 1.0, a);
+    while term > 1e-17 * sum {
+        k += 1.0;
+        term *= mean / k;
+        sum += term;
+    }
+    sum
+}
+
+/// P(Y <= y) / P(Y = y) = 1 + y / mean + y (y - 1) / mean^2 + ..., less than 1 / (1 - y / mean).
+fn lower_series(y: f64, mean: f64) -> f64 {
+    let (mut term, mut sum, mut k) = (1.0, 1.0, y);
+    while k > 0.0 && term > 1e-17 * sum {
+        term *= k / mean;
+        sum += term;
+        k -= 1.0;
+    }
+    sum
 }
 
 /// ln P(Y = y) for a whole `y` from 0 and a `mean` from 0 (at mean 0: 0 for y = 0, else minus infinity).
@@ -195,6 +256,9 @@ mod tests {
                     same(next[k], poisson_pmf(y + 1.0, *mean));
                     same(count.cdf(*mean), poisson_cdf(y, *mean));
                     same(count.cdf_before(*mean, next[k]), poisson_cdf(y, *mean));
+                    for sum in [0.0, 1e-30, 1e-9, 0.7, 1.0, 3.0, 4e3] {
+                        same(count.add_cdf(sum, *mean), sum + poisson_cdf(y, *mean));
+                    }
                 }
             }
         }

@@ -14,15 +14,21 @@ pub fn sum(values: &[f64]) -> f64 {
 /// Sum of what `of` makes of each value: the same bits as the sum of those, without room for them.
 #[inline]
 pub fn sum_of(values: &[f64], of: impl Fn(f64) -> f64) -> f64 {
+    sum_with(values, |so_far, value| so_far + of(value))
+}
+
+/// Sum that `add` takes each value into, given what its lane has summed so far.
+#[inline]
+pub fn sum_with(values: &[f64], add: impl Fn(f64, f64) -> f64) -> f64 {
     let (blocks, rest) = values.as_chunks::<LANES>();
     let mut lanes = [0.0; LANES];
     for block in blocks {
         for lane in 0..LANES {
-            lanes[lane] += of(block[lane]);
+            lanes[lane] = add(lanes[lane], block[lane]);
         }
     }
     for (lane, value) in rest.iter().enumerate() {
-        lanes[lane] += of(*value);
+        lanes[lane] = add(lanes[lane], *value);
     }
     together(lanes)
 }
