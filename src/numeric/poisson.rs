@@ -108,7 +108,7 @@ impl PoissonCount {
     /// `sum` + P(Y <= y), for a sum from 0: the bits of that sum, with less work where nothing else shows in it.
     ///
     /// Far from the mean the tail that is computed vanishes, and a bound of its series tells so: a number
-    /// below [`UNSEEN`] of the other is less than half of its last bit, and changes nothing.
+    /// below `UNSEEN` of the other is less than half of its last bit, and changes nothing.
     pub fn add_cdf(&self, sum: f64, mean: f64) -> f64 {
         match self.side_of(mean) {
             Side::Upper => {
