@@ -2,6 +2,7 @@
 
 mod predictive;
 mod prior;
+mod tabulated;
 mod units;
 
 pub use prior::{

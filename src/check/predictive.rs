@@ -1,7 +1,8 @@
 //! The predictive distribution of a count, given for each posterior draw the mean of a Poisson.
 
+use super::tabulated::Tabulated;
 use crate::fit::quantile_of_sorted;
-use crate::numeric::{exp, mean, poisson_cdf, poisson_pmf};
+use crate::numeric::{PoissonCount, mean, sum_with};
 
 /// Up to this largest mean the distribution is tabulated count by count; above it, searched.
 const TABULATED_TO: f64 = 200.0;
@@ -15,7 +16,7 @@ pub(super) struct Predictive {
 /// What finds the quantiles of a [`Predictive`].
 enum Shape {
     /// P(k or fewer) for k from 0.
-    Table(Vec<f64>),
+    Table(Tabulated),
     /// A few means that stand for groups of neighbouring ones, and the standard deviation of the count by them.
     Coarse(Vec<f64>, f64),
 }
@@ -31,54 +32,63 @@ pub(super) struct Reached {
     pub(super) below: f64,
 }
 
+/// Where a count lies in its predictive distribution.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) struct Tail {
+    /// P(fewer) + P(exactly as many) / 2: the mid-p tail probability.
+    pub(super) probability: f64,
+    /// Monte Carlo standard error of that probability.
+    pub(super) error: f64,
+}
+
 impl Predictive {
     /// From the mean under each draw; every one finite.
     pub(super) fn new(means: Vec<f64>) -> Predictive {
-        let mut sorted = means.clone();
-        sorted.sort_unstable_by(f64::total_cmp);
-        let most = sorted.last().copied().unwrap_or(0.0);
+        let most = means.iter().copied().fold(0.0, f64::max);
         let shape = if most <= TABULATED_TO {
-            Shape::Table(table(&means, most))
+            Shape::Table(Tabulated::new(&means, most))
         } else {
-            coarse(&sorted)
+            coarse(&means)
         };
         Predictive { means, shape }
     }
 
-    /// P(count or fewer).
-    pub(super) fn at_most(&self, count: f64) -> f64 {
+    /// P(count or fewer). (What had to be tabulated for it is kept.)
+    pub(super) fn at_most(&mut self, count: f64) -> f64 {
         if count < 0.0 {
             return 0.0;
         }
-        match &self.shape {
-            Shape::Table(table) if count < table.len() as f64 => table[count as usize],
+        match &mut self.shape {
+            Shape::Table(table) if count < table.most_counts() as f64 => table.at_most(count as usize, &self.means),
             _ => at_most(&self.means, count),
         }
     }
 
-    /// P(exactly this count).
-    pub(super) fn exactly(&self, count: f64) -> f64 {
-        average(&self.means, |mean| poisson_pmf(count, mean))
-    }
+    /// The mid-p tail probability of a count, and its simulation error: its spread over draws, taken
+    /// from `at_most` of them.
+    pub(super) fn tail(&mut self, count: f64, at_most: usize) -> Tail {
+        let fewer = PoissonCount::new(count - 1.0);
+        let exactly = PoissonCount::new(count).pmf_each(&self.means);
 
-    /// Monte Carlo standard error of the mid-p tail probability of a count, its spread over draws
-    /// taken from `at_most` of them.
-    pub(super) fn error_of_tail(&self, count: f64, at_most: usize) -> f64 {
         let used = self.means.len().min(at_most);
         let tails: Vec<f64> = (0..used)
-            .map(|k| self.means[k * self.means.len() / used])
-            .map(|mean| poisson_cdf(count - 1.0, mean) + 0.5 * poisson_pmf(count, mean))
+            .map(|k| k * self.means.len() / used)
+            .map(|k| fewer.cdf_before(self.means[k], exactly[k]) + 0.5 * exactly[k])
             .collect();
         let centre = mean(&tails);
         let squares: Vec<f64> = tails.iter().map(|tail| (tail - centre) * (tail - centre)).collect();
-        (mean(&squares) / self.means.len() as f64).sqrt()
+        Tail {
+            // Two roundings can add up to a hair above 1.
+            probability: (self.at_most(count - 1.0) + 0.5 * mean(&exactly)).min(1.0),
+            error: (mean(&squares) / self.means.len() as f64).sqrt(),
+        }
     }
 
     /// The smallest count whose distribution function is at least `p`, exact over the draws.
-    pub(super) fn smallest_reaching(&self, p: f64) -> Reached {
-        match &self.shape {
+    pub(super) fn smallest_reaching(&mut self, p: f64) -> Reached {
+        match &mut self.shape {
             Shape::Table(table) => {
-                let count = table.partition_point(|reached| *reached < p) as f64;
+                let count = table.smallest_reaching(p, &self.means) as f64;
                 Reached {
                     count,
                     reached: self.at_most(count),
@@ -87,44 +97,19 @@ impl Predictive {
             }
             Shape::Coarse(coarse, sd) => {
                 let most = coarse.last().copied().unwrap_or(0.0);
-                let rough = search(p, most.floor(), (0.25 * sd).floor(), |count| at_most(coarse, count));
-                search(p, rough.count, (0.02 * sd).floor(), |count| self.at_most(count))
+                let rough = search(p, most.floor(), (0.25 * *sd).floor(), |count| at_most(coarse, count));
+                let means = &self.means;
+                search(p, rough.count, (0.02 * *sd).floor(), |count| at_most(means, count))
             }
         }
     }
 }
 
-/// The distribution function from 0 to where less than 1e-20 is left, by p(k + 1) = p(k) mean / (k + 1).
-///
-/// A multiplication for each count and draw, where the distribution function itself takes a sum.
-fn table(means: &[f64], most: f64) -> Vec<f64> {
-    let length = (most + 12.0 * most.sqrt() + 40.0) as usize;
-    let reciprocals: Vec<f64> = (1..=length).map(|k| 1.0 / k as f64).collect();
-    let mut probabilities = vec![0.0; length];
-    for mean in means {
-        let mut p = exp(-mean);
-        for (k, (sum, reciprocal)) in probabilities.iter_mut().zip(&reciprocals).enumerate() {
-            *sum += p;
-            p *= mean * reciprocal;
-            if p < 1e-25 && k as f64 > *mean {
-                break;
-            }
-        }
-    }
-    let mut below = 0.0;
-    let share = 1.0 / means.len().max(1) as f64;
-    probabilities
-        .iter()
-        .map(|p| {
-            below += p * share;
-            below
-        })
-        .collect()
-}
-
-fn coarse(sorted: &[f64]) -> Shape {
+fn coarse(means: &[f64]) -> Shape {
+    let mut sorted = means.to_vec();
+    sorted.sort_unstable_by(f64::total_cmp);
     let groups = 48;
-    let middles = (0..groups).map(|g| quantile_of_sorted(sorted, (f64::from(g) + 0.5) / f64::from(groups)));
+    let middles = (0..groups).map(|g| quantile_of_sorted(&sorted, (f64::from(g) + 0.5) / f64::from(groups)));
     let coarse: Vec<f64> = middles.collect();
     // Of the coarse means, so that one wild draw does not set the step of the search.
     let centre = mean(&coarse);
@@ -134,16 +119,8 @@ fn coarse(sorted: &[f64]) -> Shape {
 }
 
 fn at_most(means: &[f64], count: f64) -> f64 {
-    if count < 0.0 {
-        0.0
-    } else {
-        average(means, |mean| poisson_cdf(count, mean))
-    }
-}
-
-fn average(means: &[f64], of: impl Fn(f64) -> f64) -> f64 {
-    let values: Vec<f64> = means.iter().map(|mean| of(*mean)).collect();
-    mean(&values)
+    let count = PoissonCount::new(count);
+    sum_with(means, |so_far, mean| count.add_cdf(so_far, mean)) / means.len().max(1) as f64
 }
 
 /// The smallest whole number at which the distribution function `cdf` reaches `p`, searched outwards
@@ -214,6 +191,20 @@ mod tests {
         (0..count).map(|_| centre * stream.gamma(shape) / shape).collect()
     }
 
+    /// A table that grows as it is asked for holds the same bits as one that is filled at once.
+    #[test]
+    fn the_order_of_the_questions_changes_nothing() {
+        for (centre, cv) in [(0.01, 0.5), (7.0, 0.1), (60.0, 0.7)] {
+            let means = invented_means(300, centre, cv);
+            let mut upwards = Predictive::new(means.clone());
+            let mut downwards = Predictive::new(means);
+            let counts: Vec<f64> = (0..180).map(f64::from).collect();
+            let up: Vec<f64> = counts.iter().map(|count| upwards.at_most(*count)).collect();
+            let down: Vec<f64> = counts.iter().rev().map(|count| downwards.at_most(*count)).collect();
+            assert!(up.iter().eq(down.iter().rev()));
+        }
+    }
+
     /// The walk sums exact probabilities, the table a recurrence, and above 200 nothing is tabulated.
     #[test]
     fn quantiles_are_those_of_a_walk_from_zero() {
@@ -226,7 +217,7 @@ mod tests {
             (450.0, 0.02),
             (900.0, 0.02),
         ] {
-            let predictive = Predictive::new(invented_means(300, centre, cv));
+            let mut predictive = Predictive::new(invented_means(300, centre, cv));
             for p in [0.001, 0.025, 0.5, 0.9, 0.975, 0.9999] {
                 let found = predictive.smallest_reaching(p);
                 let walked = (0..).map(f64::from).find(|k| at_most(&predictive.means, *k) >= p);
@@ -244,15 +235,15 @@ mod tests {
 
     #[test]
     fn a_count_beyond_the_table_is_still_exact() {
-        let predictive = Predictive::new(vec![3.0; 10]);
+        let mut predictive = Predictive::new(vec![3.0; 10]);
         assert_eq!(predictive.at_most(1e6), 1.0);
-        assert!((predictive.exactly(150.0) / poisson_pmf(150.0, 3.0) - 1.0).abs() < 1e-14);
+        assert_eq!(predictive.tail(150.0, 10).probability, 1.0);
     }
 
     #[test]
     fn quantiles_of_large_counts_are_bracketed() {
         for (centre, cv) in [(1e6, 0.3), (1e9, 1e-6), (1e12, 0.5)] {
-            let predictive = Predictive::new(invented_means(300, centre, cv));
+            let mut predictive = Predictive::new(invented_means(300, centre, cv));
             for p in [0.025, 0.975] {
                 let found = predictive.smallest_reaching(p);
                 assert!(predictive.at_most(found.count) >= p && predictive.at_most(found.count - 1.0) < p);

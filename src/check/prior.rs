@@ -219,8 +219,9 @@ fn simulate(spec: &Spec, design: &Design) -> Simulated {
     let mut baselines = Vec::with_capacity(SIMULATIONS);
     let mut rates = Vec::with_capacity(SIMULATIONS);
     let mut counts = Vec::with_capacity(SIMULATIONS);
+    let log_baseline = LogBaseline::of(spec, design.coding.per);
     for _ in 0..SIMULATIONS {
-        let baseline = draw_log_baseline(spec, design.coding.per, &mut stream);
+        let baseline = log_baseline.draw(&mut stream);
         let row = written_out.row(stream.below(written_out.rows()));
         let mut predictor = baseline;
         for (term, column) in design.terms.iter().zip(&design.columns) {
@@ -247,13 +248,36 @@ fn simulate(spec: &Spec, design: &Design) -> Simulated {
     }
 }
 
-/// A baseline from its prior: log rate per unit of raw exposure.
-fn draw_log_baseline(spec: &Spec, per: f64, stream: &mut Stream) -> f64 {
-    match &spec.baseline {
-        Baseline::PlausibleRate(range) => range.log_mean() - ln(per) + range.log_sd() * stream.normal(),
-        Baseline::Earlier {
-            incidents, exposure, ..
-        } => stream.ln_gamma(*incidents) - ln(*exposure),
+/// The prior of the baseline: log rate per unit of raw exposure.
+enum LogBaseline {
+    Normal { mean: f64, sd: f64 },
+    LogGamma { incidents: f64, log_exposure: f64 },
+}
+
+impl LogBaseline {
+    fn of(spec: &Spec, per: f64) -> LogBaseline {
+        match &spec.baseline {
+            Baseline::PlausibleRate(range) => LogBaseline::Normal {
+                mean: range.log_mean() - ln(per),
+                sd: range.log_sd(),
+            },
+            Baseline::Earlier {
+                incidents, exposure, ..
+            } => LogBaseline::LogGamma {
+                incidents: *incidents,
+                log_exposure: ln(*exposure),
+            },
+        }
+    }
+
+    fn draw(&self, stream: &mut Stream) -> f64 {
+        match self {
+            LogBaseline::Normal { mean, sd } => mean + sd * stream.normal(),
+            LogBaseline::LogGamma {
+                incidents,
+                log_exposure,
+            } => stream.ln_gamma(*incidents) - log_exposure,
+        }
     }
 }
 
@@ -291,7 +315,7 @@ fn ratio(term: &Term) -> PriorRatio {
 }
 
 fn range_of(values: &mut [f64], factor: f64) -> PriorRange {
-    values.sort_by(f64::total_cmp);
+    values.sort_unstable_by(f64::total_cmp);
     PriorRange {
         lower: factor * quantile_of_sorted(values, 0.025),
         median: factor * quantile_of_sorted(values, 0.5),

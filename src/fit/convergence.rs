@@ -5,7 +5,8 @@
 //! that a chain that drifts disagrees with itself.
 
 use super::effective::{Chains, centre, squares_about};
-use crate::numeric::{beta_quantile, mean, normal_quantile};
+use crate::numeric::{beta_quantile, mean, normal_quantile, sum_of};
+use std::borrow::Cow;
 
 /// Summary of one parameter's draws, with the simulation error of each figure.
 ///
@@ -64,16 +65,15 @@ pub fn assess(values: &[f64], chains: usize, interval: f64) -> Assessment {
             // Ties at an end: the indicator cannot move and says nothing about the chains.
             return values.len() as f64;
         }
-        halves.effective(&halves.split(&below))
+        halves.chains(&below).effective()
     };
     let error_of_quantile = |p: f64| quantile_error(&order.sorted, indicator(at(p)), p);
     let squares: Vec<f64> = values.iter().map(|v| (v - centre) * (v - centre)).collect();
 
-    let ranked = order.rank_normalised(&halves);
+    let ranked = halves.chains(&order.rank_normalised(&halves));
     let folded = {
         let middle = quantile_of_sorted(&order.without_middles(&halves), 0.5);
-        let distances: Vec<f64> = values.iter().map(|v| (v - middle).abs()).collect();
-        Ordered::new(&distances).rank_normalised(&halves)
+        halves.chains(&order.folded_about(middle).rank_normalised(&halves))
     };
     let split_r_hat = match (halves.r_hat(&ranked), halves.r_hat(&folded)) {
         (Some(bulk), Some(tail)) => Some(bulk.max(tail)),
@@ -86,12 +86,12 @@ pub fn assess(values: &[f64], chains: usize, interval: f64) -> Assessment {
         median: at(0.5),
         lower: at(low),
         upper: at(high),
-        error_of_mean: sd / halves.effective(&halves.split(values)).sqrt(),
-        error_of_sd: error_of_sd(&squares, halves.effective(&halves.split(&squares))),
+        error_of_mean: sd / halves.chains(values).effective().sqrt(),
+        error_of_sd: error_of_sd(&squares, halves.chains(&squares).effective()),
         error_of_median: error_of_quantile(0.5),
         error_of_lower: error_of_quantile(low),
         error_of_upper: error_of_quantile(high),
-        effective_draws: halves.effective(&ranked),
+        effective_draws: ranked.effective(),
         effective_tail_draws: indicator(at(0.05)).min(indicator(at(0.95))),
         split_r_hat,
     }
@@ -125,25 +125,21 @@ impl Halves {
         self.per_chain % 2 == 1 && place % self.per_chain == self.length()
     }
 
-    fn split(&self, values: &[f64]) -> Vec<f64> {
+    fn split<'a>(&self, values: &'a [f64]) -> Cow<'a, [f64]> {
+        if self.per_chain.is_multiple_of(2) {
+            return Cow::Borrowed(values);
+        }
         let kept = values.iter().enumerate().filter(|(place, _)| !self.is_middle(*place));
         kept.map(|(_, value)| *value).collect()
     }
 
-    fn chains_of<'a>(&self, split: &'a [f64]) -> Chains<'a> {
-        Chains::new(split, 2 * self.chains)
+    /// The halves, each a chain.
+    fn chains(&self, values: &[f64]) -> Chains {
+        Chains::new(&self.split(values), 2 * self.chains)
     }
 
-    fn effective(&self, split: &[f64]) -> f64 {
-        self.chains_of(split).effective()
-    }
-
-    fn r_hat(&self, split: &[f64]) -> Option<f64> {
-        if self.per_chain < 4 {
-            None
-        } else {
-            self.chains_of(split).r_hat()
-        }
+    fn r_hat(&self, halves: &Chains) -> Option<f64> {
+        if self.per_chain < 4 { None } else { halves.r_hat() }
     }
 }
 
@@ -155,9 +151,31 @@ struct Ordered {
 
 impl Ordered {
     fn new(values: &[f64]) -> Ordered {
-        let mut pairs: Vec<(f64, usize)> = values.iter().copied().zip(0..).collect();
-        pairs.sort_unstable_by(|a, b| a.0.total_cmp(&b.0).then(a.1.cmp(&b.1)));
-        let (sorted, place) = pairs.into_iter().unzip();
+        // Value and place as one whole number: a comparison is then a subtraction, and no branch.
+        let mut keys: Vec<u128> = (0_u128..)
+            .zip(values)
+            .map(|(place, value)| u128::from(ordered(value.to_bits())) << 64 | place)
+            .collect();
+        keys.sort_unstable();
+        let sorted = keys.iter().map(|key| f64::from_bits(unordered((key >> 64) as u64)));
+        Ordered {
+            sorted: sorted.collect(),
+            place: keys.iter().map(|key| *key as u64 as usize).collect(),
+        }
+    }
+
+    /// The distances from `middle` in order. Nothing needs sorting: they fall up to it and rise beyond.
+    fn folded_about(&self, middle: f64) -> Ordered {
+        let distance = |k: &usize| (self.sorted[*k] - middle).abs();
+        let meeting = self.sorted.partition_point(|value| *value < middle);
+        let mut below = (0..meeting).rev().peekable();
+        let mut above = (meeting..self.sorted.len()).peekable();
+        let nearest_first = std::iter::from_fn(|| match (below.peek().map(distance), above.peek().map(distance)) {
+            (Some(left), Some(right)) if left < right => below.next(),
+            (Some(_), None) => below.next(),
+            _ => above.next(),
+        });
+        let (sorted, place) = nearest_first.map(|k| (distance(&k), self.place[k])).unzip();
         Ordered { sorted, place }
     }
 
@@ -170,7 +188,8 @@ impl Ordered {
         kept.map(|(value, _)| *value).collect()
     }
 
-    /// The split values replaced by normal quantiles of (rank - 3/8) / (S + 1/4), ties at their average rank.
+    /// The values replaced by normal quantiles of (rank - 3/8) / (S + 1/4), ties at their average rank; middle
+    /// draws that no half holds have no rank.
     fn rank_normalised(&self, halves: &Halves) -> Vec<f64> {
         let kept: Vec<usize> = (0..self.place.len())
             .filter(|k| !halves.is_middle(self.place[*k]))
@@ -194,8 +213,18 @@ impl Ordered {
             }
             start += tied;
         }
-        halves.split(&scores)
+        scores
     }
+}
+
+/// The bits of a float as a whole number in the order of the floats, as `f64::total_cmp` has it.
+fn ordered(bits: u64) -> u64 {
+    bits ^ (((bits as i64) >> 63) as u64 | 1 << 63)
+}
+
+/// What [`ordered`] made the number of.
+fn unordered(number: u64) -> u64 {
+    number ^ (((!number as i64) >> 63) as u64 | 1 << 63)
 }
 
 /// Monte Carlo error of the sd by the delta method: Var(s^2) = (E d^4 - (E d^2)^2) / effective, Var(s) = Var(s^2) / (4 s^2).
@@ -204,8 +233,8 @@ fn error_of_sd(squares: &[f64], effective: f64) -> f64 {
     if variance <= 0.0 {
         return 0.0;
     }
-    let fourth: Vec<f64> = squares.iter().map(|square| square * square).collect();
-    let spread = (mean(&fourth) - variance * variance).max(0.0);
+    let fourth = sum_of(squares, |square| square * square) / squares.len() as f64;
+    let spread = (fourth - variance * variance).max(0.0);
     (spread / effective / variance / 4.0).sqrt()
 }
 
@@ -224,5 +253,38 @@ fn quantile_error(sorted: &[f64], effective: f64, p: f64) -> f64 {
     match (sorted.get(low.min(last)), sorted.get(high.min(last))) {
         (Some(low), Some(high)) => 0.5 * (high - low),
         _ => 0.0,
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// By the standard library's own sort, at the values where an order by bits could go wrong.
+    #[test]
+    fn the_order_is_that_of_the_floats() {
+        let values = [1.5, -0.0, 3e-320, 0.0, -1e308, -1.5, 1e308, -3e-320, 1.5];
+        let order = Ordered::new(&values);
+        let mut pairs: Vec<(f64, usize)> = values.iter().copied().zip(0..).collect();
+        pairs.sort_by(|a, b| a.0.total_cmp(&b.0).then(a.1.cmp(&b.1)));
+        let bits = |sorted: &[f64]| sorted.iter().map(|value| value.to_bits()).collect::<Vec<_>>();
+        let (sorted, place): (Vec<f64>, Vec<usize>) = pairs.into_iter().unzip();
+        assert_eq!(bits(&order.sorted), bits(&sorted));
+        assert_eq!(order.place, place);
+    }
+
+    /// By sorting them: from a middle inside, at an end, between and outside of the values.
+    #[test]
+    fn folded_values_are_in_order() {
+        let values = [2.0, -1.0, 0.5, 2.0, 7.0, 0.5, -3.25];
+        for middle in [0.5, -3.25, 7.0, 1.0, 90.0, -90.0] {
+            let folded = Ordered::new(&values).folded_about(middle);
+            let mut distances: Vec<f64> = values.iter().map(|value| (value - middle).abs()).collect();
+            for (distance, place) in folded.sorted.iter().zip(&folded.place) {
+                assert_eq!(*distance, distances[*place]);
+            }
+            distances.sort_by(f64::total_cmp);
+            assert_eq!(folded.sorted, distances);
+        }
     }
 }

@@ -1,6 +1,6 @@
 //! How many independent draws chains are worth.
 
-use crate::numeric::{Fourier, dot, ln, mean, sum};
+use crate::numeric::{Fourier, dot, ln, mean, sum, sum_of};
 
 /// Lags whose autocovariances are summed directly; what needs more goes through a transform.
 ///
@@ -8,42 +8,46 @@ use crate::numeric::{Fourier, dot, ln, mean, sum};
 /// draws, which at a million draws would take minutes lag by lag.
 const DIRECT_LAGS: usize = 512;
 
-/// Chains of equal length, one after another.
-#[derive(Debug, Clone, Copy)]
-pub(super) struct Chains<'a> {
-    values: &'a [f64],
+/// Chains of equal length, each about its own mean.
+#[derive(Debug, Clone)]
+pub(super) struct Chains {
+    /// Draws less the mean of their chain, chain after chain.
+    centred: Vec<f64>,
     count: usize,
+    /// Variance of the draws within chains: the average over chains, denominator n - 1.
+    within: f64,
+    /// Variance of the chains' means; 0 for a single chain.
+    between: f64,
 }
 
-impl<'a> Chains<'a> {
+impl Chains {
     /// `count` chains of equal length in `values`, at least one.
-    pub(super) fn new(values: &'a [f64], count: usize) -> Chains<'a> {
+    pub(super) fn new(values: &[f64], count: usize) -> Chains {
+        let count = count.max(1);
+        let length = values.len() / count;
+        let mut means = Vec::with_capacity(count);
+        let mut centred = Vec::with_capacity(length * count);
+        for chain in values.chunks_exact(length.max(1)) {
+            let centre = centre(chain);
+            means.push(centre);
+            centred.extend(chain.iter().map(|value| value - centre));
+        }
+        let variances: Vec<f64> = centred
+            .chunks_exact(length.max(1))
+            .map(|chain| dot(chain, chain) / (length as f64 - 1.0))
+            .collect();
+        let between = squares_about(&means, self::centre(&means)) / (count as f64 - 1.0);
         Chains {
-            values,
-            count: count.max(1),
+            centred,
+            count,
+            within: mean(&variances),
+            between: if count > 1 { between } else { 0.0 },
         }
     }
 
     /// Draws of one chain.
     pub(super) fn length(&self) -> usize {
-        self.values.len() / self.count
-    }
-
-    fn iter(&self) -> impl Iterator<Item = &'a [f64]> {
-        self.values.chunks_exact(self.length().max(1))
-    }
-
-    /// Variances of the draws within chains (averaged, denominator n - 1) and of the chains' means.
-    fn variances(&self) -> (f64, f64) {
-        let n = self.length() as f64;
-        let means: Vec<f64> = self.iter().map(centre).collect();
-        let within: Vec<f64> = self
-            .iter()
-            .zip(&means)
-            .map(|(chain, m)| squares_about(chain, *m) / (n - 1.0))
-            .collect();
-        let between = squares_about(&means, centre(&means)) / (self.count as f64 - 1.0);
-        (mean(&within), if self.count > 1 { between } else { 0.0 })
+        self.centred.len() / self.count
     }
 
     /// R-hat of the chains as they stand: sqrt((B / W + n - 1) / n) with B = n times the variance of the means.
@@ -51,8 +55,7 @@ impl<'a> Chains<'a> {
     /// Gelman et al. (2013), Bayesian Data Analysis, 11.4. `None` where no chain moves at all.
     pub(super) fn r_hat(&self) -> Option<f64> {
         let n = self.length() as f64;
-        let (within, between) = self.variances();
-        (within > 0.0).then(|| ((n * between / within + n - 1.0) / n).sqrt())
+        (self.within > 0.0).then(|| ((n * self.between / self.within + n - 1.0) / n).sqrt())
     }
 
     /// Effective draws for the mean of the chains: their number over 1 + 2 * sum of autocorrelations.
@@ -61,18 +64,18 @@ impl<'a> Chains<'a> {
     /// by Geyer's (1992) initial monotone sequence. Held to at most log10(N) times the number of
     /// draws N, as that paper does for antithetic chains. At least 4 draws a chain, else 1.
     pub(super) fn effective(&self) -> f64 {
-        let draws = self.values.len() as f64;
+        let draws = self.centred.len() as f64;
         if self.length() < 4 {
             return 1.0;
         }
-        let (within, between) = self.variances();
+        let (within, between) = (self.within, self.between);
         let n = self.length() as f64;
         let total = within * (n - 1.0) / n + between;
         if within <= 0.0 {
             // No chain moves, so each is worth one draw; all at one place are worth one together.
             return if between > 0.0 { self.count as f64 } else { 1.0 };
         }
-        let mut covariances = Autocovariances::of(*self);
+        let mut covariances = Autocovariances::of(self);
         let time = autocorrelation_time(self.length(), |lag| 1.0 - (within - covariances.at(lag)) / total);
         let least = std::f64::consts::LN_10 / ln(draws);
         draws / time.max(least)
@@ -104,21 +107,14 @@ fn autocorrelation_time(length: usize, mut rho: impl FnMut(usize) -> f64) -> f64
 
 /// Autocovariances at a lag, averaged over chains, each about its own mean and over its own length.
 struct Autocovariances<'a> {
-    chains: Chains<'a>,
-    centred: Vec<f64>,
+    chains: &'a Chains,
     transformed: Option<Vec<f64>>,
 }
 
 impl<'a> Autocovariances<'a> {
-    fn of(chains: Chains<'a>) -> Autocovariances<'a> {
-        let mut centred = Vec::with_capacity(chains.values.len());
-        for chain in chains.iter() {
-            let centre = centre(chain);
-            centred.extend(chain.iter().map(|value| value - centre));
-        }
+    fn of(chains: &'a Chains) -> Autocovariances<'a> {
         Autocovariances {
             chains,
-            centred,
             transformed: None,
         }
     }
@@ -127,27 +123,27 @@ impl<'a> Autocovariances<'a> {
         if lag <= DIRECT_LAGS {
             let length = self.chains.length();
             let products: Vec<f64> = self
+                .chains
                 .centred
                 .chunks_exact(length)
                 .map(|chain| dot(chain, &chain[lag.min(length)..]))
                 .collect();
             return sum(&products) / (length * self.chains.count) as f64;
         }
-        let (chains, centred) = (self.chains, &self.centred);
-        let transformed = self.transformed.get_or_insert_with(|| all_lags(chains, centred));
+        let transformed = self.transformed.get_or_insert_with(|| all_lags(self.chains));
         transformed.get(lag).copied().unwrap_or(0.0)
     }
 }
 
 /// All lags at once: the transform of the summed power spectra, each chain padded to twice its length.
-fn all_lags(chains: Chains, centred: &[f64]) -> Vec<f64> {
+fn all_lags(chains: &Chains) -> Vec<f64> {
     let length = chains.length();
     let fourier = Fourier::new(2 * length);
     let mut power = vec![[0.0, 0.0]; fourier.length()];
     let mut padded = vec![[0.0, 0.0]; fourier.length()];
     // Two chains at a time, one as the real and one as the imaginary part: the real part of the
     // pair's autocovariance is the sum of the two.
-    for two in centred.chunks(2 * length) {
+    for two in chains.centred.chunks(2 * length) {
         let (first, second) = two.split_at(length);
         padded.fill([0.0, 0.0]);
         for (place, value) in padded.iter_mut().zip(first) {
@@ -178,8 +174,7 @@ pub(super) fn centre(values: &[f64]) -> f64 {
 
 /// Sum of squared differences from `centre`.
 pub(super) fn squares_about(values: &[f64], centre: f64) -> f64 {
-    let squares: Vec<f64> = values.iter().map(|value| (value - centre) * (value - centre)).collect();
-    sum(&squares)
+    sum_of(values, |value| (value - centre) * (value - centre))
 }
 
 #[cfg(test)]
@@ -199,8 +194,9 @@ mod tests {
                     x + 1e3
                 })
                 .collect();
-            let mut covariances = Autocovariances::of(Chains::new(&values, count));
-            let transformed = all_lags(covariances.chains, &covariances.centred);
+            let chains = Chains::new(&values, count);
+            let transformed = all_lags(&chains);
+            let mut covariances = Autocovariances::of(&chains);
             let size = covariances.at(0);
             for lag in 0..length.min(DIRECT_LAGS + 1) {
                 let difference = covariances.at(lag) - transformed[lag];

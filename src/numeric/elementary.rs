@@ -126,8 +126,16 @@ pub fn ln(x: f64) -> f64 {
     } else {
         (x, 0.0)
     };
+    ln_of_normal(x, lift)
+}
+
+/// log of a normal number above 0, times `2^lift`: [`ln`] without its branches, for loops over many.
+#[inline(always)]
+pub(super) fn ln_of_normal(x: f64, lift: f64) -> f64 {
     let shifted = x.to_bits().wrapping_sub(ROOT_HALF_BITS);
     let k = (shifted as i64) >> 52;
+    // A whole number as a float, as in `ln_1p`; this one may be below 0.
+    let k_float = f64::from_bits(ROUNDER.to_bits().wrapping_add(k as u64)) - ROUNDER;
     let m = f64::from_bits((shifted & 0x000F_FFFF_FFFF_FFFF).wrapping_add(ROOT_HALF_BITS));
-    ln_parts(m - 1.0, k as f64 + lift)
+    ln_parts(m - 1.0, k_float + lift)
 }

@@ -8,15 +8,27 @@ const LANES: usize = 8;
 
 /// Sum of the values.
 pub fn sum(values: &[f64]) -> f64 {
+    sum_of(values, |value| value)
+}
+
+/// Sum of what `of` makes of each value: the same bits as the sum of those, without room for them.
+#[inline]
+pub fn sum_of(values: &[f64], of: impl Fn(f64) -> f64) -> f64 {
+    sum_with(values, |so_far, value| so_far + of(value))
+}
+
+/// Sum that `add` takes each value into, given what its lane has summed so far.
+#[inline]
+pub fn sum_with(values: &[f64], add: impl Fn(f64, f64) -> f64) -> f64 {
     let (blocks, rest) = values.as_chunks::<LANES>();
     let mut lanes = [0.0; LANES];
     for block in blocks {
         for lane in 0..LANES {
-            lanes[lane] += block[lane];
+            lanes[lane] = add(lanes[lane], block[lane]);
         }
     }
     for (lane, value) in rest.iter().enumerate() {
-        lanes[lane] += value;
+        lanes[lane] = add(lanes[lane], *value);
     }
     together(lanes)
 }
@@ -61,7 +73,9 @@ mod tests {
             let values: Vec<f64> = (1..=length).map(f64::from).collect();
             let n = f64::from(length);
             assert_eq!(sum(&values), n * (n + 1.0) / 2.0);
-            assert_eq!(dot(&values, &values), n * (n + 1.0) * (2.0 * n + 1.0) / 6.0);
+            let squares = n * (n + 1.0) * (2.0 * n + 1.0) / 6.0;
+            assert_eq!(dot(&values, &values), squares);
+            assert_eq!(sum_of(&values, |value| value * value), squares);
         }
         assert_eq!(dot(&[1.0, 2.0, 3.0], &[10.0]), 10.0);
         assert_eq!(mean(&[]), 0.0);
