@@ -12,15 +12,19 @@
 //! | [`plain`] | the likelihood as it would first be written, to be compared with |
 //! | [`problems`] | simulated studies of stated size and difficulty |
 //! | [`simulate`] | their rows, also as the CSV file that they could have come from |
+//! | [`program`] | the program, started as a person starts it: time and memory |
 //! | [`table`] | CSV tables, read and written |
+//! | [`curves`] | the curves of a table, as SVG |
 //!
 //! Nothing here asserts a time: a bench tells figures, and people judge them.
 
 pub mod clock;
+pub mod curves;
 pub mod machine;
 pub mod pairs;
 pub mod plain;
 pub mod problems;
+pub mod program;
 pub mod simulate;
 pub mod table;
 
