@@ -104,7 +104,7 @@ impl Operator for Slice<'_> {
     fn apply(&self, coefficients: &Vec<f64>) -> Result<Option<Derivatives>, Error> {
         let mut point = coefficients.clone();
         point.extend(self.scatter);
-        Ok(self.model.derivatives(&point))
+        Ok(self.model.derivatives(&point, 1))
     }
 }
 

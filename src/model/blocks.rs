@@ -1,331 +1,237 @@
-//! The rows of a design, laid out for the likelihood, and the loops over them.
+//! The rows as the kernels read them.
 //!
-//! Rows stand in blocks of [`BLOCK`]; inside a block each coded column is contiguous. A block of
-//! 20 columns is 10 KB: it stays in the first-level cache while several points of the parameter
-//! space are evaluated on it. Every sum runs in [`LANES`] lanes that are added up in one fixed
-//! order, so the result does not depend on the width of the processor's vectors, on the number of
-//! points evaluated together, or on threads.
+//! Rows stand in blocks of [`BLOCK`] = 8 x 8: eight chunks of eight lanes. A lane is a row's place in
+//! a vector register: eight doubles fill four registers of SSE2, two of AVX2, one of AVX-512, and a
+//! loop over eight lanes becomes the same additions and multiplications on each. Within a chunk the
+//! columns follow one another, so a chunk is read from front to back, once, in whole cache lines.
+//!
+//! Under the negative binomial the rows are sorted so that as many blocks as possible are *deep*: in
+//! a deep block the eight rows of a lane (one in each chunk) have the same count and weight, and then
+//! their eight logarithms are one (see `kernel`).
 
-use crate::design::Design;
-use crate::numeric::{exp, ln_1p};
+use super::patterns::{Split, split};
+use std::ops::Range;
 
+/// Rows side by side.
+pub const LANES: usize = 8;
+/// Chunks of a block: the rows of one lane.
+pub const DEPTH: usize = 8;
 /// Rows in a block.
-pub const BLOCK: usize = 64;
-/// Partial sums that run side by side.
-const LANES: usize = 8;
+pub const BLOCK: usize = LANES * DEPTH;
 
-/// The linear predictor of a row may lie this far from 0 at most. Beyond it the rate is beyond
-/// anything that a count can have and exp is held constant, so such a point has density 0.
-pub const PREDICTOR_LIMIT: f64 = 690.0;
+/// One value for each lane, in one cache line.
+#[derive(Debug, Clone, Copy, PartialEq)]
+#[repr(C, align(64))]
+pub struct Eight(pub [f64; LANES]);
 
-/// The rows in blocks. Rows that fill up the last block have weight 0.
-#[derive(Debug, Clone)]
-pub struct Blocks {
-    terms: usize,
-    blocks: usize,
-    rows: usize,
-    /// For each block, for each term, its values of the block's rows.
-    columns: Vec<Lane>,
-    log_exposure: Vec<Lane>,
-    counts: Vec<Lane>,
-    /// How many identical rows each row stands for.
-    weights: Vec<Lane>,
-    /// The largest absolute log exposure, and of each term the largest absolute value.
-    largest_offset: f64,
-    largest: Vec<f64>,
+impl Eight {
+    /// Zero in every lane.
+    pub const ZERO: Eight = Eight([0.0; LANES]);
 }
 
-/// A value for each row of a block.
-type Lane = [f64; BLOCK];
+/// Which rows may stand next to one another.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Order {
+    /// As they come: the Poisson does not ask for more.
+    AsGiven,
+    /// Rows of equal count and weight together, for deep blocks.
+    ByCount,
+}
 
-/// First and second derivatives of the rows' log likelihood, summed.
+/// The rows in blocks.
 #[derive(Debug, Clone)]
-pub struct RowSums {
-    /// Sum of the value's terms that depend on the mean.
-    pub value: f64,
-    /// By the intercept and the coefficients: `terms + 1` values.
-    pub gradient: Vec<f64>,
-    /// By the same, row-major, lower triangle filled.
-    pub hessian: Vec<f64>,
-    /// By c^2, by it twice, and by it and each coefficient: only under the negative binomial.
-    pub by_dispersion: f64,
-    /// Second derivative by c^2.
-    pub by_dispersion_twice: f64,
-    /// Mixed derivatives, by c^2 and each of the intercept and coefficients.
-    pub mixed: Vec<f64>,
+pub struct Blocks {
+    /// Number of blocks.
+    pub blocks: usize,
+    /// How many of them, the first ones, are deep.
+    pub deep: usize,
+    /// Rows that are not there to fill up.
+    pub rows: usize,
+    /// Where the terms' columns are.
+    pub split: Split,
+    /// For each chunk, the columns that stay.
+    dense: Vec<Eight>,
+    /// For each chunk, the patterns of each index column.
+    patterns: Vec<[u8; LANES]>,
+    log_exposure: Vec<[Eight; DEPTH]>,
+    counts: Vec<[Eight; DEPTH]>,
+    weights: Vec<[Eight; DEPTH]>,
+    /// Largest absolute log exposure.
+    pub largest_offset: f64,
+    /// Largest absolute value of each column that stays.
+    pub largest: Vec<f64>,
+}
+
+/// What the kernels read of one block.
+#[derive(Clone, Copy)]
+pub struct Block<'a> {
+    /// Columns that stay; `dense` holds one value of each, chunk after chunk.
+    pub columns: usize,
+    dense: &'a [Eight],
+    index: usize,
+    patterns: &'a [[u8; LANES]],
+    /// Log exposures.
+    pub log_exposure: &'a [Eight; DEPTH],
+    /// Incidents: the sum over all rows that a row stands for.
+    pub counts: &'a [Eight; DEPTH],
+    /// How many rows each row stands for.
+    pub weights: &'a [Eight; DEPTH],
+}
+
+impl<'a> Block<'a> {
+    /// The columns that stay, in the chunk at `depth`.
+    #[inline(always)]
+    pub fn dense(&self, depth: usize) -> &'a [Eight] {
+        &self.dense[depth * self.columns..(depth + 1) * self.columns]
+    }
+
+    /// The patterns of the index columns, in the chunk at `depth`.
+    #[inline(always)]
+    pub fn patterns(&self, depth: usize) -> &'a [[u8; LANES]] {
+        &self.patterns[depth * self.index..(depth + 1) * self.index]
+    }
 }
 
 impl Blocks {
-    /// Lays out the rows of a design, in their order.
-    pub fn new(design: &Design) -> Self {
-        let rows = design.counts.len();
-        let terms = design.columns.len();
+    /// Lays out rows. All slices are of one length: coded columns, log exposure, and for each row the
+    /// incidents and the number of all rows that it stands for.
+    pub fn new(columns: &[Vec<f64>], log_exposure: &[f64], counts: &[f64], weights: &[f64], order: Order) -> Self {
+        let rows = counts.len();
         let blocks = rows.div_ceil(BLOCK);
-        let padded = |values: &[f64]| {
-            let mut out = vec![[0.0; BLOCK]; blocks];
-            for (row, value) in values.iter().enumerate() {
-                out[row / BLOCK][row % BLOCK] = *value;
+        let split = split(columns);
+        let (order, deep) = match order {
+            Order::AsGiven => ((0..rows).collect(), 0),
+            Order::ByCount => deep_first(counts, weights),
+        };
+        // What fills up the last block is the last row again, without count and weight: its linear
+        // predictor is then one of a real row, and 0 times its mean is 0.
+        let rows_in_blocks = || (0..blocks * BLOCK).map(|place| (place, order[place.min(rows - 1)]));
+        let laid = |values: &[f64]| {
+            let mut out = vec![[Eight::ZERO; DEPTH]; blocks];
+            for (place, row) in rows_in_blocks() {
+                out[place / BLOCK][place % BLOCK / LANES].0[place % LANES] = values[row];
             }
             out
         };
-        let mut columns = vec![[0.0; BLOCK]; blocks * terms];
-        for (term, column) in design.columns.iter().enumerate() {
-            for (row, value) in column.iter().enumerate() {
-                columns[row / BLOCK * terms + term][row % BLOCK] = *value;
+        let laid_once = |values: &[f64]| {
+            let mut out = laid(values);
+            for place in rows..blocks * BLOCK {
+                out[place / BLOCK][place % BLOCK / LANES].0[place % LANES] = 0.0;
+            }
+            out
+        };
+        let mut dense = vec![Eight::ZERO; blocks * DEPTH * split.dense.len()];
+        for (column, term) in split.dense.iter().enumerate() {
+            for (place, row) in rows_in_blocks() {
+                dense[place / LANES * split.dense.len() + column].0[place % LANES] = columns[*term][row];
+            }
+        }
+        let mut patterns = vec![[0; LANES]; blocks * DEPTH * split.index.len()];
+        for (column, index) in split.index.iter().enumerate() {
+            for (place, row) in rows_in_blocks() {
+                patterns[place / LANES * split.index.len() + column][place % LANES] = index.of_row[row];
             }
         }
         let largest = |values: &[f64]| values.iter().fold(0.0_f64, |most, value| most.max(value.abs()));
         Blocks {
-            terms,
             blocks,
+            deep,
             rows,
-            columns,
-            log_exposure: padded(&design.log_exposure),
-            counts: padded(&design.counts),
-            weights: padded(&design.stands_for),
-            largest_offset: largest(&design.log_exposure),
-            largest: design.columns.iter().map(|column| largest(column)).collect(),
+            dense,
+            patterns,
+            log_exposure: laid(log_exposure),
+            counts: laid_once(counts),
+            weights: laid_once(weights),
+            largest_offset: largest(log_exposure),
+            largest: split.dense.iter().map(|term| largest(&columns[*term])).collect(),
+            split,
         }
     }
 
-    /// Number of coded columns.
+    /// Number of terms, those in index columns too.
     pub fn terms(&self) -> usize {
-        self.terms
+        self.split.dense.len() + self.split.index.iter().map(|index| index.terms.len()).sum::<usize>()
     }
 
-    /// Number of rows, without those that fill up the last block.
-    pub fn rows(&self) -> usize {
-        self.rows
-    }
-
-    /// Whether every row's linear predictor is within [`PREDICTOR_LIMIT`] at these coefficients
-    /// (intercept first). A bound over all rows answers almost always; only where it does not are
-    /// the rows looked at.
-    pub fn within_limit(&self, coefficients: &[f64]) -> bool {
-        let mut bound = self.largest_offset + coefficients[0].abs();
-        for (coefficient, largest) in coefficients[1..].iter().zip(&self.largest) {
-            bound += coefficient.abs() * largest;
-        }
-        if bound <= PREDICTOR_LIMIT {
-            return true;
-        }
-        if !bound.is_finite() {
-            return false;
-        }
-        let mut predictor = [0.0; BLOCK];
-        (0..self.blocks).all(|block| {
-            self.predictor(block, coefficients, &mut predictor);
-            let real = (self.rows - block * BLOCK).min(BLOCK);
-            predictor[..real].iter().all(|value| value.abs() <= PREDICTOR_LIMIT)
-        })
-    }
-
-    /// Linear predictor of a block's rows: log exposure + intercept + columns times coefficients,
-    /// four columns to a sum.
+    /// The columns that stay in a range of blocks: one value of each, chunk after chunk.
     #[inline(always)]
-    fn predictor(&self, block: usize, coefficients: &[f64], out: &mut Lane) {
-        let columns = &self.columns[block * self.terms..(block + 1) * self.terms];
-        let offset = &self.log_exposure[block];
-        for row in 0..BLOCK {
-            out[row] = offset[row] + coefficients[0];
-        }
-        let slopes = &coefficients[1..=self.terms];
-        let mut term = 0;
-        while term + 4 <= self.terms {
-            let (x0, x1) = (&columns[term], &columns[term + 1]);
-            let (x2, x3) = (&columns[term + 2], &columns[term + 3]);
-            let (b0, b1, b2, b3) = (slopes[term], slopes[term + 1], slopes[term + 2], slopes[term + 3]);
-            for row in 0..BLOCK {
-                out[row] += (x0[row] * b0 + x1[row] * b1) + (x2[row] * b2 + x3[row] * b3);
-            }
-            term += 4;
-        }
-        for term in term..self.terms {
-            let (x, b) = (&columns[term], slopes[term]);
-            for row in 0..BLOCK {
-                out[row] += x[row] * b;
-            }
-        }
+    pub fn dense(&self, range: Range<usize>) -> &[Eight] {
+        let size = DEPTH * self.split.dense.len();
+        &self.dense[range.start * size..range.end * size]
     }
 
-    /// For each point, the sum over rows of `weight * mu`. Points are `stride` values apart in
-    /// `points`, each starting with intercept and coefficients.
-    pub fn sum_of_means(&self, points: &[f64], stride: usize, out: &mut [f64]) {
-        let mut sums = vec![[0.0; LANES]; out.len()];
-        let mut lane = [0.0; BLOCK];
-        for block in 0..self.blocks {
-            let weights = &self.weights[block];
-            for (point, sum) in sums.iter_mut().enumerate() {
-                self.predictor(block, &points[point * stride..], &mut lane);
-                for row in 0..BLOCK {
-                    lane[row] = weights[row] * exp(lane[row]);
-                }
-                add_to_lanes(&lane, sum);
-            }
-        }
-        for (out, sum) in out.iter_mut().zip(&sums) {
-            *out = add_up(sum);
-        }
-    }
-
-    /// For each point, the sum over rows of `weight * (y + 1/a) * log(1 + a mu)`, with a = c^2 of
-    /// that point in `dispersions`, each above 0.
-    pub fn sum_of_log_terms(&self, points: &[f64], stride: usize, dispersions: &[f64], out: &mut [f64]) {
-        let mut sums = vec![[0.0; LANES]; out.len()];
-        let mut lane = [0.0; BLOCK];
-        for block in 0..self.blocks {
-            let weights = &self.weights[block];
-            let counts = &self.counts[block];
-            for (point, sum) in sums.iter_mut().enumerate() {
-                let a = dispersions[point];
-                let size = 1.0 / a;
-                self.predictor(block, &points[point * stride..], &mut lane);
-                for row in 0..BLOCK {
-                    lane[row] = a * exp(lane[row]);
-                }
-                for row in 0..BLOCK {
-                    lane[row] = weights[row] * (counts[row] + size) * ln_1p(lane[row]);
-                }
-                add_to_lanes(&lane, sum);
-            }
-        }
-        for (out, sum) in out.iter_mut().zip(&sums) {
-            *out = add_up(sum);
-        }
-    }
-
-    /// Derivatives at one point of `y * predictor - mu` for the Poisson (`dispersion` absent), of
-    /// `y * predictor - (y + 1/a) log(1 + a mu)` for the negative binomial with a = c^2 =
-    /// `dispersion`; at a = 0 the latter is its limit, the Poisson, but the derivatives by a are
-    /// there. The value leaves out y times the predictor, which the model knows in closed form.
-    ///
-    /// With m = mu, D = 1 + a m and x = a m (Cameron & Trivedi 2013, section 3.3, for the first
-    /// derivatives):
-    /// by the predictor (y - m)/D; twice -m (1 + a y)/D^2; by a: m^2 h(x) - y m/D, where
-    /// h(x) = (log(1+x) - x/(1+x))/x^2; twice m^3 h'(x) + y m^2/D^2; mixed -(y - m) m/D^2.
-    pub fn derivatives(&self, point: &[f64], dispersion: Option<f64>) -> RowSums {
-        let size = self.terms + 1;
-        let mut sums = RowSums {
-            value: 0.0,
-            gradient: vec![0.0; size],
-            hessian: vec![0.0; size * size],
-            by_dispersion: 0.0,
-            by_dispersion_twice: 0.0,
-            mixed: vec![0.0; size],
-        };
-        let a = dispersion.unwrap_or(0.0);
-        let mut means = [0.0; BLOCK];
-        let (mut score, mut curvature, mut mixed) = ([0.0; BLOCK], [0.0; BLOCK], [0.0; BLOCK]);
-        let (mut value, mut by_a, mut by_a_twice) = ([0.0; BLOCK], [0.0; BLOCK], [0.0; BLOCK]);
-        let mut scaled = [0.0; BLOCK];
-        for block in 0..self.blocks {
-            let weights = &self.weights[block];
-            let counts = &self.counts[block];
-            self.predictor(block, point, &mut means);
-            for row in 0..BLOCK {
-                means[row] = exp(means[row]);
-            }
-            for row in 0..BLOCK {
-                let (w, y, m) = (weights[row], counts[row], means[row]);
-                let d = 1.0 / (1.0 + a * m);
-                score[row] = w * (y - m) * d;
-                curvature[row] = -w * m * (1.0 + a * y) * d * d;
-            }
-            if dispersion.is_some() {
-                for row in 0..BLOCK {
-                    let (w, y, m) = (weights[row], counts[row], means[row]);
-                    let d = 1.0 / (1.0 + a * m);
-                    let (h, slope) = log_remainder(a * m);
-                    by_a[row] = w * (m * m * h - y * m * d);
-                    by_a_twice[row] = w * (m * m * m * slope + y * m * m * d * d);
-                    mixed[row] = -w * (y - m) * m * d * d;
-                }
-                sums.by_dispersion += sum_of(&by_a);
-                sums.by_dispersion_twice += sum_of(&by_a_twice);
-                sums.mixed[0] += sum_of(&mixed);
-            }
-            for row in 0..BLOCK {
-                value[row] = if a > 0.0 {
-                    -weights[row] * (counts[row] + 1.0 / a) * ln_1p(a * means[row])
-                } else {
-                    -weights[row] * means[row]
-                };
-            }
-            sums.value += sum_of(&value);
-            sums.gradient[0] += sum_of(&score);
-            sums.hessian[0] += sum_of(&curvature);
-            let columns = &self.columns[block * self.terms..(block + 1) * self.terms];
-            for j in 0..self.terms {
-                let x = &columns[j];
-                sums.gradient[j + 1] += sum_of_products(x, &score);
-                if dispersion.is_some() {
-                    sums.mixed[j + 1] += sum_of_products(x, &mixed);
-                }
-                for row in 0..BLOCK {
-                    scaled[row] = x[row] * curvature[row];
-                }
-                let hessian_row = &mut sums.hessian[(j + 1) * size..(j + 2) * size];
-                hessian_row[0] += sum_of(&scaled);
-                for k in 0..=j {
-                    hessian_row[k + 1] += sum_of_products(&columns[k], &scaled);
-                }
-            }
-        }
-        sums
-    }
-}
-
-/// h(x) = (log(1+x) - x/(1+x)) / x^2 and its derivative, for x >= 0.
-///
-/// Below 0.03 the closed forms lose all digits (h is a difference of two numbers near x, divided by
-/// x^2), so the series h = sum (-1)^k (k+1)/(k+2) x^k is summed there; its first term left out is
-/// below 1e-17.
-#[inline(always)]
-fn log_remainder(x: f64) -> (f64, f64) {
-    if x < 0.03 {
-        let (mut h, mut slope) = (0.0, 0.0);
-        for k in (0..12).rev() {
-            let k = f64::from(k);
-            let coefficient = (k + 1.0) / (k + 2.0);
-            // Horner in -x: h(x) = c0 - c1 x + c2 x^2 ..., and its derivative alongside.
-            slope = h - x * slope;
-            h = coefficient - x * h;
-        }
-        return (h, -slope);
-    }
-    let d = 1.0 / (1.0 + x);
-    let h = (ln_1p(x) - x * d) / (x * x);
-    (h, d * d / x - 2.0 * h / x)
-}
-
-#[inline(always)]
-fn add_to_lanes(values: &Lane, lanes: &mut [f64; LANES]) {
-    for chunk in values.chunks_exact(LANES) {
-        for lane in 0..LANES {
-            lanes[lane] += chunk[lane];
+    /// One of the blocks.
+    #[inline(always)]
+    pub fn block(&self, block: usize) -> Block<'_> {
+        let (columns, index) = (self.split.dense.len(), self.split.index.len());
+        Block {
+            columns,
+            dense: &self.dense[block * DEPTH * columns..(block + 1) * DEPTH * columns],
+            index,
+            patterns: &self.patterns[block * DEPTH * index..(block + 1) * DEPTH * index],
+            log_exposure: &self.log_exposure[block],
+            counts: &self.counts[block],
+            weights: &self.weights[block],
         }
     }
 }
 
-#[inline(always)]
-fn add_up(lanes: &[f64; LANES]) -> f64 {
-    ((lanes[0] + lanes[4]) + (lanes[2] + lanes[6])) + ((lanes[1] + lanes[5]) + (lanes[3] + lanes[7]))
-}
-
-#[inline(always)]
-fn sum_of(values: &Lane) -> f64 {
-    let mut lanes = [0.0; LANES];
-    add_to_lanes(values, &mut lanes);
-    add_up(&lanes)
-}
-
-#[inline(always)]
-fn sum_of_products(x: &Lane, y: &Lane) -> f64 {
-    let mut lanes = [0.0; LANES];
-    for start in (0..BLOCK).step_by(LANES) {
-        for lane in 0..LANES {
-            lanes[lane] += x[start + lane] * y[start + lane];
+/// An order of the rows that begins with deep blocks, and how many these are.
+fn deep_first(counts: &[f64], weights: &[f64]) -> (Vec<usize>, usize) {
+    let mut sorted: Vec<usize> = (0..counts.len()).collect();
+    // Neither is negative, so their bits are in the order of their values.
+    let key = |row: usize| (weights[row].to_bits(), counts[row].to_bits());
+    sorted.sort_unstable_by_key(|row| (key(*row), *row));
+    let mut lanes: Vec<&[usize]> = Vec::new();
+    let mut rest: Vec<usize> = Vec::new();
+    for alike in sorted.chunk_by(|a, b| key(*a) == key(*b)) {
+        let (whole, left) = alike.as_chunks::<DEPTH>();
+        lanes.extend(whole.iter().map(|lane| lane.as_slice()));
+        rest.extend(left);
+    }
+    let deep = lanes.len() / LANES;
+    let (filled, over) = lanes.split_at(deep * LANES);
+    let mut order = Vec::with_capacity(counts.len());
+    for block in filled.chunks_exact(LANES) {
+        for depth in 0..DEPTH {
+            order.extend(block.iter().map(|lane| lane[depth]));
         }
     }
-    add_up(&lanes)
+    order.extend(over.iter().copied().flatten());
+    order.append(&mut rest);
+    (order, deep)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn a_deep_block_holds_lanes_of_equal_counts_and_every_row_is_there_once() {
+        let rows = 1_000;
+        let counts: Vec<f64> = (0..rows).map(|row| f64::from(row * row % 7)).collect();
+        let weights: Vec<f64> = (0..rows).map(|row| f64::from(1 + row % 2)).collect();
+        let numbers: Vec<f64> = (0..rows).map(f64::from).collect();
+        let blocks = Blocks::new(&[numbers.clone()], &numbers, &counts, &weights, Order::ByCount);
+        assert!(blocks.deep >= 13 && blocks.deep < blocks.blocks, "{}", blocks.deep);
+        for block in (0..blocks.deep).map(|block| blocks.block(block)) {
+            assert!(block.counts.iter().all(|chunk| *chunk == block.counts[0]));
+            assert!(block.weights.iter().all(|chunk| *chunk == block.weights[0]));
+        }
+        let mut seen = vec![0; rows as usize];
+        for block in (0..blocks.blocks).map(|block| blocks.block(block)) {
+            for depth in 0..DEPTH {
+                assert_eq!(block.dense(depth)[0], block.log_exposure[depth]);
+                for lane in 0..LANES {
+                    let (count, weight) = (block.counts[depth].0[lane], block.weights[depth].0[lane]);
+                    if weight > 0.0 {
+                        let row = block.dense(depth)[0].0[lane] as usize;
+                        assert_eq!((count, weight), (counts[row], weights[row]));
+                        seen[row] += 1;
+                    }
+                }
+            }
+        }
+        assert!(seen.iter().all(|times| *times == 1));
+    }
 }

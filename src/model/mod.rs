@@ -2,9 +2,11 @@
 
 mod blocks;
 mod count_table;
+mod kernel;
+mod patterns;
 mod posterior;
 mod prior;
 
-pub use blocks::PREDICTOR_LIMIT;
-pub use posterior::{Derivatives, Model};
+pub use kernel::{Instructions, LOCKSTEP};
+pub use posterior::{Derivatives, Model, PREDICTOR_LIMIT};
 pub use prior::{BaselinePrior, Curve, NormalPrior, ScatterPrior};

@@ -6,8 +6,9 @@
 //! the even extension of the density on c >= 0. All normalising constants are kept, so that values
 //! of different models on the same rows can be compared.
 
-use super::blocks::Blocks;
+use super::blocks::{Blocks, Order};
 use super::count_table::CountTable;
+use super::kernel::{self, Instructions, Points};
 use super::prior::{BaselinePrior, NormalPrior, ScatterPrior};
 use crate::design::Design;
 use crate::numeric::{ln, ln_factorial};
@@ -18,11 +19,16 @@ use crate::spec::{Baseline, Family, Spec};
 /// above it 1/c^2 and everything multiplied by it stay finite.
 const SMALLEST_DISPERSION: f64 = 1e-40;
 
+/// The linear predictor of a row may lie this far from 0 at most. Beyond it the rate is beyond
+/// anything that a count can have and exp is held constant, so such a point has density 0.
+pub const PREDICTOR_LIMIT: f64 = 690.0;
+
 /// The log posterior density of one study.
 #[derive(Debug, Clone)]
 pub struct Model {
     parameters: Vec<String>,
     blocks: Blocks,
+    instructions: Instructions,
     /// Sum over rows of weight * y, then of weight * y * column for each term.
     count_sums: Vec<f64>,
     /// Sum over rows of weight * (y * log exposure - log y!).
@@ -118,9 +124,20 @@ impl Model {
         // Under the Poisson the information about c^2 is the sum of mu^2/2 (Dean & Lawless 1989), so
         // its standard deviation is sqrt(2 / sum of mu^2), and c is told from 0 at the root of that.
         let squares: f64 = design.counts.iter().zip(&weighted).map(|(y, wy)| y * wy).sum();
+        let order = match scatter_prior {
+            None => Order::AsGiven,
+            Some(_) => Order::ByCount,
+        };
         Model {
             parameters,
-            blocks: Blocks::new(design),
+            blocks: Blocks::new(
+                &design.columns,
+                &design.log_exposure,
+                &weighted,
+                &design.stands_for,
+                order,
+            ),
+            instructions: Instructions::widest(),
             // Half an incident is added, so that a table of zeros has a finite crude rate.
             start: ln((count_sums[0] + 0.5) / exposure),
             finest_scatter: (2.0 / squares.max(2.0)).sqrt().sqrt(),
@@ -133,6 +150,11 @@ impl Model {
                 prior,
             }),
         }
+    }
+
+    /// The same model, evaluated with other vector instructions: the same bits at another speed.
+    pub fn with_instructions(self, instructions: Instructions) -> Self {
+        Model { instructions, ..self }
     }
 
     /// Names of the parameters: `baseline`, the terms, then `scatter` under the negative binomial.
@@ -158,7 +180,7 @@ impl Model {
 
     /// Number of rows.
     pub fn rows(&self) -> usize {
-        self.blocks.rows()
+        self.blocks.rows
     }
 
     /// Where a search for the mode may start: the crude rate, every rate ratio 1.
@@ -185,12 +207,11 @@ impl Model {
     /// the model is not defined; never NaN. The result at a point does not depend on its company.
     pub fn log_densities(&self, points: &[f64], out: &mut [f64]) {
         let d = self.dimension();
-        let coefficients = self.blocks.terms() + 1;
         let mut admitted = Vec::with_capacity(points.len());
         let mut places = Vec::with_capacity(out.len());
         for (place, point) in points.chunks_exact(d).enumerate() {
             out[place] = f64::NEG_INFINITY;
-            if point.iter().all(|value| value.is_finite()) && self.blocks.within_limit(&point[..coefficients]) {
+            if self.within_limit(point) {
                 admitted.extend_from_slice(point);
                 places.push(place);
             }
@@ -225,39 +246,59 @@ impl Model {
         (a >= SMALLEST_DISPERSION).then_some(a)
     }
 
+    /// Whether a point is finite and every row's linear predictor within [`PREDICTOR_LIMIT`] there. A
+    /// bound over all rows answers almost always; only where it does not are the rows looked at.
+    fn within_limit(&self, point: &[f64]) -> bool {
+        if !point.iter().all(|value| value.is_finite()) {
+            return false;
+        }
+        let coefficients = &point[..self.blocks.terms() + 1];
+        let points = Points::new(&self.blocks, coefficients, coefficients.len());
+        points.bound(0) <= PREDICTOR_LIMIT
+            || (points.bound(0).is_finite()
+                && kernel::furthest(self.instructions, &self.blocks, &points) <= PREDICTOR_LIMIT)
+    }
+
     /// The sums over rows, for points that are all within the limit.
     fn row_sums(&self, points: &[f64], out: &mut [f64]) {
         let d = self.dimension();
         let dispersions: Vec<Option<f64>> = points.chunks_exact(d).map(|point| self.dispersion(point)).collect();
+        let prepared = |points: &[f64]| Points::new(&self.blocks, points, d);
+        let (set, blocks) = (self.instructions, &self.blocks);
         if dispersions.iter().all(Option::is_none) {
-            self.blocks.sum_of_means(points, d, out);
+            kernel::sums_of_means(set, blocks, &prepared(points), out);
         } else if dispersions.iter().all(Option::is_some) {
             let dispersions: Vec<f64> = dispersions.into_iter().flatten().collect();
-            self.blocks.sum_of_log_terms(points, d, &dispersions, out);
+            kernel::sums_of_logs(set, blocks, &prepared(points), &dispersions, out);
         } else {
             // A chain at a scatter of exactly 0 among others: each on its own.
             for ((point, dispersion), out) in points.chunks_exact(d).zip(dispersions).zip(out) {
-                let out = std::slice::from_mut(out);
+                let (points, out) = (prepared(point), std::slice::from_mut(out));
                 match dispersion {
-                    Some(a) => self.blocks.sum_of_log_terms(point, d, &[a], out),
-                    None => self.blocks.sum_of_means(point, d, out),
+                    Some(a) => kernel::sums_of_logs(set, blocks, &points, &[a], out),
+                    None => kernel::sums_of_means(set, blocks, &points, out),
                 }
             }
         }
     }
 
     /// Value, gradient and Hessian at a point; `None` where the density is 0. The scatter's
-    /// derivatives are those on c > 0; at c = 0 they are the limits from above.
-    pub fn derivatives(&self, point: &[f64]) -> Option<Derivatives> {
+    /// derivatives are those on c > 0; at c = 0 they are the limits from above. Computed on at most
+    /// `threads` threads; their number changes no bit.
+    pub fn derivatives(&self, point: &[f64], threads: usize) -> Option<Derivatives> {
         let d = self.dimension();
         let size = self.blocks.terms() + 1;
-        if !point.iter().all(|value| value.is_finite()) || !self.blocks.within_limit(&point[..size]) {
+        if !self.within_limit(point) {
             return None;
         }
         let dispersion = self.dispersion(point);
-        let rows = self
-            .blocks
-            .derivatives(point, self.scatter.as_ref().map(|_| dispersion.unwrap_or(0.0)));
+        let rows = kernel::derivatives(
+            self.instructions,
+            &self.blocks,
+            &point[..size],
+            self.scatter.as_ref().map(|_| dispersion.unwrap_or(0.0)),
+            threads,
+        );
         let mut value = self.constant + self.log_prior(point) + rows.value;
         let mut summed = self.constant.abs() + rows.value.abs();
         let mut gradient = vec![0.0; d];

@@ -24,29 +24,40 @@ const ROOT_HALF_BITS: u64 = 0x3FE6_A09E_667F_3BCD;
 pub const EXP_LIMIT: f64 = 700.0;
 
 /// The exponential of `x`, for `x` held to [-700, 700] (see [`EXP_LIMIT`]).
-///
-/// Splits x = n ln 2 + r with |r| <= ln(2)/2 and sums the Taylor series of exp(r) to degree 13 by
-/// Estrin's scheme (the first term left out is below 5e-18), then moves n into the exponent.
 #[inline(always)]
 pub fn exp(x: f64) -> f64 {
     // Written as comparisons and not as `clamp`, so that NaN passes through and the compiler
     // makes two vector min/max instructions of them.
     let x = if x > EXP_LIMIT { EXP_LIMIT } else { x };
     let x = if x < -EXP_LIMIT { -EXP_LIMIT } else { x };
+    exp_within(x)
+}
+
+/// [`exp`] for callers that know that |x| <= 700; the same bits there, and no meaning beyond.
+///
+/// Splits x = n ln 2 + r with |r| <= ln(2)/2, takes exp(r) = 1 + r + r^2 q(r), and moves n into the
+/// exponent. q has degree 9, with the coefficients of the least largest relative error on that
+/// interval, 4e-18 (weighted least squares in 50 digits, reweighted 60 times after Lawson; rounding
+/// them to doubles makes it 1.1e-17). Taylor's polynomial needs two degrees more for the same.
+#[inline(always)]
+pub(crate) fn exp_within(x: f64) -> f64 {
+    // Adding 1.5 * 2^52 rounds to a whole number, taking it off again leaves that number; its low
+    // bits stand in those of `t`, where the shift below finds them.
     let t = x * std::f64::consts::LOG2_E + ROUNDER;
     let n = t - ROUNDER;
+    // n LN2_HIGH is exact, so the first difference is too: r is right to its last bit.
     let r = (x - n * LN2_HIGH) - n * LN2_LOW;
     let r2 = r * r;
     let r4 = r2 * r2;
-    let p23 = 0.5 + r * (1.0 / 6.0);
-    let p45 = 1.0 / 24.0 + r * (1.0 / 120.0);
-    let p67 = 1.0 / 720.0 + r * (1.0 / 5040.0);
-    let p89 = 1.0 / 40320.0 + r * (1.0 / 362_880.0);
-    let p1011 = 1.0 / 3_628_800.0 + r * (1.0 / 39_916_800.0);
-    let p1213 = 1.0 / 479_001_600.0 + r * (1.0 / 6_227_020_800.0);
+    // Estrin's scheme: short chains that a processor works on side by side.
+    let q01 = 0.5000000000000011 + r * 0.16666666666666413;
+    let q23 = 0.04166666666653026 + r * 0.008333333333494336;
+    let q45 = 0.0013888888943599687 + r * 0.00019841269506777484;
+    let q67 = 2.4801493134196684e-05 + r * 2.7557586263935976e-06;
+    let q89 = 2.763023460558155e-07 + r * 2.500007413438671e-08;
+    let q = (q01 + q23 * r2) + r4 * ((q45 + q67 * r2) + r4 * q89);
     // 1 and r are added last: they carry almost all of the value, so their rounding must come last.
-    let tail = (p23 + p45 * r2) + r4 * ((p67 + p89 * r2) + r4 * (p1011 + p1213 * r2));
-    let p = 1.0 + (r + r2 * tail);
+    let p = 1.0 + (r + r2 * q);
     f64::from_bits(p.to_bits().wrapping_add(t.to_bits() << 52))
 }
 

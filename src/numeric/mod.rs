@@ -15,6 +15,7 @@ mod sum;
 mod uniform_expansion;
 
 pub use beta::{beta_quantile, incomplete_beta};
+pub(crate) use elementary::exp_within;
 pub use elementary::{EXP_LIMIT, exp, ln, ln_1p};
 pub use fourier::Fourier;
 pub use gamma::{ln_factorial, ln_gamma};

@@ -12,6 +12,7 @@ mod conjugacy;
 mod convergence;
 mod designs;
 mod elementary;
+mod kernels;
 mod model;
 mod numeric;
 mod random;

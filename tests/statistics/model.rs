@@ -61,7 +61,7 @@ fn gradient_and_hessian_are_the_differences_of_value_and_gradient() {
                 let size = [0.01, 0.1, 0.5, 2.0][trial % 4] * (0.5 + stream.uniform());
                 point[d - 1] = if trial % 3 == 0 { -size } else { size };
             }
-            let here = model.derivatives(&point).unwrap();
+            let here = model.derivatives(&point, 1).unwrap();
             let at = |place: usize, off: f64| {
                 let mut moved = point.clone();
                 moved[place] += off;
@@ -82,7 +82,8 @@ fn gradient_and_hessian_are_the_differences_of_value_and_gradient() {
                     here.gradient[i]
                 );
                 for j in 0..d {
-                    let curvature = difference(|h| model.derivatives(&at(i, h * shrink)).unwrap().gradient[j]) / shrink;
+                    let curvature =
+                        difference(|h| model.derivatives(&at(i, h * shrink), 1).unwrap().gradient[j]) / shrink;
                     let entry = here.hessian[i * d + j];
                     assert!(
                         (entry - curvature).abs() < rounding / shrink + 1e-8 * curvature.abs(),
@@ -115,8 +116,8 @@ fn the_negative_binomial_tends_to_the_poisson_as_the_scatter_vanishes() {
             (value - limit).abs() < tolerance * limit.abs(),
             "c = {scatter}: {value} against {limit}"
         );
-        let slope = negative_binomial.derivatives(&point).unwrap();
-        let flat = poisson.derivatives(&at).unwrap();
+        let slope = negative_binomial.derivatives(&point, 1).unwrap();
+        let flat = poisson.derivatives(&at, 1).unwrap();
         for i in 0..4 {
             assert!((slope.gradient[i] - flat.gradient[i]).abs() < 1e-4);
         }

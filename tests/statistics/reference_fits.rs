@@ -42,7 +42,7 @@ fn the_log_density_is_the_references_at_its_points() {
             let both = prior + number(&point["log_likelihood"]);
             approx::assert_relative_eq!(model.log_prior(&at), prior, max_relative = 1e-9);
             approx::assert_relative_eq!(model.log_density(&at), both, max_relative = 1e-9);
-            approx::assert_relative_eq!(model.derivatives(&at).unwrap().value, both, max_relative = 1e-9);
+            approx::assert_relative_eq!(model.derivatives(&at, 1).unwrap().value, both, max_relative = 1e-9);
         }
     }
 }
@@ -76,7 +76,7 @@ fn without_priors_the_mode_is_the_maximum_of_the_likelihood() {
             (Some(_), true) => {
                 assert_eq!(mode.scatter, Some(ScatterMode::AtZero), "{case}");
                 // At the edge the score by c^2 is half the second derivative by c.
-                let score = 0.5 * model.derivatives(&mode.point).unwrap().hessian[d * d - 1];
+                let score = 0.5 * model.derivatives(&mode.point, 1).unwrap().hessian[d * d - 1];
                 let published = number(&classical["score_at_zero"]);
                 assert!(score < 0.0);
                 approx::assert_relative_eq!(score, published, max_relative = 1e-5);

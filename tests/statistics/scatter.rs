@@ -36,7 +36,7 @@ fn by_brute_force(model: &Model, about: f64, highest: f64) -> (f64, f64) {
         .map(|k| {
             let c = (f64::from(k) + 0.5) * step;
             // The baseline's width at this scatter, from the Hessian; 12 of them hold all.
-            let hessian = model.derivatives(&[about, c]).unwrap().hessian;
+            let hessian = model.derivatives(&[about, c], 1).unwrap().hessian;
             let width = 1.0 / (-hessian[0]).sqrt();
             let across: Vec<f64> = (-40..=40)
                 .map(|j| model.log_density(&[about + 0.15 * f64::from(j) * width, c]))

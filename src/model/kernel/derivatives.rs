@@ -1,0 +1,384 @@
+//! First and second derivatives of the rows' log likelihood at one point.
+//!
+//! Poisson (`dispersion` absent): of `Y log mu - W mu`; negative binomial with a = c^2 =
+//! `dispersion`: of `Y log mu - (Y + W/a) log(1 + a mu)`, where Y is the count and W the weight of a
+//! row. At a = 0 the latter is its limit, the Poisson, but the derivatives by a are there.
+//!
+//! With m = mu, x = a m and D = 1 + x (Cameron & Trivedi 2013, section 3.3, for the first
+//! derivatives):
+//!
+//! | by | value |
+//! | --- | --- |
+//! | the linear predictor | (Y - W m)/D |
+//! | twice | -m (W + a Y)/D^2 |
+//! | a | W m^2 h(x) - Y m/D, with h(x) = (log(1+x) - x/(1+x))/x^2 |
+//! | a twice | W m^3 h'(x) + Y m^2/D^2 |
+//! | both | -(Y - W m) m/D^2 |
+//!
+//! The sums over rows of these, times columns, are taken in lanes, over shares of [`SHARE`] blocks
+//! whose sums are added in their order: threads may take shares in any order and change no bit.
+
+use super::LOCKSTEP;
+use super::instructions::{Instructions, for_each_set};
+use super::predictor::{BlockValues, Part, Points, predict};
+use super::sums::{RowSums, Sums, pair};
+use crate::model::blocks::{BLOCK, Block, Blocks, DEPTH, Eight, LANES};
+use crate::numeric::{exp_within, ln_1p};
+use std::ops::Range;
+
+/// Blocks whose sums are taken together: 4,096 rows. Part of every result: never change it.
+const SHARE: usize = 64;
+/// Blocks whose second derivatives are summed together: two, so that each sum is fetched and stored
+/// half as often. (And with eight chunks at most, the compiler would write the innermost loop out
+/// eight times, run out of registers and be half as fast.)
+const STRIP: usize = 2;
+
+/// The derivatives at `point` (intercept, then the coefficients), summed over all rows, on at most
+/// `threads` threads. The value leaves out `Y log mu`, which the model knows in closed form.
+pub fn derivatives(
+    instructions: Instructions,
+    blocks: &Blocks,
+    point: &[f64],
+    dispersion: Option<f64>,
+    threads: usize,
+) -> RowSums {
+    let points = Points::new(blocks, point, point.len());
+    let shares = blocks.blocks.div_ceil(SHARE);
+    let of_share = |share: usize| -> Sums<f64> {
+        let mut sums = Sums::zero(&blocks.split);
+        let range = share * SHARE..((share + 1) * SHARE).min(blocks.blocks);
+        add_rows(instructions, blocks, range, &points.part(0, 1), dispersion, &mut sums);
+        sums.added_up()
+    };
+    let threads = threads.clamp(1, shares.max(1));
+    let mut parts: Vec<(usize, Sums<f64>)> = std::thread::scope(|scope| {
+        let of_share = &of_share;
+        let of_thread = move |thread: usize| -> Vec<(usize, Sums<f64>)> {
+            let mine = (thread..shares).step_by(threads);
+            mine.map(|share| (share, of_share(share))).collect()
+        };
+        let others: Vec<_> = (1..threads)
+            .map(|thread| scope.spawn(move || of_thread(thread)))
+            .collect();
+        let mut parts = of_thread(0);
+        for other in others {
+            parts.extend(other.join().unwrap_or_else(|panic| std::panic::resume_unwind(panic)));
+        }
+        parts
+    });
+    parts.sort_unstable_by_key(|(share, _)| *share);
+    let mut total = Sums::zero(&blocks.split).added_up();
+    for (_, part) in &parts {
+        total.add(part);
+    }
+    total.by_coefficient(&blocks.split)
+}
+
+for_each_set! {
+    /// Adds the rows of a range of blocks.
+    fn add_rows(
+        blocks: &Blocks,
+        range: Range<usize>,
+        point: &Part,
+        dispersion: Option<f64>,
+        sums: &mut Sums<Eight>,
+    ) = add_rows_kernel;
+}
+
+#[inline(always)]
+fn add_rows_kernel<const TILE: usize>(
+    blocks: &Blocks,
+    range: Range<usize>,
+    point: &Part,
+    dispersion: Option<f64>,
+    sums: &mut Sums<Eight>,
+) {
+    let mut values: BlockValues = [[0.0; BLOCK]; LOCKSTEP];
+    let mut rows = RowDerivatives::zero();
+    let mut second = [Eight::ZERO; STRIP * DEPTH];
+    for first in range.clone().step_by(STRIP) {
+        let strip = first..(first + STRIP).min(range.end);
+        for number in strip.clone() {
+            let block = blocks.block(number);
+            predict::<TILE>(&block, point, &mut values);
+            let means = &mut values[0];
+            for value in means.iter_mut() {
+                *value = exp_within(*value);
+            }
+            match dispersion {
+                None => poisson_rows(&block, means, &mut rows),
+                Some(a) => {
+                    negative_binomial_rows(&block, means, a, &mut rows);
+                    add_lanes(&mut sums.by_a, &rows.by_a);
+                    add_lanes(&mut sums.by_a_twice, &rows.by_a_twice);
+                    add_lanes(&mut sums.mixed[0], &rows.mixed);
+                    for (column, sum) in sums.mixed[1..].iter_mut().enumerate() {
+                        add_column(&block, column, &rows.mixed, sum);
+                    }
+                }
+            }
+            add_lanes(&mut sums.value, &rows.value);
+            add_lanes(&mut sums.first[0], &rows.first);
+            for (column, sum) in sums.first[1..].iter_mut().enumerate() {
+                add_column(&block, column, &rows.first, sum);
+            }
+            if !sums.index.is_empty() {
+                add_by_pattern(&block, &rows, sums);
+            }
+            add_lanes(&mut sums.second[0], &rows.second);
+            for depth in 0..DEPTH {
+                let lanes = &rows.second[depth * LANES..(depth + 1) * LANES];
+                second[(number - strip.start) * DEPTH + depth].0.copy_from_slice(lanes);
+            }
+        }
+        let columns = blocks.split.dense.len();
+        add_second(
+            blocks.dense(strip.clone()),
+            columns,
+            &second[..strip.len() * DEPTH],
+            &mut sums.second,
+        );
+    }
+}
+
+/// What each row of a block brings.
+struct RowDerivatives {
+    /// The value, without `Y log mu`.
+    value: Values,
+    /// By the linear predictor.
+    first: Values,
+    /// By it twice.
+    second: Values,
+    /// By it and a.
+    mixed: Values,
+    /// By a.
+    by_a: Values,
+    /// By a twice.
+    by_a_twice: Values,
+}
+
+/// A value for each row of a block.
+type Values = [f64; BLOCK];
+
+impl RowDerivatives {
+    fn zero() -> Self {
+        RowDerivatives {
+            value: [0.0; BLOCK],
+            first: [0.0; BLOCK],
+            second: [0.0; BLOCK],
+            mixed: [0.0; BLOCK],
+            by_a: [0.0; BLOCK],
+            by_a_twice: [0.0; BLOCK],
+        }
+    }
+}
+
+/// The lanes of all chunks in one array, which the compiler turns into vector code in any loop.
+#[inline(always)]
+fn flat(chunks: &[Eight; DEPTH]) -> Values {
+    let mut out = [0.0; BLOCK];
+    for depth in 0..DEPTH {
+        out[depth * LANES..(depth + 1) * LANES].copy_from_slice(&chunks[depth].0);
+    }
+    out
+}
+
+#[inline(always)]
+fn poisson_rows(block: &Block, means: &Values, rows: &mut RowDerivatives) {
+    let (counts, weights) = (flat(block.counts), flat(block.weights));
+    for row in 0..BLOCK {
+        let expected = weights[row] * means[row];
+        rows.first[row] = counts[row] - expected;
+        rows.second[row] = -expected;
+        rows.value[row] = -expected;
+    }
+}
+
+#[inline(always)]
+fn negative_binomial_rows(block: &Block, means: &Values, a: f64, rows: &mut RowDerivatives) {
+    let (counts, weights) = (flat(block.counts), flat(block.weights));
+    let mut logs = *means;
+    for log in &mut logs {
+        *log = ln_1p(a * *log);
+    }
+    for row in 0..BLOCK {
+        let (y, w, m) = (counts[row], weights[row], means[row]);
+        let x = a * m;
+        let d = 1.0 / (1.0 + x);
+        let residual = (y - w * m) * d;
+        let (md, log) = (m * d, logs[row]);
+        let (h, slope) = log_remainder(x, d, log);
+        rows.first[row] = residual;
+        rows.second[row] = -md * (w + a * y) * d;
+        rows.mixed[row] = -residual * md;
+        rows.by_a[row] = w * m * m * h - y * md;
+        rows.by_a_twice[row] = w * m * m * m * slope + y * md * md;
+    }
+    if a > 0.0 {
+        let size = 1.0 / a;
+        for row in 0..BLOCK {
+            rows.value[row] = -(counts[row] + weights[row] * size) * logs[row];
+        }
+    } else {
+        // The limit; 1/a would be infinite.
+        for row in 0..BLOCK {
+            rows.value[row] = -weights[row] * means[row];
+        }
+    }
+}
+
+/// h(x) = (log(1+x) - x/(1+x)) / x^2 and its derivative, for x >= 0, from 1/(1+x) and log(1+x).
+///
+/// Below 0.03 the closed forms lose all digits (h is a difference of two numbers near x, divided by
+/// x^2), so the series h = sum (-1)^k (k+1)/(k+2) x^k is summed there; its first term left out is
+/// below 1e-17. Both are computed and one is taken: a branch would end the vector code.
+#[inline(always)]
+fn log_remainder(x: f64, d: f64, log: f64) -> (f64, f64) {
+    let (mut series, mut series_slope) = (0.0, 0.0);
+    for k in (0..12).rev() {
+        let k = f64::from(k);
+        // Horner in -x: h(x) = c0 - c1 x + c2 x^2 ..., and its derivative alongside.
+        series_slope = series - x * series_slope;
+        series = (k + 1.0) / (k + 2.0) - x * series;
+    }
+    let over = 1.0 / x;
+    let h = (log - x * d) * over * over;
+    let slope = (d * d - 2.0 * h) * over;
+    if x < 0.03 { (series, -series_slope) } else { (h, slope) }
+}
+
+#[inline(always)]
+fn add_lanes(sum: &mut Eight, values: &Values) {
+    for depth in 0..DEPTH {
+        for lane in 0..LANES {
+            sum.0[lane] += values[depth * LANES + lane];
+        }
+    }
+}
+
+#[inline(always)]
+fn add_eight(sum: &mut Eight, values: &Eight) {
+    for lane in 0..LANES {
+        sum.0[lane] += values.0[lane];
+    }
+}
+
+/// Adds a column times the rows' values to the lanes of their sum.
+#[inline(always)]
+fn add_column(block: &Block, column: usize, values: &Values, sum: &mut Eight) {
+    let mut lanes = sum.0;
+    for depth in 0..DEPTH {
+        let x = &block.dense(depth)[column].0;
+        for lane in 0..LANES {
+            lanes[lane] += x[lane] * values[depth * LANES + lane];
+        }
+    }
+    sum.0 = lanes;
+}
+
+/// Adds X' diag(values) X, over the rows of a strip, to the sums of pairs: `dense` holds the chunks of
+/// `columns` columns, `values` one value for each row.
+#[inline(always)]
+fn add_second(dense: &[Eight], columns: usize, values: &[Eight], sums: &mut [Eight]) {
+    let mut i = 0;
+    while i + 2 <= columns {
+        add_pairs_of::<2>(dense, columns, i, values, sums);
+        i += 2;
+    }
+    if i < columns {
+        add_pairs_of::<1>(dense, columns, i, values, sums);
+    }
+}
+
+/// The pairs of `TALL` columns from `i` on with the intercept and all columns up to them.
+#[inline(always)]
+fn add_pairs_of<const TALL: usize>(dense: &[Eight], columns: usize, i: usize, values: &[Eight], sums: &mut [Eight]) {
+    let mut scaled = [[Eight::ZERO; TALL]; STRIP * DEPTH];
+    let mut own = [Eight::ZERO; TALL];
+    for ((chunk, value), scaled) in dense.chunks_exact(columns).zip(values).zip(&mut scaled) {
+        let chunk = &chunk[i..i + TALL];
+        for t in 0..TALL {
+            for lane in 0..LANES {
+                scaled[t].0[lane] = chunk[t].0[lane] * value.0[lane];
+                own[t].0[lane] += scaled[t].0[lane];
+            }
+        }
+    }
+    for t in 0..TALL {
+        add_eight(&mut sums[pair(i + t + 1, 0)], &own[t]);
+    }
+    // Tiles of TALL x 2 pairs: each load serves two sums, and the sums stay in registers. The tile
+    // on the diagonal holds one pair twice, the wrong way round; it is left out when sums are stored.
+    let scaled = &scaled[..values.len()];
+    let mut k = 0;
+    while k + 2 <= i + TALL {
+        add_tile::<TALL, 2>(dense, columns, i, k, scaled, sums);
+        k += 2;
+    }
+    if k < i + TALL {
+        add_tile::<TALL, 1>(dense, columns, i, k, scaled, sums);
+    }
+}
+
+#[inline(always)]
+fn add_tile<const TALL: usize, const WIDE: usize>(
+    dense: &[Eight],
+    columns: usize,
+    i: usize,
+    k: usize,
+    scaled: &[[Eight; TALL]],
+    sums: &mut [Eight],
+) {
+    let mut tile = [[Eight::ZERO; WIDE]; TALL];
+    for (chunk, scaled) in dense.chunks_exact(columns).zip(scaled) {
+        let chunk = &chunk[k..k + WIDE];
+        for t in 0..TALL {
+            for w in 0..WIDE {
+                for lane in 0..LANES {
+                    tile[t][w].0[lane] += scaled[t].0[lane] * chunk[w].0[lane];
+                }
+            }
+        }
+    }
+    for t in 0..TALL {
+        for w in 0..WIDE {
+            if k + w <= i + t {
+                add_eight(&mut sums[pair(i + t + 1, k + w + 1)], &tile[t][w]);
+            }
+        }
+    }
+}
+
+/// Adds the rows to the sums of their patterns: one addition a row where dense columns of zeros and
+/// ones would take a product each.
+#[inline(always)]
+fn add_by_pattern(block: &Block, rows: &RowDerivatives, sums: &mut Sums<Eight>) {
+    for (g, index) in sums.index.iter_mut().enumerate() {
+        for depth in 0..DEPTH {
+            let dense = block.dense(depth);
+            for (lane, pattern) in block.patterns(depth)[g].iter().enumerate() {
+                let (row, pattern) = (depth * LANES + lane, usize::from(*pattern));
+                index.first[pattern] += rows.first[row];
+                index.mixed[pattern] += rows.mixed[row];
+                index.second[pattern] += rows.second[row];
+                let cross = &mut index.cross[pattern * block.columns..(pattern + 1) * block.columns];
+                for (sum, column) in cross.iter_mut().zip(dense) {
+                    *sum += rows.second[row] * column.0[lane];
+                }
+            }
+        }
+    }
+    for g in 1..sums.index.len() {
+        for h in 0..g {
+            let width = sums.index[h].first.len();
+            let table = &mut sums.pairs[pair(g, h) - g];
+            for depth in 0..DEPTH {
+                let patterns = block.patterns(depth);
+                for lane in 0..LANES {
+                    let (p, q) = (usize::from(patterns[g][lane]), usize::from(patterns[h][lane]));
+                    table[p * width + q] += rows.second[depth * LANES + lane];
+                }
+            }
+        }
+    }
+}

@@ -1,0 +1,221 @@
+//! Columns of few values, taken together into one column of small whole numbers.
+//!
+//! A category of 50 levels is 49 columns of zeros and ones, of which each row has at most one 1.
+//! Instead of 49 products a row, the kernels take one value from a table: the rows' patterns in
+//! those columns are numbered, and at each point of the parameter space the table holds, for each
+//! pattern, the sum of its products. Any columns of few values can share a table (categories, joint
+//! terms of categories, yes/no columns, a period from 1 to 12), as long as their joint patterns
+//! stay few. It is exact: the same products are added up, once for each pattern and not for each row.
+
+/// Most patterns of one index column, so that an index is a byte and eight tables stay in the
+/// first-level cache.
+pub const MOST_PATTERNS: usize = 256;
+/// Columns of more different values than this stay as they are.
+const MOST_VALUES: usize = 16;
+/// An index column takes the place of at least this many columns. A look-up costs as much as three
+/// or four products, because processors load single values no faster than whole vectors.
+const FEWEST_COLUMNS: usize = 6;
+
+/// Several columns as one.
+#[derive(Debug, Clone, PartialEq)]
+pub struct IndexColumn {
+    /// Places of the columns among the terms, rising.
+    pub terms: Vec<usize>,
+    /// For each pattern in turn, its values in those columns.
+    pub values: Vec<f64>,
+    /// The pattern of each row.
+    pub of_row: Vec<u8>,
+}
+
+impl IndexColumn {
+    /// Number of patterns.
+    pub fn patterns(&self) -> usize {
+        self.values.len() / self.terms.len()
+    }
+
+    /// The values of one pattern, one for each of `terms`.
+    pub fn pattern(&self, pattern: usize) -> &[f64] {
+        &self.values[pattern * self.terms.len()..(pattern + 1) * self.terms.len()]
+    }
+}
+
+/// The terms, each in one of two places.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Split {
+    /// Places of the terms whose columns stay, rising.
+    pub dense: Vec<usize>,
+    /// The index columns that took the place of the others.
+    pub index: Vec<IndexColumn>,
+}
+
+/// Splits columns into those that stay and those that become index columns. A pure function of the
+/// values: columns are tried in their order, each joins the last index column or opens the next.
+pub fn split(columns: &[Vec<f64>]) -> Split {
+    let mut joined: Vec<Joint> = Vec::new();
+    let mut dense = Vec::new();
+    for (term, column) in columns.iter().enumerate() {
+        let Some((codes, values)) = codes(column) else {
+            dense.push(term);
+            continue;
+        };
+        if let Some(last) = joined.last_mut()
+            && let Some(more) = last.with(term, &codes, values)
+        {
+            *last = more;
+            continue;
+        }
+        joined.push(Joint {
+            terms: vec![term],
+            patterns: values,
+            of_row: codes,
+        });
+    }
+    let mut index = Vec::new();
+    for joint in joined {
+        if joint.terms.len() < FEWEST_COLUMNS {
+            dense.extend(joint.terms);
+        } else {
+            index.push(joint.filled_from(columns));
+        }
+    }
+    dense.sort_unstable();
+    Split { dense, index }
+}
+
+/// Columns that have been joined so far.
+struct Joint {
+    terms: Vec<usize>,
+    patterns: usize,
+    of_row: Vec<u8>,
+}
+
+impl Joint {
+    /// These columns and one more, with its codes below `values`; `None` where the joint patterns
+    /// are too many.
+    fn with(&self, term: usize, codes: &[u8], values: usize) -> Option<Joint> {
+        const UNSEEN: u16 = u16::MAX;
+        let mut joint_of = vec![UNSEEN; self.patterns * values];
+        let mut patterns = 0;
+        let mut of_row = Vec::with_capacity(codes.len());
+        for (pattern, code) in self.of_row.iter().zip(codes) {
+            let joint = &mut joint_of[usize::from(*pattern) * values + usize::from(*code)];
+            if *joint == UNSEEN {
+                if patterns == MOST_PATTERNS {
+                    return None;
+                }
+                *joint = patterns as u16;
+                patterns += 1;
+            }
+            of_row.push(*joint as u8);
+        }
+        Some(Joint {
+            terms: self.terms.iter().copied().chain([term]).collect(),
+            patterns,
+            of_row,
+        })
+    }
+
+    fn filled_from(self, columns: &[Vec<f64>]) -> IndexColumn {
+        let width = self.terms.len();
+        let mut values = vec![0.0; self.patterns * width];
+        let mut filled = vec![false; self.patterns];
+        for (row, pattern) in self.of_row.iter().enumerate() {
+            let pattern = usize::from(*pattern);
+            if !filled[pattern] {
+                filled[pattern] = true;
+                for (place, term) in self.terms.iter().enumerate() {
+                    values[pattern * width + place] = columns[*term][row];
+                }
+            }
+        }
+        IndexColumn {
+            terms: self.terms,
+            values,
+            of_row: self.of_row,
+        }
+    }
+}
+
+/// The number of each row's value among the column's values, in order of first appearance, and how
+/// many values there are; `None` where they are many.
+fn codes(column: &[f64]) -> Option<(Vec<u8>, usize)> {
+    let mut values: Vec<f64> = Vec::new();
+    let mut codes = Vec::new();
+    for value in column {
+        let code = match values.iter().position(|known| known == value) {
+            Some(code) => code,
+            None if values.len() == MOST_VALUES => return None,
+            None => {
+                values.push(*value);
+                values.len() - 1
+            }
+        };
+        codes.push(code as u8);
+    }
+    Some((codes, values.len()))
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// The 0/1 columns of a category: one for each level but the first.
+    fn category(levels: usize, of_row: impl Fn(usize) -> usize, rows: usize) -> Vec<Vec<f64>> {
+        (1..levels)
+            .map(|level| (0..rows).map(|row| f64::from(u8::from(of_row(row) == level))).collect())
+            .collect()
+    }
+
+    fn restored(split: &Split, columns: &[Vec<f64>]) -> Vec<Vec<f64>> {
+        let mut out = columns.to_vec();
+        for index in &split.index {
+            for (place, term) in index.terms.iter().enumerate() {
+                out[*term] = index
+                    .of_row
+                    .iter()
+                    .map(|p| index.pattern(usize::from(*p))[place])
+                    .collect();
+            }
+        }
+        out
+    }
+
+    #[test]
+    fn categories_share_an_index_column_and_a_number_stays() {
+        let rows = 600;
+        let mut columns = category(4, |row| row % 4, rows);
+        columns.push((0..rows).map(|row| row as f64).collect());
+        columns.extend(category(6, |row| row / 7 % 6, rows));
+        let split = split(&columns);
+        assert_eq!(split.dense, [3]);
+        assert_eq!(split.index.len(), 1);
+        assert_eq!(split.index[0].patterns(), 24);
+        assert_eq!(restored(&split, &columns), columns);
+    }
+
+    #[test]
+    fn a_long_category_takes_two() {
+        let columns = category(300, |row| row % 300, 900);
+        let split = split(&columns);
+        assert!(split.dense.is_empty());
+        assert_eq!(split.index.len(), 2);
+        assert!(split.index.iter().all(|index| index.patterns() <= MOST_PATTERNS));
+        assert_eq!(restored(&split, &columns), columns);
+    }
+
+    #[test]
+    fn two_columns_do_not_pay() {
+        let columns = category(3, |row| row % 3, 90);
+        assert_eq!(split(&columns).dense, [0, 1]);
+    }
+
+    #[test]
+    fn without_rows_or_columns_nothing_breaks() {
+        assert_eq!(split(&[]).dense, [0_usize; 0]);
+        let empty = split(&vec![Vec::new(); 8]);
+        assert_eq!(
+            empty.dense.len() + empty.index.iter().map(|i| i.terms.len()).sum::<usize>(),
+            8
+        );
+    }
+}
