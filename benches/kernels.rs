@@ -8,22 +8,18 @@
 #[allow(dead_code, reason = "each bench uses its part")]
 mod support;
 
-use ratewright::model::Model;
+use ratewright::model::{Instructions, Model};
 use ratewright::numeric::{Purpose, Stream};
 use std::io::Write;
 use support::clock::Clock;
 use support::machine::Limits;
 use support::pairs::{Piece, Spread, Turns, take_turns};
 use support::plain::Rows;
-use support::problems::{C, Family, L, M, Problem, Sampling, Study, study};
+use support::problems::{C, Columns, Family, L, M, Problem, Sampling, Study, study};
 use support::{Failure, arguments, number_after};
 
 /// Points evaluated together.
 const WIDTHS: [usize; 4] = [1, 2, 4, 8];
-/// Instruction sets that are timed, each forced for the whole of its table.
-///
-/// This is the one place that lists them: a set is its name and the call that forces it.
-const INSTRUCTION_SETS: [(&str, fn()); 1] = [("as compiled", || ())];
 /// Scatter at which the negative binomial is evaluated.
 const SCATTER: f64 = 0.6;
 /// Seed of the problems.
@@ -35,38 +31,41 @@ fn main() -> Result<(), Failure> {
     let mut out = std::io::stdout().lock();
     let limits = Limits::measure();
     writeln!(out, "{}", limits.told())?;
-    for (set, force) in INSTRUCTION_SETS {
-        force();
-        writeln!(
-            out,
-            "Log density, instructions {set}; time of one core, median of {turns} turns\n"
-        )?;
-        writeln!(
-            out,
-            "| problem | rows x terms | family | together | us an evaluation | ns a row | x the plain loop (quartiles) \
-             | of the arithmetic peak | of the read bandwidth |\n| --- | --- | --- | --- | --- | --- | --- | --- | --- |"
-        )?;
-        for problem in [M, L, C] {
-            for family in Family::BOTH {
-                evaluations(&mut out, &problem, family, turns, &limits)?;
-            }
-        }
-        writeln!(out, "\nValue, gradient and Hessian, instructions {set}\n")?;
-        writeln!(
-            out,
-            "| problem | rows x terms | family | us | ns a row | x the plain loop (quartiles) | of the arithmetic peak |\n\
-             | --- | --- | --- | --- | --- | --- | --- |"
-        )?;
-        for problem in [M, L] {
-            for family in Family::BOTH {
-                derivatives(&mut out, &problem, family, turns, &limits)?;
-            }
-        }
-        if arguments.iter().any(|argument| argument == "--million") {
-            million(&mut out, turns)?;
+    writeln!(
+        out,
+        "Log density: time of one core, median of {turns} turns\n\n\
+         | problem | rows x terms | family | instructions | together | us an evaluation | ns a row \
+         | x the plain loop (quartiles) | of the widest's speed | of the arithmetic peak | of the read bandwidth |\n\
+         | --- | --- | --- | --- | --- | --- | --- | --- | --- | --- | --- |"
+    )?;
+    for problem in [M, L, C] {
+        for family in Family::BOTH {
+            evaluations(&mut out, &problem, family, turns, &limits)?;
         }
     }
+    writeln!(
+        out,
+        "\nValue, gradient and Hessian on one core\n\n\
+         | problem | rows x terms | family | instructions | us | ns a row | x the plain loop (quartiles) \
+         | of the arithmetic peak |\n\
+         | --- | --- | --- | --- | --- | --- | --- | --- |"
+    )?;
+    for problem in [M, L] {
+        for family in Family::BOTH {
+            derivatives(&mut out, &problem, family, turns, &limits)?;
+        }
+    }
+    if arguments.iter().any(|argument| argument == "--million") {
+        million(&mut out, turns)?;
+    }
     Ok(())
+}
+
+/// The model with each set of vector instructions that the machine has, narrow ones first. All give the same bits;
+/// [`evaluations`] looks that they do.
+fn by_instructions(model: &Model) -> Vec<(Instructions, Model)> {
+    let with = |instructions| (instructions, model.clone().with_instructions(instructions));
+    Instructions::available().into_iter().map(with).collect()
 }
 
 /// Points about the crude rate, one after the other.
@@ -114,40 +113,71 @@ fn evaluations(
     let Study { design, model, .. } = study(problem, family, SEED, Sampling::default())?;
     let rows = Rows::new(&design);
     let points = points(&model, WIDTHS[WIDTHS.len() - 1]);
-    let point = &points[..model.dimension()];
-    let likelihood = model.log_density(point) - model.log_prior(point);
+    let d = model.dimension();
+    let point = &points[..d];
+    let density = model.log_density(point);
+    let likelihood = density - model.log_prior(point);
     agree("log likelihood", likelihood, plainly(&rows, &model, point), likelihood)?;
 
+    let models = by_instructions(&model);
     let mut pieces = vec![Piece::new(|| plainly(&rows, &model, point))];
-    for width in WIDTHS {
-        let (model, points) = (&model, &points[..width * model.dimension()]);
-        let mut densities = vec![0.0; width];
-        pieces.push(Piece::new(move || together(model, points, &mut densities)));
+    for (instructions, model) in &models {
+        if model.log_density(point).to_bits() != density.to_bits() {
+            return Err(format!("{instructions} gives other bits than {}", Instructions::widest()).into());
+        }
+        for width in WIDTHS {
+            let points = &points[..width * d];
+            let mut densities = vec![0.0; width];
+            pieces.push(Piece::new(move || together(model, points, &mut densities)));
+        }
     }
     let times = take_turns(pieces, turns, Clock::Thread);
-    let (terms, many) = (problem.terms(), problem.rows as f64);
-    let label = format!("| {} | {} x {terms} | {} |", problem.name, problem.rows, family.name());
+    let many = problem.rows as f64;
+    let label = label(problem, family);
     let plain = times.seconds(0).median;
     writeln!(
         out,
-        "{label} plain loop | {:.1} | {:.2} | 1 | | |",
+        "{label} plain loop | 1 | {:.1} | {:.2} | 1 | | | |",
         plain * 1e6,
         plain / many * 1e9
     )?;
-    for (place, width) in WIDTHS.into_iter().enumerate() {
-        let each = times.seconds(place + 1).median / width as f64;
-        let bytes = necessary_bytes(problem);
-        writeln!(
-            out,
-            "{label} {width} | {:.1} | {:.2} | {} | {:.0} % | {:.0} % |",
-            each * 1e6,
-            each / many * 1e9,
-            scaled(&times, place + 1, width as f64),
-            100.0 * many * necessary_operations(terms, family) / each / limits.widest_arithmetic(),
-            100.0 * bytes as f64 / (each * width as f64) / limits.read_rate(bytes),
-        )?;
+    let bytes = necessary_bytes(problem);
+    let piece_of = |set: usize, width: usize| 1 + set * WIDTHS.len() + width;
+    for (set, (instructions, _)) in models.iter().enumerate() {
+        for (place, width) in WIDTHS.into_iter().enumerate() {
+            let piece = piece_of(set, place);
+            let together = times.seconds(piece).median;
+            let each = together / width as f64;
+            let shares = match problem.columns {
+                Columns::Numbers(terms) => format!(
+                    "{:.0} % | {:.0} %",
+                    100.0 * many * necessary_operations(terms, family) / each / limits.arithmetic_with(*instructions),
+                    100.0 * bytes as f64 / together / limits.read_rate(bytes)
+                ),
+                // What is necessary there depends on how the categories are stored.
+                Columns::Categories(_) => "- | -".to_owned(),
+            };
+            writeln!(
+                out,
+                "{label} {instructions} | {width} | {:.1} | {:.2} | {} | {:.2} | {shares} |",
+                each * 1e6,
+                each / many * 1e9,
+                scaled(&times, piece, width as f64),
+                times.ratio(piece_of(models.len() - 1, place), piece).median,
+            )?;
+        }
     }
     Ok(())
+}
+
+fn label(problem: &Problem, family: Family) -> String {
+    format!(
+        "| {} | {} x {} | {} |",
+        problem.name,
+        problem.rows,
+        problem.terms(),
+        family.name()
+    )
 }
 
 /// How many times as long as an evaluation of a piece the plain loop takes, where the piece holds `width` of them.
@@ -160,20 +190,20 @@ fn scaled(times: &Turns, piece: usize, width: f64) -> Spread {
     }
 }
 
-/// Multiplications and additions that a row needs at least: two for each term and one for the offset; in the
-/// exponential 3 for the range, 4 for the split and 30 for the polynomial; then the sum. The negative binomial
-/// multiplies eight rows of equal counts together (3 each) before one log(1 + x) of some 40 operations.
-/// Divisions, comparisons and bit moves are not counted.
+/// Multiplications and additions of a row: two for each term and one for the offset; in the exponential 7 for the
+/// split and 23 for the polynomial. Then Poisson weighs and adds; the negative binomial scales by c^2, multiplies
+/// eight rows of equal counts together (3 each) and shares among them one log(1 + x) of some 36 and its sum. Divisions,
+/// comparisons and bit moves are not counted.
 fn necessary_operations(terms: usize, family: Family) -> f64 {
-    let mean = 2.0 * terms as f64 + 1.0 + 37.0;
+    let mean = 2.0 * terms as f64 + 1.0 + 30.0;
     match family {
-        Family::Poisson => mean + 1.0,
-        Family::NegativeBinomial => mean + 1.0 + 3.0 + 40.0 / 8.0,
+        Family::Poisson => mean + 2.0,
+        Family::NegativeBinomial => mean + 4.0 + 40.0 / 8.0,
     }
 }
 
-/// Bytes that one pass over the rows reads at least, where nothing is condensed: the columns and the offset. (Counts
-/// are equal in a lane, so that they hardly add to it.)
+/// Bytes that one pass over the rows reads at least: the columns and the offset. (Counts and weights are equal
+/// in a lane, so that they hardly add to it.)
 fn necessary_bytes(problem: &Problem) -> usize {
     problem.rows * (problem.terms() + 1) * size_of::<f64>()
 }
@@ -193,7 +223,7 @@ fn derivatives(
         Family::Poisson => rows.poisson_derivatives(coefficients),
         Family::NegativeBinomial => rows.negative_binomial_derivatives(coefficients, SCATTER),
     };
-    let ours = model.derivatives(&points).ok_or("the density is 0 at the point")?;
+    let ours = model.derivatives(&points, 1).ok_or("the density is 0 at the point")?;
     let theirs = plain();
     agree(
         "log likelihood",
@@ -209,34 +239,40 @@ fn derivatives(
         agree("gradient", gradient, theirs.gradient[i], largest)?;
         agree("curvature", curvature, largest, largest)?;
     }
-    let pieces = vec![
-        Piece::new(|| plain().value),
-        Piece::new(|| {
+    let models = by_instructions(&model);
+    let mut pieces = vec![Piece::new(|| plain().value)];
+    for (_, model) in &models {
+        let points = &points;
+        let value = move || {
             model
-                .derivatives(&points)
+                .derivatives(points, 1)
                 .map_or(f64::NAN, |derivatives| derivatives.value)
-        }),
-    ];
+        };
+        pieces.push(Piece::new(value));
+    }
     let times = take_turns(pieces, turns, Clock::Thread);
     let (terms, many) = (problem.terms(), problem.rows as f64);
-    let label = format!("| {} | {} x {terms} | {} |", problem.name, problem.rows, family.name());
-    let (first, each) = (times.seconds(0).median, times.seconds(1).median);
-    // The triangle of the Hessian, two operations for each of its entries, is nearly all of the work.
-    let operations = necessary_operations(terms, family) + (terms * (terms + 1)) as f64 + 3.0 * terms as f64;
+    let label = label(problem, family);
+    let first = times.seconds(0).median;
     writeln!(
         out,
-        "{label} {:.0} (plain loop) | {:.1} | 1 | |",
+        "{label} plain loop | {:.0} | {:.1} | 1 | |",
         first * 1e6,
         first / many * 1e9
     )?;
-    writeln!(
-        out,
-        "{label} {:.0} | {:.1} | {} | {:.0} % |",
-        each * 1e6,
-        each / many * 1e9,
-        times.ratio(0, 1),
-        100.0 * many * operations / each / limits.widest_arithmetic()
-    )?;
+    // The triangle of the Hessian, two operations for each of its entries, is nearly all of the work.
+    let operations = necessary_operations(terms, family) + (terms * (terms + 1)) as f64 + 3.0 * terms as f64;
+    for (set, (instructions, _)) in models.iter().enumerate() {
+        let each = times.seconds(set + 1).median;
+        writeln!(
+            out,
+            "{label} {instructions} | {:.0} | {:.1} | {} | {:.0} % |",
+            each * 1e6,
+            each / many * 1e9,
+            times.ratio(0, set + 1),
+            100.0 * many * operations / each / limits.arithmetic_with(*instructions)
+        )?;
+    }
     Ok(())
 }
 

@@ -4,6 +4,7 @@
 //! Each figure is the best of several tries: a limit is what the machine can do when nothing else disturbs it.
 
 use super::clock::Clock;
+use ratewright::model::Instructions;
 use std::arch::x86_64::{
     _mm_add_pd, _mm_cvtsd_f64, _mm_mul_pd, _mm_set1_pd, _mm256_add_pd, _mm256_cvtsd_f64, _mm256_mul_pd, _mm256_set1_pd,
     _mm512_add_pd, _mm512_cvtsd_f64, _mm512_mul_pd, _mm512_set1_pd,
@@ -14,40 +15,6 @@ use std::sync::Barrier;
 
 /// Tries of each probe.
 const TRIES: usize = 7;
-
-/// Vector instructions of x86-64, by the width of their registers.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub enum Vectors {
-    /// Two numbers: every x86-64 processor.
-    Sse2,
-    /// Four.
-    Avx2,
-    /// Eight.
-    Avx512,
-}
-
-impl Vectors {
-    /// Those that this processor has, narrow ones first.
-    pub fn available() -> Vec<Vectors> {
-        let mut available = vec![Vectors::Sse2];
-        if is_x86_feature_detected!("avx2") {
-            available.push(Vectors::Avx2);
-        }
-        if is_x86_feature_detected!("avx512f") {
-            available.push(Vectors::Avx512);
-        }
-        available
-    }
-
-    /// The usual name.
-    pub fn name(self) -> &'static str {
-        match self {
-            Vectors::Sse2 => "SSE2",
-            Vectors::Avx2 => "AVX2",
-            Vectors::Avx512 => "AVX-512",
-        }
-    }
-}
 
 /// Where an array lies that is read again and again.
 #[derive(Debug, Clone, Copy)]
@@ -67,8 +34,8 @@ pub struct Level {
 pub struct Limits {
     /// Caches and memory, small ones first.
     pub levels: Vec<Level>,
-    /// Multiplications and additions a second on one core, by the vectors used.
-    pub arithmetic: Vec<(Vectors, f64)>,
+    /// Multiplications and additions a second on one core, by the vector instructions used.
+    pub arithmetic: Vec<(Instructions, f64)>,
     cores: usize,
 }
 
@@ -90,10 +57,7 @@ impl Limits {
                 level("last-level cache", last, last / 2 / cores.max(2)),
                 level("memory", usize::MAX, (8 * last).min(512 << 20)),
             ],
-            arithmetic: Vectors::available()
-                .into_iter()
-                .map(|set| (set, arithmetic_rate(set)))
-                .collect(),
+            arithmetic: Instructions::available().into_iter().zip(arithmetic_rates()).collect(),
             cores,
         }
     }
@@ -104,9 +68,10 @@ impl Limits {
         level.map_or(f64::NAN, |level| level.one_core)
     }
 
-    /// Multiplications and additions a second on one core with the widest vectors that the processor has.
-    pub fn widest_arithmetic(&self) -> f64 {
-        self.arithmetic.last().map_or(f64::NAN, |(_, rate)| *rate)
+    /// Multiplications and additions a second on one core with these instructions.
+    pub fn arithmetic_with(&self, instructions: Instructions) -> f64 {
+        let known = self.arithmetic.iter().find(|(set, _)| *set == instructions);
+        known.map_or(f64::NAN, |(_, rate)| *rate)
     }
 
     /// The limits as a table.
@@ -122,7 +87,7 @@ impl Limits {
         }
         for (set, rate) in &self.arithmetic {
             let rate = rate * 1e-9;
-            let _ = writeln!(text, "| multiply and add, {} | {rate:.1} G/s | |", set.name());
+            let _ = writeln!(text, "| multiply and add, {set} | {rate:.1} G/s | |");
         }
         text
     }
@@ -148,35 +113,32 @@ fn cache_bytes(level: u32) -> Option<usize> {
 /// Bytes a second that `threads` threads read together, each its own array of so many bytes.
 fn read_rate(bytes: usize, threads: usize) -> f64 {
     let together = Barrier::new(threads);
-    let slowest_of_each_try = std::thread::scope(|scope| {
-        let readers: Vec<_> = (0..threads)
-            .map(|_| scope.spawn(|| read_times(bytes, &together)))
-            .collect();
-        let mut slowest = [0.0_f64; TRIES];
+    let rates = std::thread::scope(|scope| {
+        let readers: Vec<_> = (0..threads).map(|_| scope.spawn(|| read_rates(bytes, &together))).collect();
+        let mut sums = [0.0; TRIES];
         for reader in readers {
-            let times = reader.join().unwrap_or([f64::INFINITY; TRIES]);
-            for (slowest, time) in slowest.iter_mut().zip(times) {
-                *slowest = slowest.max(time);
+            let rates = reader.join().unwrap_or([f64::NAN; TRIES]);
+            for (sum, rate) in sums.iter_mut().zip(rates) {
+                *sum += rate;
             }
         }
-        slowest
+        sums
     });
-    let best = slowest_of_each_try.into_iter().fold(f64::INFINITY, f64::min);
-    (threads * bytes) as f64 / best
+    rates.into_iter().fold(f64::NAN, f64::max)
 }
 
-/// Seconds of one pass over an array of so many bytes, in each try.
-fn read_times(bytes: usize, together: &Barrier) -> [f64; TRIES] {
+/// Bytes a second of this thread in each try, by its own time: who else runs on the core does not count.
+fn read_rates(bytes: usize, together: &Barrier) -> [f64; TRIES] {
     let values = vec![1.0; bytes / size_of::<f64>()];
     let passes = ((256 << 20) / bytes).max(1);
     std::array::from_fn(|_| {
         together.wait();
-        let time = Clock::Wall.time(|| {
+        let time = Clock::Thread.time(|| {
             for _ in 0..passes {
                 black_box(sum(black_box(&values)));
             }
         });
-        time / passes as f64
+        (passes * bytes) as f64 / time
     })
 }
 
@@ -216,23 +178,29 @@ const CHAINS: usize = 12;
 const FACTOR: f64 = 0.75;
 const SUMMAND: f64 = 0.25;
 
-/// Multiplications and additions a second on one core.
-fn arithmetic_rate(set: Vectors) -> f64 {
-    let (work, lanes): (fn() -> f64, usize) = match set {
-        // SAFETY: `Vectors::available` names only what the processor has, here and below.
-        Vectors::Sse2 => (|| unsafe { chains_sse2() }, 2),
-        // SAFETY: as above.
-        Vectors::Avx2 => (|| unsafe { chains_avx2() }, 4),
-        // SAFETY: as above.
-        Vectors::Avx512 => (|| unsafe { chains_avx512() }, 8),
-    };
-    let best = (0..TRIES)
-        .map(|_| {
-            Clock::Thread.time(|| {
-                black_box(work());
-            })
+/// Multiplications and additions a second on one core, with vectors of two, four and eight numbers, as far as
+/// the processor has them.
+fn arithmetic_rates() -> Vec<f64> {
+    // SAFETY: every x86-64 processor has SSE2.
+    let mut rates = vec![arithmetic_rate(2, || unsafe { chains_sse2() })];
+    if is_x86_feature_detected!("avx2") {
+        // SAFETY: it was just found.
+        rates.push(arithmetic_rate(4, || unsafe { chains_avx2() }));
+    }
+    if is_x86_feature_detected!("avx512f") {
+        // SAFETY: it was just found.
+        rates.push(arithmetic_rate(8, || unsafe { chains_avx512() }));
+    }
+    rates
+}
+
+fn arithmetic_rate(lanes: usize, work: fn() -> f64) -> f64 {
+    let time = || {
+        Clock::Thread.time(|| {
+            black_box(work());
         })
-        .fold(f64::INFINITY, f64::min);
+    };
+    let best = (0..TRIES).map(|_| time()).fold(f64::INFINITY, f64::min);
     (2 * STEPS * CHAINS * lanes) as f64 / best
 }
 
