@@ -141,6 +141,7 @@ fn ticks_at(values: impl Iterator<Item = f64>) -> Vec<f64> {
 }
 
 fn frame(svg: &mut String, across: &Scale, up: &Scale, ticks_across: &[f64], axis: Axis) {
+    let named: &[i32] = if up.high - up.low > 1.0 { &[1] } else { &[1, 2, 5] };
     // Writing into a string cannot fail, here and below.
     for decade in up.low as i32..=up.high as i32 {
         for step in 1..10 {
@@ -154,7 +155,7 @@ fn frame(svg: &mut String, across: &Scale, up: &Scale, ticks_across: &[f64], axi
                 svg,
                 "<path d=\"M{LEFT} {y:.1}H{RIGHT}\" stroke=\"{ink}\" stroke-width=\"{width}\"/>"
             );
-            if step == 1 {
+            if named.contains(&step) {
                 let _ = writeln!(
                     svg,
                     "<text x=\"{}\" y=\"{:.1}\" text-anchor=\"end\">{}</text>",
@@ -245,8 +246,8 @@ fn plain(value: f64) -> String {
     } else if value >= 1e3 {
         format!("{}k", value / 1e3)
     } else if value < 1.0 {
-        // Powers of ten below 1 carry the error of a negative exponent.
-        format!("{value:.*}", (-value.log10()).round() as usize)
+        // One digit that is not 0: what the negative exponent left of an error is rounded away.
+        format!("{value:.*}", (-value.log10() - 1e-9).ceil() as usize)
     } else {
         format!("{value}")
     }

@@ -114,7 +114,9 @@ fn cache_bytes(level: u32) -> Option<usize> {
 fn read_rate(bytes: usize, threads: usize) -> f64 {
     let together = Barrier::new(threads);
     let rates = std::thread::scope(|scope| {
-        let readers: Vec<_> = (0..threads).map(|_| scope.spawn(|| read_rates(bytes, &together))).collect();
+        let readers: Vec<_> = (0..threads)
+            .map(|_| scope.spawn(|| read_rates(bytes, &together)))
+            .collect();
         let mut sums = [0.0; TRIES];
         for reader in readers {
             let rates = reader.join().unwrap_or([f64::NAN; TRIES]);

@@ -9,9 +9,12 @@ use ratewright::design::{Audit, Coding, ColumnCoding, CovariateCoding, Design, T
 use ratewright::numeric::{Purpose, Stream, exp, ln};
 use std::fmt::Write;
 
-/// Simulates the problem's rows; every row is a unit.
+/// Rows of a unit: a place's months of one year.
+const ROWS_OF_A_UNIT: usize = 12;
+
+/// Simulates the problem's rows.
 pub fn simulate(problem: &Problem, family: Family, seed: u64) -> Design {
-    let rows = problem.rows;
+    let (rows, units) = (problem.rows, problem.rows.div_ceil(ROWS_OF_A_UNIT));
     let mut stream = Stream::new(seed, Purpose::Simulation, rows as u64);
     let (columns, covariates) = match problem.columns {
         Columns::Numbers(terms) => numbers(rows, terms, &mut stream),
@@ -48,8 +51,8 @@ pub fn simulate(problem: &Problem, family: Family, seed: u64) -> Design {
         log_exposure,
         counts,
         stands_for: vec![1.0; rows],
-        unit_of: (0..rows).collect(),
-        units: (1..=rows).map(|row| format!("u{row}")).collect(),
+        unit_of: (0..rows).map(|row| row / ROWS_OF_A_UNIT).collect(),
+        units: (1..=units).map(|unit| format!("u{unit}")).collect(),
         lines: (0..rows).map(|row| row as u64 + 2).collect(),
         coding: Coding {
             exposure_column: Some("exposure".into()),
@@ -63,7 +66,7 @@ pub fn simulate(problem: &Problem, family: Family, seed: u64) -> Design {
             rows_not_kept: 0,
             lines_dropped: Vec::new(),
             rows_used: rows,
-            units: rows,
+            units,
         },
     }
 }
@@ -157,7 +160,7 @@ pub fn csv_text(design: &Design) -> String {
         let _ = write!(
             text,
             "{},{},{}",
-            design.units[row], design.counts[row], design.exposure[row]
+            design.units[design.unit_of[row]], design.counts[row], design.exposure[row]
         );
         let mut first = 0;
         for covariate in &design.coding.covariates {
