@@ -9,12 +9,13 @@ CARGO ?= cargo
 PROGRAM = target/release/ratewright
 DEMO = demo-data/swimming-pools/pools
 BUILD = $(CARGO) build --release --locked --bin ratewright --example make_demo_data
+BENCH = $(CARGO) bench --locked
 
 # Root needs no sudo, and a container may have none.
 SUDO := $(shell test "$$(id -u)" -eq 0 || echo sudo)
 
 .DEFAULT_GOAL := build
-.PHONY: build demo demo-data test lint bench coverage system-library
+.PHONY: build demo demo-data test lint bench bench-instructions bench-scaling coverage system-library
 
 ## build: the program, in target/release
 build: system-library
@@ -38,9 +39,19 @@ lint: system-library
 	$(CARGO) clippy --release --locked --all-targets -- -D warnings
 	RUSTDOCFLAGS="-D warnings" $(CARGO) doc --release --locked --no-deps --lib --examples
 
-## bench: effective draws per draw and time of whole fits, on four stated problems
+## bench: kernels, sampler and whole program, told in tables; a few minutes on two quiet cores
 bench: system-library
-	$(CARGO) run --release --locked --example measure_sampler
+	$(BENCH) --bench kernels -- --turns 7
+	$(BENCH) --bench sampler -- --seeds 2 --problems SDZM
+	$(BENCH) --bench whole
+
+## bench-instructions: instructions of a fit for each effective draw, held against the table; needs valgrind
+bench-instructions: system-library
+	$(BENCH) --bench instructions
+
+## bench-scaling: the whole program by rows, terms, chains and threads; renews the curves in docs
+bench-scaling: system-library
+	$(BENCH) --bench scaling -- --full --renew-docs
 
 ## coverage: the share of 95 % intervals that hold the truth, over 500 simulated demos
 coverage: system-library
