@@ -46,6 +46,8 @@ pub struct Blocks {
     pub blocks: usize,
     /// How many of them, the first ones, are deep.
     pub deep: usize,
+    /// For each deep block, whether its lanes have the counts and weights of those of the block before.
+    pub continues: Vec<bool>,
     /// Where the terms' columns are.
     pub split: Split,
     /// For each chunk, the columns that stay.
@@ -136,6 +138,8 @@ impl Blocks {
                 patterns[place / LANES * split.index.len() + column][place % LANES] = index.of_row[row];
             }
         }
+        let (counts, weights) = (laid_once(counts), laid_once(weights));
+        let key = |block: usize| (counts[block][0], weights[block][0]);
         let largest = |values: &[f64]| values.iter().fold(0.0_f64, |most, value| most.max(value.abs()));
         Blocks {
             blocks,
@@ -143,8 +147,11 @@ impl Blocks {
             dense,
             patterns,
             log_exposure: laid(log_exposure),
-            counts: laid_once(counts),
-            weights: laid_once(weights),
+            continues: (0..deep)
+                .map(|block| block > 0 && key(block) == key(block - 1))
+                .collect(),
+            counts,
+            weights,
             largest_offset: largest(log_exposure),
             largest: split.dense.iter().map(|term| largest(&columns[*term])).collect(),
             split,
@@ -161,6 +168,14 @@ impl Blocks {
     pub fn dense(&self, range: Range<usize>) -> &[Eight] {
         let size = DEPTH * self.split.dense.len();
         &self.dense[range.start * size..range.end * size]
+    }
+
+    /// One of `shares` shares of the columns of a block; nothing beyond the last.
+    #[inline(always)]
+    pub fn share(&self, block: usize, share: usize, shares: usize) -> &[Eight] {
+        let size = DEPTH * self.split.dense.len();
+        let (from, to) = (size * share / shares, size * (share + 1) / shares);
+        self.dense.get(block * size + from..block * size + to).unwrap_or(&[])
     }
 
     /// One of the blocks.

@@ -19,7 +19,7 @@
 //! whose sums are added in their order: threads may take shares in any order and change no bit.
 
 use super::LOCKSTEP;
-use super::instructions::{Instructions, for_each_set};
+use super::instructions::{Instructions, fetch_ahead, for_each_set};
 use super::predictor::{BlockValues, Part, Points, predict};
 use super::sums::{RowSums, Sums, pair};
 use crate::model::blocks::{BLOCK, Block, Blocks, DEPTH, Eight, LANES};
@@ -100,6 +100,7 @@ fn add_rows_kernel<const TILE: usize>(
         for number in strip.clone() {
             let block = blocks.block(number);
             predict::<TILE>(&block, point, &mut values);
+            fetch_ahead(blocks.share(number + 1, 0, 1));
             let means = &mut values[0];
             for value in means.iter_mut() {
                 *value = exp_within(*value);

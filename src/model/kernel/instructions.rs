@@ -1,5 +1,6 @@
 //! The choice of vector instructions, at run time.
 
+use crate::model::blocks::Eight;
 use std::fmt;
 
 /// Which vector instructions the kernels use. All of them give the same bits: they add, multiply and
@@ -62,6 +63,21 @@ impl Set {
     fn is_here(self) -> bool {
         self == Set::Baseline
     }
+}
+
+/// Asks for values that will be read soon to be brought into the second-level cache, while the
+/// processor works on others. A block of rows is read in one burst and then worked on at length: from
+/// 100,000 rows on, when they no longer fit in the caches, each burst would wait for memory.
+#[inline(always)]
+pub(super) fn fetch_ahead(values: &[Eight]) {
+    #[cfg(target_arch = "x86_64")]
+    for value in values {
+        use std::arch::x86_64::{_MM_HINT_T1, _mm_prefetch};
+        // SAFETY: a hint; it reads and writes nothing that the program could see.
+        unsafe { _mm_prefetch::<_MM_HINT_T1>(std::ptr::from_ref(value).cast()) };
+    }
+    #[cfg(not(target_arch = "x86_64"))]
+    let _ = values;
 }
 
 /// Compiles a kernel once for each set of instructions and writes the function that chooses.

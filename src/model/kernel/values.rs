@@ -1,15 +1,16 @@
 //! The sums that a log density needs at each point.
 
 use super::LOCKSTEP;
-use super::instructions::{Instructions, for_each_set};
+use super::instructions::{Instructions, fetch_ahead, for_each_set};
 use super::predictor::{BlockValues, Part, Points, predict};
 use crate::model::blocks::{BLOCK, Block, Blocks, DEPTH, Eight, LANES};
-use crate::numeric::{exp_within, ln, ln_1p};
+use crate::numeric::{exp_within, ln_1p};
 
-/// The logarithm of a product of [`DEPTH`] factors 1 + a mu is taken at once where the linear
-/// predictor plus log a is at most this: the product is then below exp(8 * 85) = exp(680), and a
-/// double ends at exp(709).
-const PRODUCT_LIMIT: f64 = 85.0;
+/// A running product of factors 1 + a mu goes on below this: one more block's may then be as large as
+/// [`OVERFLOW`] before a double ends at 1.8e308.
+const FULL: f64 = 1e100;
+/// Where a product comes to this, its factors take a logarithm each.
+const OVERFLOW: f64 = 1e200;
 
 /// For each point, the sum over rows of `weight * mu`.
 pub fn sums_of_means(instructions: Instructions, blocks: &Blocks, points: &Points, out: &mut [f64]) {
@@ -31,12 +32,7 @@ pub fn sums_of_logs(
     for (batch, out) in out.chunks_mut(LOCKSTEP).enumerate() {
         let first = batch * LOCKSTEP;
         let part = points.part(first, out.len());
-        let dispersions = &dispersions[first..first + out.len()];
-        let mut products = [true; LOCKSTEP];
-        for (place, a) in dispersions.iter().enumerate() {
-            products[place] = points.bound(first + place) + ln(*a) <= PRODUCT_LIMIT;
-        }
-        logs(instructions, blocks, &part, dispersions, &products, out);
+        logs(instructions, blocks, &part, &dispersions[first..first + out.len()], out);
     }
 }
 
@@ -72,10 +68,11 @@ for_each_set! {
 fn means_kernel<const TILE: usize>(blocks: &Blocks, points: &Part, out: &mut [f64]) {
     let mut values: BlockValues = [[0.0; BLOCK]; LOCKSTEP];
     let mut sums = [[0.0; LANES]; LOCKSTEP];
-    for block in 0..blocks.blocks {
-        let block = blocks.block(block);
+    for number in 0..blocks.blocks {
+        let block = blocks.block(number);
         predict::<TILE>(&block, points, &mut values);
-        for (values, sums) in values[..points.count].iter_mut().zip(&mut sums) {
+        for (p, (values, sums)) in values[..points.count].iter_mut().zip(&mut sums).enumerate() {
+            fetch_ahead(blocks.share(number + 1, p, points.count));
             for value in values.iter_mut() {
                 *value = exp_within(*value);
             }
@@ -92,68 +89,83 @@ fn means_kernel<const TILE: usize>(blocks: &Blocks, points: &Part, out: &mut [f6
 }
 
 for_each_set! {
-    /// [`sums_of_logs`] for one part. `products` says where the product of a lane's factors cannot
-    /// overflow.
-    fn logs(
-        blocks: &Blocks,
-        points: &Part,
-        dispersions: &[f64],
-        products: &[bool; LOCKSTEP],
-        out: &mut [f64],
-    ) = logs_kernel;
+    /// [`sums_of_logs`] for one part.
+    fn logs(blocks: &Blocks, points: &Part, dispersions: &[f64], out: &mut [f64]) = logs_kernel;
 }
 
 /// In a deep block the rows of a lane share count and weight, so with x = a mu of each
 ///
 /// `sum (count + weight/a) log(1 + x) = (count + weight/a) log(product of (1 + x))`,
 ///
-/// and one logarithm serves eight rows. The product is carried as its difference from 1, since
-/// (1 + P)(1 + x) - 1 = P + x + P x has no cancellation: 1 + x would lose the digits of a small x,
-/// and with them the likelihood near a scatter of 0.
+/// and one logarithm serves eight rows; and where the next block's lanes have the same counts and
+/// weights again, the product goes on, until it is too large. The product is carried as its difference
+/// from 1, since (1 + P)(1 + x) - 1 = P + x + P x has no cancellation: 1 + x would lose the digits of
+/// a small x, and with them the likelihood near a scatter of 0.
 #[inline(always)]
-fn logs_kernel<const TILE: usize>(
-    blocks: &Blocks,
-    points: &Part,
-    dispersions: &[f64],
-    products: &[bool; LOCKSTEP],
-    out: &mut [f64],
-) {
+fn logs_kernel<const TILE: usize>(blocks: &Blocks, points: &Part, dispersions: &[f64], out: &mut [f64]) {
     let mut values: BlockValues = [[0.0; BLOCK]; LOCKSTEP];
-    let mut logs = [[0.0; LANES]; LOCKSTEP];
     let mut sums = [[0.0; LANES]; LOCKSTEP];
+    // For each point, the products of the lanes so far, less 1.
+    let mut products = [[0.0; LANES]; LOCKSTEP];
     for number in 0..blocks.blocks {
         let block = blocks.block(number);
         predict::<TILE>(&block, points, &mut values);
         for p in 0..points.count {
-            let a = dispersions[p];
+            fetch_ahead(blocks.share(number + 1, p, points.count));
             for value in &mut values[p] {
-                *value = a * exp_within(*value);
-            }
-            if number < blocks.deep && products[p] {
-                logs[p] = product_of_lanes(&values[p]);
-            } else {
-                add_logs_of_rows(&block, 1.0 / a, &mut values[p], &mut sums[p]);
+                *value = dispersions[p] * exp_within(*value);
             }
         }
-        if number < blocks.deep {
-            // All points in one loop: a logarithm is a long chain, and the processor works on those
-            // of several points side by side.
-            for value in logs[..points.count].as_flattened_mut() {
-                *value = ln_1p(*value);
-            }
+        if number >= blocks.deep {
             for p in 0..points.count {
-                if products[p] {
-                    let size = 1.0 / dispersions[p];
-                    for lane in 0..LANES {
-                        let factor = block.counts[0].0[lane] + block.weights[0].0[lane] * size;
-                        sums[p][lane] += factor * logs[p][lane];
-                    }
-                }
+                add_logs_of_rows(&block, 1.0 / dispersions[p], &mut values[p], &mut sums[p]);
+            }
+            continue;
+        }
+        for p in 0..points.count {
+            let size = 1.0 / dispersions[p];
+            let with_block = product(&products[p], &product_of_lanes(&values[p]));
+            let together = add_up(&with_block);
+            if together < FULL {
+                products[p] = with_block;
+            } else if together < OVERFLOW {
+                add_logs_of_products(&block, size, &with_block, &mut sums[p]);
+                products[p] = [0.0; LANES];
+            } else {
+                // Too large, infinite or, times 0, no number: the product so far and the rows apart.
+                add_logs_of_products(&block, size, &products[p], &mut sums[p]);
+                products[p] = [0.0; LANES];
+                add_logs_of_rows(&block, size, &mut values[p], &mut sums[p]);
+            }
+        }
+        if !blocks.continues.get(number + 1).is_some_and(|continues| *continues) {
+            for p in 0..points.count {
+                add_logs_of_products(&block, 1.0 / dispersions[p], &products[p], &mut sums[p]);
+                products[p] = [0.0; LANES];
             }
         }
     }
     for (out, sums) in out.iter_mut().zip(&sums) {
         *out = add_up(sums);
+    }
+}
+
+/// (1 + p)(1 + q) - 1, lane by lane.
+#[inline(always)]
+fn product(p: &[f64; LANES], q: &[f64; LANES]) -> [f64; LANES] {
+    let mut out = [0.0; LANES];
+    for lane in 0..LANES {
+        out[lane] = (p[lane] + q[lane]) + p[lane] * q[lane];
+    }
+    out
+}
+
+/// Adds `(count + weight * size) * log(1 + product)` of every lane of a deep block.
+#[inline(always)]
+fn add_logs_of_products(block: &Block, size: f64, products: &[f64; LANES], sums: &mut [f64; LANES]) {
+    for lane in 0..LANES {
+        let factor = block.counts[0].0[lane] + block.weights[0].0[lane] * size;
+        sums[lane] += factor * ln_1p(products[lane]);
     }
 }
 
