@@ -2,7 +2,7 @@
 //! enough or the limit is reached.
 
 use super::chain::{Chain, Proposal, Target, advance};
-use super::choice::{Chosen, Correction, History, Way, choose, corrected, from_laplace};
+use super::choice::{Candidate, Chosen, Coordinates, Correction, History, Way, choose, corrected, from_laplace};
 use super::convergence::Assessment;
 use super::laplace::Laplace;
 use super::reference::Tails;
@@ -75,12 +75,18 @@ pub fn sample(
     draw(&mut chains, target, &proposal, plan, watch, chosen.in_words(plan.steps))
 }
 
-/// Iterations of warm-up: the walk needs many more, since it forgets its start slowly.
+/// Products of a row and a parameter that a chain may take in warm-up, if that is more than
+/// [`LEAST_WARM_UP`] iterations: some tens of milliseconds for four chains.
+const WARM_UP_PRODUCTS: usize = 5_000_000;
+/// Fewest and most iterations of warm-up with mixed steps.
+const LEAST_WARM_UP: usize = 300;
+const MOST_WARM_UP: usize = 6_000;
+
+/// Iterations of warm-up. A small study is a skewed one, whose reference takes many draws to know, and
+/// its iterations cost next to nothing. The walk needs many more, since it forgets its start slowly.
 pub fn warm_up_iterations(steps: Steps, rows: usize, dimension: usize) -> usize {
     match steps {
-        // A small study is a skewed one, and its iterations cost nothing.
-        Steps::Mixed if rows < 100 => 600,
-        Steps::Mixed => 300,
+        Steps::Mixed => (WARM_UP_PRODUCTS / (rows * dimension).max(1)).clamp(LEAST_WARM_UP, MOST_WARM_UP),
         Steps::Walk => 400 * (dimension + 4),
     }
 }
@@ -110,8 +116,9 @@ fn warm_up(
             Steps::Mixed => choose(laplace, &history, scatter),
             // Haario et al. 2001, frozen after warm-up.
             Steps::Walk => {
-                corrected(laplace, &history, scatter, Correction::Moments(Way::Half), &|_| true).map(|shape| Chosen {
-                    covariance: shape.covariance,
+                let draws = history.possible(target.dimension());
+                corrected(laplace, &draws, scatter, Correction::Moments(Way::Half)).map(|moments| Chosen {
+                    covariance: moments.of_signed_steps(),
                     ..chosen.clone()
                 })
             }
@@ -125,14 +132,19 @@ fn warm_up(
     Ok(chosen)
 }
 
-/// The chains' points since they were last forgotten, iteration by iteration.
+/// Most draws that a reference is chosen from: the choice then takes no longer than the draws.
+const MOST_IN_HISTORY: usize = 4_000;
+
+/// The chains' points since they were last forgotten, iteration by iteration; evenly spaced
+/// iterations where there are many.
 fn history(chains: &[Chain], d: usize) -> History {
     let iterations = chains.first().map_or(0, |chain| chain.log_densities.len());
     let mut history = History {
         chains: chains.len(),
         ..History::default()
     };
-    for iteration in 0..iterations {
+    let step = (iterations * chains.len()).div_ceil(MOST_IN_HISTORY).max(1);
+    for iteration in (0..iterations).step_by(step) {
         for chain in chains {
             history
                 .points
@@ -243,17 +255,27 @@ impl Chosen {
         if steps == Steps::Walk {
             return "none: plain random walk".to_owned();
         }
-        let correction = match self.correction {
+        let Candidate {
+            correction,
+            coordinates,
+            tails,
+            inflation,
+        } = self.candidate;
+        let correction = match correction {
             Correction::None => "Laplace's moments",
             Correction::Diagonal(Way::Half) => "Laplace's moments, scales moved half-way to the draws'",
             Correction::Diagonal(Way::Whole) => "Laplace's correlations with the draws' means and scales",
             Correction::Moments(Way::Half) => "moments half-way between Laplace's and the draws'",
             Correction::Moments(Way::Whole) => "the draws' moments",
         };
-        let tails = match self.tails {
+        let coordinates = match coordinates {
+            Coordinates::Straight => "",
+            Coordinates::Bent => ", skewness and the spread that grows with the scatter from the draws",
+        };
+        let tails = match tails {
             Tails::Normal => "normal".to_owned(),
             Tails::T(degrees) => format!("t with {degrees} degrees of freedom"),
         };
-        format!("{correction}; {tails}; scale times {}", self.inflation)
+        format!("{correction}{coordinates}; {tails}; scale times {inflation}")
     }
 }
