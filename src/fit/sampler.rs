@@ -75,18 +75,24 @@ pub fn sample(
     draw(&mut chains, target, &proposal, plan, watch, chosen.in_words(plan.steps))
 }
 
-/// Products of a row and a parameter that a chain may take in warm-up, if that is more than
-/// [`LEAST_WARM_UP`] iterations: some tens of milliseconds for four chains.
-const WARM_UP_PRODUCTS: usize = 5_000_000;
 /// Fewest and most iterations of warm-up with mixed steps.
 const LEAST_WARM_UP: usize = 300;
 const MOST_WARM_UP: usize = 6_000;
+/// Products of a row and a parameter that each chain may take beyond the fewest iterations: they cost
+/// some tens of milliseconds.
+const WARM_UP_PRODUCTS: usize = 5_000_000;
 
-/// Iterations of warm-up. A small study is a skewed one, whose reference takes many draws to know, and
-/// its iterations cost next to nothing. The walk needs many more, since it forgets its start slowly.
+/// Iterations of warm-up. With few rows to a parameter the posterior is skewed, and it takes many draws
+/// to know how, but they cost next to nothing. The walk needs many more, since it forgets its start
+/// slowly.
 pub fn warm_up_iterations(steps: Steps, rows: usize, dimension: usize) -> usize {
     match steps {
-        Steps::Mixed => (WARM_UP_PRODUCTS / (rows * dimension).max(1)).clamp(LEAST_WARM_UP, MOST_WARM_UP),
+        Steps::Mixed => {
+            let rows = rows.max(1);
+            let asked = 150_000 * dimension * dimension / (rows * rows);
+            let affordable = WARM_UP_PRODUCTS / (rows * dimension.max(1));
+            asked.min(affordable).clamp(LEAST_WARM_UP, MOST_WARM_UP)
+        }
         Steps::Walk => 400 * (dimension + 4),
     }
 }
@@ -270,7 +276,7 @@ impl Chosen {
         };
         let coordinates = match coordinates {
             Coordinates::Straight => "",
-            Coordinates::Bent => ", skewness and the spread that grows with the scatter from the draws",
+            Coordinates::Bent => ", bent to the draws",
         };
         let tails = match tails {
             Tails::Normal => "normal".to_owned(),
