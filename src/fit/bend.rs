@@ -10,8 +10,9 @@ use crate::numeric::{exp, ln};
 /// `v = exp(level + slope l) (z cosh e + (sqrt(1 + z^2) - kappa) sinh e)`.
 ///
 /// The bracket is the sinh-arcsinh transformation sinh(e + asinh z) of Jones & Pewsey (2009,
-/// Biometrika 96, 761-780) with their tail parameter 1, less its mean, kappa sinh e: far out it is linear with slope exp(e) to the
-/// right and exp(-e) to the left, so that tails stay normal, and it needs neither sinh nor asinh of z.
+/// Biometrika 96, 761-780) with their tail parameter 1, less its mean, kappa sinh e. Far out it is
+/// linear with slope exp(e) to the right and exp(-e) to the left, so that tails stay normal, and it
+/// needs neither sinh nor asinh of z.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Bend {
     level: f64,

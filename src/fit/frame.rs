@@ -184,7 +184,7 @@ impl Frame {
 mod tests {
     use super::*;
 
-    /// Mean and variance of |N(centre, scale^2)| (Leone, Nelson & Nottingham 1961, equations 4 and 5).
+    /// Mean and raw second moment of |N(centre, scale^2)| (Leone, Nelson & Nottingham 1961; from memory).
     #[test]
     fn the_fold_of_a_folded_normals_moments_is_that_folded_normal() {
         for (centre, scale) in [(0.2, 0.3), (1.0, 1.0), (3.0, 0.5)] {
@@ -192,7 +192,7 @@ mod tests {
             let mean = scale * ROOT_2_OVER_PI * exp(-0.5 * t * t) + centre * (1.0 - 2.0 * normal_cdf(-t));
             let sd = (centre * centre + scale * scale - mean * mean).sqrt();
             let fold = Fold::of_moments(mean, sd);
-            // Near a centre of 0 the moments say little about it: a rounding error of theirs counts a thousandfold.
+            // The ratio of the moments is flat in a small centre, which multiplies their rounding errors.
             approx::assert_abs_diff_eq!(fold.centre, centre, epsilon = 1e-11);
             approx::assert_abs_diff_eq!(fold.scale, scale, epsilon = 1e-11);
         }

@@ -1,15 +1,15 @@
 //! The reference: the fixed density q that independence Metropolis steps propose from.
 //!
 //! A draw z comes from 0.9 (normal or t) + 0.1 t with 5 degrees of freedom at 1.3 times the scale,
-//! spherical. Each coordinate of it is bent ([`Bend`]) and all are carried to
-//! the posterior's means and covariance ([`Frame`]). q is the density of the whole: of z, times the
-//! Jacobians. The heavy part is not optional: where the posterior's tail is heavier than q's, a chain
-//! that gets there waits for thousands of steps, and one that starts far out may never come back.
+//! spherical. Each coordinate of it is bent ([`Bend`]) and all are carried to the posterior's means
+//! and covariance ([`Frame`]). q is the density of the whole: of z, times the Jacobians. The heavy
+//! part is not optional: where the posterior's tail is heavier than q's, a chain that gets there
+//! waits for thousands of steps, and one that starts far out may never come back.
 //!
 //! The scatter is walked as a signed number on the even extension of the posterior. It is the leading
 //! coordinate, a folded normal ([`Fold`]) with either sign: two values of z lead to each scatter, and
-//! q is summed over both. Everything else follows the scatter's absolute value. (A draw of both signs that is
-//! judged by one of them has the wrong acceptance ratio near 0.)
+//! q is summed over both. Everything else follows the scatter's absolute value. (A reference that is
+//! drawn from with both images but judged by one has the wrong acceptance ratio near 0.)
 
 use super::bend::Bend;
 use super::frame::{Fold, Frame, Moments};

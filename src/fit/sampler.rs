@@ -138,7 +138,8 @@ fn warm_up(
     Ok(chosen)
 }
 
-/// Most draws that a reference is chosen from: the choice then takes no longer than the draws.
+/// Most draws that a reference is chosen from: neighbours in a chain resemble each other, and with all
+/// of them the choice would cost more than the draws did.
 const MOST_IN_HISTORY: usize = 4_000;
 
 /// The chains' points since they were last forgotten, iteration by iteration; evenly spaced
