@@ -1,10 +1,12 @@
 //! Takes a model; gives the mode, its Laplace approximation, draws and their convergence.
 
+mod bend;
 mod chain;
 mod choice;
 mod convergence;
 mod draws;
 mod effective;
+mod frame;
 mod laplace;
 mod newton;
 mod nodes;

@@ -2,7 +2,7 @@
 //! enough or the limit is reached.
 
 use super::chain::{Chain, Proposal, Target, advance};
-use super::choice::{Chosen, Correction, History, Way, choose, corrected, from_laplace};
+use super::choice::{Candidate, Chosen, Coordinates, Correction, History, Way, choose, corrected, from_laplace};
 use super::convergence::Assessment;
 use super::laplace::Laplace;
 use super::reference::Tails;
@@ -10,6 +10,7 @@ use super::stopping::{Goal, Verdict};
 use super::watch::{Stage, Watch};
 use crate::numeric::cholesky::Cholesky;
 use crate::spec::Steps;
+use std::time::{Duration, Instant};
 
 /// How to sample.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -75,12 +76,24 @@ pub fn sample(
     draw(&mut chains, target, &proposal, plan, watch, chosen.in_words(plan.steps))
 }
 
-/// Iterations of warm-up: the walk needs many more, since it forgets its start slowly.
+/// Fewest and most iterations of warm-up with mixed steps.
+const LEAST_WARM_UP: usize = 300;
+const MOST_WARM_UP: usize = 6_000;
+/// Products of a row and a parameter that each chain may take beyond the fewest iterations: they cost
+/// some tens of milliseconds.
+const WARM_UP_PRODUCTS: usize = 5_000_000;
+
+/// Iterations of warm-up. With few rows to a parameter the posterior is skewed, and it takes many draws
+/// to know how, but they cost next to nothing. The walk needs many more, since it forgets its start
+/// slowly.
 pub fn warm_up_iterations(steps: Steps, rows: usize, dimension: usize) -> usize {
     match steps {
-        // A small study is a skewed one, and its iterations cost nothing.
-        Steps::Mixed if rows < 100 => 600,
-        Steps::Mixed => 300,
+        Steps::Mixed => {
+            let rows = rows.max(1);
+            let asked = 150_000 * dimension * dimension / (rows * rows);
+            let affordable = WARM_UP_PRODUCTS / (rows * dimension.max(1));
+            asked.min(affordable).clamp(LEAST_WARM_UP, MOST_WARM_UP)
+        }
         Steps::Walk => 400 * (dimension + 4),
     }
 }
@@ -110,8 +123,9 @@ fn warm_up(
             Steps::Mixed => choose(laplace, &history, scatter),
             // Haario et al. 2001, frozen after warm-up.
             Steps::Walk => {
-                corrected(laplace, &history, scatter, Correction::Moments(Way::Half), &|_| true).map(|shape| Chosen {
-                    covariance: shape.covariance,
+                let draws = history.possible(target.dimension());
+                corrected(laplace, &draws, scatter, Correction::Moments(Way::Half)).map(|moments| Chosen {
+                    covariance: moments.of_signed_steps(),
                     ..chosen.clone()
                 })
             }
@@ -125,14 +139,20 @@ fn warm_up(
     Ok(chosen)
 }
 
-/// The chains' points since they were last forgotten, iteration by iteration.
+/// Most draws that a reference is chosen from: neighbours in a chain resemble each other, and with all
+/// of them the choice would cost more than the draws did.
+const MOST_IN_HISTORY: usize = 4_000;
+
+/// The chains' points since they were last forgotten, iteration by iteration; evenly spaced
+/// iterations where there are many.
 fn history(chains: &[Chain], d: usize) -> History {
     let iterations = chains.first().map_or(0, |chain| chain.log_densities.len());
     let mut history = History {
         chains: chains.len(),
         ..History::default()
     };
-    for iteration in 0..iterations {
+    let step = (iterations * chains.len()).div_ceil(MOST_IN_HISTORY).max(1);
+    for iteration in (0..iterations).step_by(step) {
         for chain in chains {
             history
                 .points
@@ -202,8 +222,12 @@ fn by_parameter(chains: &[Chain], d: usize, scatter: Option<usize>) -> Vec<Vec<f
         .collect()
 }
 
-/// Iterations between two looks at the watcher.
+/// Iterations before the first look at the watcher. Later stretches are longer, until one takes
+/// [`STRETCH`]: to start threads for each 50 iterations of a small study cost as much as to move its
+/// chains. Where the looks are changes no draw.
 const WATCHED: usize = 50;
+/// How long the watcher may have to wait, about.
+const STRETCH: Duration = Duration::from_millis(40);
 
 fn move_watched(
     chains: &mut [Chain],
@@ -214,14 +238,18 @@ fn move_watched(
     watch: &dyn Watch,
     stage: &dyn Fn(usize) -> Stage,
 ) -> Result<(), SamplingFailed> {
-    let mut moved = 0;
+    let (mut moved, mut stretch) = (0, WATCHED);
     while moved < iterations {
         if watch.stop_asked() {
             return Err(SamplingFailed::Stopped);
         }
         watch.told(stage(moved));
-        let now = WATCHED.min(iterations - moved);
+        let now = stretch.min(iterations - moved);
+        let start = Instant::now();
         advance(chains, target, proposal, now, plan.width, plan.threads);
+        if start.elapsed() < STRETCH / 2 {
+            stretch *= 2;
+        }
         moved += now;
     }
     Ok(())
@@ -243,17 +271,27 @@ impl Chosen {
         if steps == Steps::Walk {
             return "none: plain random walk".to_owned();
         }
-        let correction = match self.correction {
+        let Candidate {
+            correction,
+            coordinates,
+            tails,
+            inflation,
+        } = self.candidate;
+        let correction = match correction {
             Correction::None => "Laplace's moments",
             Correction::Diagonal(Way::Half) => "Laplace's moments, scales moved half-way to the draws'",
             Correction::Diagonal(Way::Whole) => "Laplace's correlations with the draws' means and scales",
             Correction::Moments(Way::Half) => "moments half-way between Laplace's and the draws'",
             Correction::Moments(Way::Whole) => "the draws' moments",
         };
-        let tails = match self.tails {
+        let coordinates = match coordinates {
+            Coordinates::Straight => "",
+            Coordinates::Bent => ", bent to the draws",
+        };
+        let tails = match tails {
             Tails::Normal => "normal".to_owned(),
             Tails::T(degrees) => format!("t with {degrees} degrees of freedom"),
         };
-        format!("{correction}; {tails}; scale times {}", self.inflation)
+        format!("{correction}{coordinates}; {tails}; scale times {inflation}")
     }
 }
