@@ -2,14 +2,17 @@
 //!
 //! A machine's speed drifts from second to second with its heat, its neighbours and its memory. So the pieces take
 //! turns, A B C, then C B A, and what is reported is the median of the ratios within a turn, with its quartiles: whatever
-//! slows a whole turn leaves its ratios alone.
+//! slows a whole turn leaves its ratios alone. A neighbour on the other half of the same core does not: it halves the
+//! speed of code that keeps the arithmetic units busy and hardly touches a loop that waits for its own results. So the
+//! ratio of the shortest times is told too: that of a machine left alone.
 
 use super::clock::Clock;
 use ratewright::fit::quantile_of_sorted;
 use std::hint::black_box;
 
-/// Shortest time of one measurement, in seconds: what disturbs it for microseconds then disappears.
-const SHORTEST: f64 = 0.02;
+/// Shortest time of one measurement, in seconds: what disturbs it for microseconds then disappears, and one measurement
+/// in many finds the machine idle beside it.
+const SHORTEST: f64 = 0.005;
 
 /// A median and its quartiles.
 #[derive(Debug, Clone, Copy)]
@@ -105,5 +108,11 @@ impl Turns {
     /// How many times as long as `other` the piece `slow` takes.
     pub fn ratio(&self, slow: usize, other: usize) -> Spread {
         Spread::of(self.seconds[slow].iter().zip(&self.seconds[other]).map(|(a, b)| a / b))
+    }
+
+    /// The same for the shortest time of each.
+    pub fn ratio_at_best(&self, slow: usize, other: usize) -> f64 {
+        let least = |piece: usize| self.seconds[piece].iter().copied().fold(f64::INFINITY, f64::min);
+        least(slow) / least(other)
     }
 }
