@@ -8,6 +8,7 @@
 #[allow(dead_code, reason = "each bench uses its part")]
 mod support;
 
+use ratewright::fit::{Machine, Unwatched, laplace};
 use ratewright::model::{Instructions, Model};
 use ratewright::numeric::{Purpose, Stream};
 use std::io::Write;
@@ -55,6 +56,7 @@ fn main() -> Result<(), Failure> {
             derivatives(&mut out, &problem, family, turns, &limits)?;
         }
     }
+    modes(&mut out, turns)?;
     if arguments.iter().any(|argument| argument == "--million") {
         million(&mut out, turns)?;
     }
@@ -274,6 +276,39 @@ fn derivatives(
             times.ratio_at_best(0, set + 1),
             100.0 * many * operations / each / limits.arithmetic_with(*instructions)
         )?;
+    }
+    Ok(())
+}
+
+/// Mode and Laplace approximation, from nothing to done.
+fn modes(out: &mut impl Write, turns: usize) -> Result<(), Failure> {
+    writeln!(
+        out,
+        "\nMode and Laplace approximation: ms on the wall\n\n\
+         | problem | family | one thread (quartiles) | all threads | Newton steps |\n| --- | --- | --- | --- | --- |"
+    )?;
+    let all = Machine::default().threads;
+    for problem in [M, L] {
+        for family in Family::BOTH {
+            let Study { model, .. } = study(&problem, family, SEED, Sampling::default())?;
+            let found =
+                |threads: usize| laplace(&model, threads, &Unwatched).map_or(f64::NAN, |(mode, _)| mode.steps as f64);
+            let pieces = vec![Piece::new(|| found(1)), Piece::new(|| found(all))];
+            let times = take_turns(pieces, turns, Clock::Wall);
+            let milliseconds = |piece: usize| {
+                let Spread { lower, median, upper } = times.seconds(piece);
+                format!("{:.1} ({:.1} to {:.1})", median * 1e3, lower * 1e3, upper * 1e3)
+            };
+            writeln!(
+                out,
+                "| {} | {} | {} | {} | {:.0} |",
+                problem.name,
+                family.name(),
+                milliseconds(0),
+                milliseconds(1),
+                found(1)
+            )?;
+        }
     }
     Ok(())
 }

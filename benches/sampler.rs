@@ -1,6 +1,9 @@
 //! How well the sampler draws: effective draws per draw, and per second of one core against the plain random walk in
 //! the same run.
 //!
+//! The walk is told twice: moved as the program moves it, several chains over each block of rows, and as it is plainly
+//! written, one chain after another. The second ratio holds what lockstep gains.
+//!
 //! `cargo bench --bench sampler -- [--seeds 3] [--problems SDZML]`
 //!
 //! Every figure is that of the worst parameter of a fit; told are the worst and the median over the seeds. The time
@@ -24,8 +27,8 @@ use support::{Failure, arguments, number_after};
 
 /// Above this the walk is measured on one seed only.
 const MANY_ROWS: usize = 5_000;
-/// Iterations over which L's walk is timed.
-const TIMED: usize = 200;
+/// Row-iterations over which a walk is timed where only its time is asked for.
+const TIMED: usize = 20_000_000;
 
 /// A problem and the kept draws of its fits.
 const PLANS: [(Problem, usize); 5] = [(S, 60_000), (D, 60_000), (Z, 40_000), (M, 20_000), (L, 4_000)];
@@ -41,8 +44,9 @@ fn main() -> Result<(), Failure> {
     writeln!(
         out,
         "Effective draws of the worst parameter, {seeds} seeds: worst / median\n\n\
-         | problem | family | bulk per draw | tail per draw | accepted | per second of a core | the walk's | ratio |\n\
-         | --- | --- | --- | --- | --- | --- | --- | --- |"
+         | problem | family | bulk per draw | tail per draw | accepted | per second of a core | the walk's | ratio \
+         | against one chain after another |\n\
+         | --- | --- | --- | --- | --- | --- | --- | --- | --- |"
     )?;
     let mut walks = BTreeMap::new();
     for (problem, draws) in PLANS {
@@ -59,13 +63,16 @@ fn main() -> Result<(), Failure> {
                 walking.push(walk(&problem, family, seed, draws, &walks)?);
             }
             walks.insert((problem.name, family.name()), walking[0].bulk);
-            let ratios = walking
-                .iter()
-                .zip(&fits)
-                .map(|(walk, fit)| fit.per_second() / walk.per_second());
+            let ratios = || {
+                walking
+                    .iter()
+                    .zip(&fits)
+                    .map(|(walk, fit)| fit.per_second() / walk.per_second())
+            };
+            let plain = seconds_of_walk(&problem, family, draws, 1)? / seconds_of_walk(&problem, family, draws, 8)?;
             writeln!(
                 out,
-                "| {} | {} | {} | {} | {} | {:.0} | {:.1} | {} |",
+                "| {} | {} | {} | {} | {} | {:.0} | {:.1} | {} | {} |",
                 problem.name,
                 family.name(),
                 worst_and_median(fits.iter().map(|fit| fit.bulk), 3),
@@ -73,7 +80,8 @@ fn main() -> Result<(), Failure> {
                 worst_and_median(fits.iter().map(|fit| fit.accepted), 2),
                 Spread::of(fits.iter().map(Measured::per_second)).median,
                 Spread::of(walking.iter().map(Measured::per_second)).median,
-                worst_and_median(ratios, 0),
+                worst_and_median(ratios(), 0),
+                worst_and_median(ratios().map(|ratio| ratio * plain), 0),
             )?;
         }
     }
@@ -156,18 +164,26 @@ fn walk(
             .bulk
         }
     };
-    let study = study(problem, family, seed, walking)?;
-    let watch = Stopwatch::new(Some(TIMED));
-    match fit::run(&study.model, &study.spec, ONE_CORE, &watch) {
-        Err(FitError::Stopped) | Ok(_) => {}
-        Err(failed) => return Err(failed.into()),
-    }
     Ok(Measured {
         bulk,
         tail: f64::NAN,
         accepted: f64::NAN,
-        seconds_per_draw: watch.seconds_per_draw(walking.chains),
+        seconds_per_draw: seconds_of_walk(problem, family, draws, ONE_CORE.lockstep)?,
     })
+}
+
+/// Seconds of one draw of one chain of the walk, `lockstep` chains moved together, over its first iterations.
+fn seconds_of_walk(problem: &Problem, family: Family, draws: usize, lockstep: usize) -> Result<f64, Failure> {
+    let walking = Sampling {
+        steps: "walk",
+        ..Sampling::of_draws(draws)
+    };
+    let study = study(problem, family, 1, walking)?;
+    let watch = Stopwatch::new(Some((TIMED / problem.rows).clamp(200, 4_000)));
+    match fit::run(&study.model, &study.spec, Machine { lockstep, ..ONE_CORE }, &watch) {
+        Err(FitError::Stopped) | Ok(_) => Ok(watch.seconds_per_draw(walking.chains)),
+        Err(failed) => Err(failed.into()),
+    }
 }
 
 /// Adds up the time in which chains move, from what a fit tells of its stages.

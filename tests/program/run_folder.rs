@@ -236,7 +236,7 @@ fn a_run_with_another_layout_is_told_by_its_version() {
     let text = fs::read_to_string(&path).unwrap();
     let later = text
         .replace("\"manifest\": 1,", "\"manifest\": 2,")
-        .replace("0.1.0", "9.0.0");
+        .replace("0.2.0", "9.0.0");
     assert_ne!(text, later);
     fs::write(&path, later).unwrap();
     let error = run_folder::open(&run).unwrap_err();
