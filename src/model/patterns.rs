@@ -21,8 +21,10 @@ const FEWEST_COLUMNS: usize = 6;
 pub struct IndexColumn {
     /// Places of the columns among the terms, rising.
     pub terms: Vec<usize>,
-    /// For each pattern in turn, its values in those columns.
-    pub values: Vec<f64>,
+    /// Where each pattern's entries begin, and the end of the last's.
+    starts: Vec<usize>,
+    /// The values of the patterns in turn that are not 0, each with the place of its term.
+    entries: Vec<(usize, f64)>,
     /// The pattern of each row.
     pub of_row: Vec<u8>,
 }
@@ -30,12 +32,13 @@ pub struct IndexColumn {
 impl IndexColumn {
     /// Number of patterns.
     pub fn patterns(&self) -> usize {
-        self.values.len() / self.terms.len()
+        self.starts.len() - 1
     }
 
-    /// The values of one pattern, one for each of `terms`.
-    pub fn pattern(&self, pattern: usize) -> &[f64] {
-        &self.values[pattern * self.terms.len()..(pattern + 1) * self.terms.len()]
+    /// The values of one pattern that are not 0, each with the place of its term: one or none for each
+    /// category, however many levels it has.
+    pub fn pattern(&self, pattern: usize) -> &[(usize, f64)] {
+        &self.entries[self.starts[pattern]..self.starts[pattern + 1]]
     }
 }
 
@@ -116,21 +119,20 @@ impl Joint {
     }
 
     fn filled_from(self, columns: &[Vec<f64>]) -> IndexColumn {
-        let width = self.terms.len();
-        let mut values = vec![0.0; self.patterns * width];
-        let mut filled = vec![false; self.patterns];
+        let mut first_row = vec![None; self.patterns];
         for (row, pattern) in self.of_row.iter().enumerate() {
-            let pattern = usize::from(*pattern);
-            if !filled[pattern] {
-                filled[pattern] = true;
-                for (place, term) in self.terms.iter().enumerate() {
-                    values[pattern * width + place] = columns[*term][row];
-                }
-            }
+            first_row[usize::from(*pattern)].get_or_insert(row);
+        }
+        let (mut starts, mut entries) = (vec![0], Vec::new());
+        for row in first_row.into_iter().flatten() {
+            let values = self.terms.iter().map(|term| (*term, columns[*term][row]));
+            entries.extend(values.filter(|(_, value)| *value != 0.0));
+            starts.push(entries.len());
         }
         IndexColumn {
             terms: self.terms,
-            values,
+            starts,
+            entries,
             of_row: self.of_row,
         }
     }
@@ -169,12 +171,10 @@ mod tests {
     fn restored(split: &Split, columns: &[Vec<f64>]) -> Vec<Vec<f64>> {
         let mut out = columns.to_vec();
         for index in &split.index {
-            for (place, term) in index.terms.iter().enumerate() {
-                out[*term] = index
-                    .of_row
-                    .iter()
-                    .map(|p| index.pattern(usize::from(*p))[place])
-                    .collect();
+            for term in &index.terms {
+                let value = |pattern: usize| index.pattern(pattern).iter().find(|(of, _)| of == term);
+                let of_row = index.of_row.iter().map(|pattern| value(usize::from(*pattern)));
+                out[*term] = of_row.map(|entry| entry.map_or(0.0, |(_, value)| *value)).collect();
             }
         }
         out

@@ -41,7 +41,7 @@ impl Points {
                 let mut table = [0.0; MOST_PATTERNS];
                 let mut most = 0.0_f64;
                 for (pattern, entry) in table[..index.patterns()].iter_mut().enumerate() {
-                    for (term, value) in index.terms.iter().zip(index.pattern(pattern)) {
+                    for (term, value) in index.pattern(pattern) {
                         *entry += slopes[*term] * value;
                     }
                     most = most.max(entry.abs());

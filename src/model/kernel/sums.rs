@@ -129,36 +129,34 @@ impl Sums<f64> {
             out.gradient[*place] = self.first[i];
             out.mixed[*place] = self.mixed[i];
             for k in 0..=i {
-                out.set(*place, places[k], self.second[pair(i, k)]);
+                out.add(*place, places[k], self.second[pair(i, k)]);
             }
         }
         let dense = places.len() - 1;
         for (g, (column, sums)) in split.index.iter().zip(&self.index).enumerate() {
-            for (i, term) in column.terms.iter().enumerate() {
-                let place = term + 1;
-                let value = |pattern: usize| column.pattern(pattern)[i];
-                let weighted = |of_pattern: &dyn Fn(usize) -> f64| -> f64 {
-                    (0..column.patterns())
-                        .map(|pattern| value(pattern) * of_pattern(pattern))
-                        .sum()
-                };
-                out.gradient[place] = weighted(&|p| sums.first[p]);
-                out.mixed[place] = weighted(&|p| sums.mixed[p]);
-                out.set(place, 0, weighted(&|p| sums.second[p]));
-                for j in 0..dense {
-                    out.set(place, places[j + 1], weighted(&|p| sums.cross[p * dense + j]));
-                }
-                for (k, other) in column.terms.iter().enumerate().take(i + 1) {
-                    out.set(place, other + 1, weighted(&|p| sums.second[p] * column.pattern(p)[k]));
+            for pattern in 0..column.patterns() {
+                let entries = column.pattern(pattern);
+                for (i, (term, value)) in entries.iter().enumerate() {
+                    let place = term + 1;
+                    out.gradient[place] += value * sums.first[pattern];
+                    out.mixed[place] += value * sums.mixed[pattern];
+                    out.add(place, 0, value * sums.second[pattern]);
+                    for (column, other) in places[1..].iter().enumerate() {
+                        out.add(place, *other, value * sums.cross[pattern * dense + column]);
+                    }
+                    for (other, other_value) in &entries[..=i] {
+                        out.add(place, other + 1, value * other_value * sums.second[pattern]);
+                    }
                 }
                 for (h, before) in split.index[..g].iter().enumerate() {
-                    let width = before.patterns();
                     let table = &self.pairs[pair(g, h) - g];
-                    // First over the patterns of this column, then over those of the other.
-                    let summed: Vec<f64> = (0..width).map(|q| weighted(&|p| table[p * width + q])).collect();
-                    for (k, other) in before.terms.iter().enumerate() {
-                        let value = (0..width).map(|q| summed[q] * before.pattern(q)[k]).sum();
-                        out.set(place, other + 1, value);
+                    for other_pattern in 0..before.patterns() {
+                        let second = table[pattern * before.patterns() + other_pattern];
+                        for (term, value) in entries {
+                            for (other, other_value) in before.pattern(other_pattern) {
+                                out.add(term + 1, other + 1, value * other_value * second);
+                            }
+                        }
                     }
                 }
             }
@@ -191,9 +189,9 @@ pub struct RowSums {
 }
 
 impl RowSums {
-    /// Sets an entry of the Hessian, in its lower triangle.
-    fn set(&mut self, i: usize, k: usize, value: f64) {
+    /// Adds to an entry of the Hessian, in its lower triangle.
+    fn add(&mut self, i: usize, k: usize, value: f64) {
         let size = self.gradient.len();
-        self.hessian[i.max(k) * size + i.min(k)] = value;
+        self.hessian[i.max(k) * size + i.min(k)] += value;
     }
 }
