@@ -285,38 +285,12 @@ fn factor(scatter: f64, stands_for: f64, stream: &mut Stream) -> f64 {
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::design::{Audit, Coding};
     use crate::spec::Standing;
 
     #[test]
     fn the_number_of_threads_changes_nothing() {
         let n = 23;
-        let names: Vec<String> = (0..n).map(|unit| format!("place {unit}")).collect();
-        let design = Design {
-            terms: vec![],
-            columns: vec![],
-            exposure: vec![2.0; n],
-            log_exposure: vec![std::f64::consts::LN_2; n],
-            counts: (0..n).map(|unit| unit as f64).collect(),
-            stands_for: vec![1.0; n],
-            unit_of: (0..n).collect(),
-            units: names,
-            lines: (0..n as u64).collect(),
-            coding: Coding {
-                exposure_column: None,
-                per: 1.0,
-                covariates: vec![],
-                joints: vec![],
-                terms: vec![],
-            },
-            audit: Audit {
-                rows_read: n,
-                rows_not_kept: 0,
-                lines_dropped: vec![],
-                rows_used: n,
-                units: n,
-            },
-        };
+        let design = Design::of_columns(vec![], vec![2.0; n], (0..n).map(|unit| unit as f64).collect());
         let draws = Draws {
             parameters: vec!["baseline".into(), "scatter".into()],
             chains: 1,

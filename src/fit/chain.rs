@@ -210,8 +210,8 @@ enum StepKind {
     Walk,
 }
 
-/// Moves all chains by `iterations`, `width` points evaluated together on each of `threads` threads.
-/// Neither number changes a bit of any chain.
+/// Moves all chains by `iterations`, at most `width` points evaluated together on each of `threads`
+/// threads. Neither number changes a bit of any chain.
 pub fn advance(
     chains: &mut [Chain],
     target: &impl Target,
@@ -228,14 +228,19 @@ pub fn advance(
         // Threads beyond the number of chains help with the points of one.
         threads: (threads / groups).max(1),
     };
+    let advance_part = |part: &mut [Chain]| {
+        for group in part.chunks_mut(evaluation.width) {
+            advance_group(group, target, proposal, iterations, evaluation);
+        }
+    };
     std::thread::scope(|scope| {
         let mut parts = chains.chunks_mut(share);
         let own = parts.next();
         for part in parts {
-            scope.spawn(move || advance_group(part, target, proposal, iterations, evaluation));
+            scope.spawn(move || advance_part(part));
         }
         if let Some(own) = own {
-            advance_group(own, target, proposal, iterations, evaluation);
+            advance_part(own);
         }
     });
 }
@@ -276,18 +281,26 @@ fn advance_group(
         if active == 0 {
             return;
         }
-        let most = (evaluation.width * threads).div_ceil(active);
         points.clear();
+        // What a chain before a random-walk step leaves of its share goes to the chains after it.
+        let (mut room, mut chains) = (evaluation.width * threads, active);
         for (chain, (known, left)) in group.iter_mut().zip(known.iter_mut().zip(&left)) {
-            *known = chain.look_ahead(proposal, most, *left, &mut points);
+            *known = 0;
+            if *left > 0 {
+                *known = chain.look_ahead(proposal, room.div_ceil(chains), *left, &mut points);
+                room -= *known;
+                chains -= 1;
+            }
         }
         log_densities.clear();
         log_densities.resize(points.len() / d, 0.0);
         let start = Instant::now();
         evaluate(target, &points, &mut log_densities, threads);
-        if start.elapsed() * threads as u32 >= WORTH_A_THREAD {
-            threads = evaluation.threads;
-        }
+        threads = if start.elapsed() * threads as u32 >= WORTH_A_THREAD {
+            evaluation.threads
+        } else {
+            1
+        };
         let mut evaluated = points.chunks_exact(d).zip(&log_densities);
         for (chain, (known, left)) in group.iter_mut().zip(known.iter().zip(&mut left)) {
             *left -= known;

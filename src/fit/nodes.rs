@@ -1,7 +1,7 @@
 //! The quadrature over the scatter: at which values of it the posterior is looked at.
 //!
 //! Where all of the mass is in one hump well above 0, as in most studies of many rows, evenly spaced
-//! nodes one standard deviation apart are enough: for a normal density their sum is right to 3e-9,
+//! nodes one standard deviation apart are enough: for a normal density their sum is right to 5e-9,
 //! and for any smooth one almost as good (Trefethen & Weideman 2014, SIAM Review 56, 385-458).
 //! Elsewhere Gauss-Legendre panels follow the profile's grid and its peaks.
 
@@ -15,7 +15,7 @@ use crate::numeric::{exp, legendre};
 /// # Errors
 /// [`ClimbFailed`] where the coefficients have no mode at some scatter, or the watcher asks to stop.
 pub fn nodes(surface: Surface, profile: &Profile, watch: &dyn Watch) -> Result<Vec<(Section, f64)>, ClimbFailed> {
-    match evenly_spaced(surface, profile)? {
+    match evenly_spaced(surface, profile, watch)? {
         Some(nodes) => Ok(nodes),
         None => in_panels(surface, profile, watch),
     }
@@ -27,7 +27,11 @@ const END: f64 = 22.0;
 const MOST_TO_A_SIDE: usize = 10;
 
 /// Nodes one standard deviation apart about the one peak; `None` where they would not do.
-fn evenly_spaced(surface: Surface, profile: &Profile) -> Result<Option<Vec<(Section, f64)>>, ClimbFailed> {
+fn evenly_spaced(
+    surface: Surface,
+    profile: &Profile,
+    watch: &dyn Watch,
+) -> Result<Option<Vec<(Section, f64)>>, ClimbFailed> {
     let all = || profile.grid.iter().chain(&profile.peaks);
     let top = all().map(|s| s.log_mass).fold(f64::NEG_INFINITY, f64::max);
     let mut peaks = profile.peaks.iter().filter(|peak| peak.log_mass > top - NEGLIGIBLE);
@@ -38,10 +42,10 @@ fn evenly_spaced(surface: Surface, profile: &Profile) -> Result<Option<Vec<(Sect
         return Ok(None);
     }
     let step = 1.0 / (-peak.curvature).sqrt();
-    let Some(below) = to_a_side(surface, peak, -step)? else {
+    let Some(below) = to_a_side(surface, peak, -step, watch)? else {
         return Ok(None);
     };
-    let Some(above) = to_a_side(surface, peak, step)? else {
+    let Some(above) = to_a_side(surface, peak, step, watch)? else {
         return Ok(None);
     };
     let sections: Vec<Section> = below.into_iter().rev().chain([peak.clone()]).chain(above).collect();
@@ -49,9 +53,17 @@ fn evenly_spaced(surface: Surface, profile: &Profile) -> Result<Option<Vec<(Sect
 }
 
 /// The nodes on one side of the peak, the nearest first; `None` where the mass does not end in time.
-fn to_a_side(surface: Surface, peak: &Section, step: f64) -> Result<Option<Vec<Section>>, ClimbFailed> {
+fn to_a_side(
+    surface: Surface,
+    peak: &Section,
+    step: f64,
+    watch: &dyn Watch,
+) -> Result<Option<Vec<Section>>, ClimbFailed> {
     let mut nodes: Vec<Section> = Vec::new();
     for k in 1..=MOST_TO_A_SIDE {
+        if watch.stop_asked() {
+            return Err(ClimbFailed::Stopped);
+        }
         let scatter = peak.scatter + step * k as f64;
         if scatter <= 0.0 {
             return Ok(None);
@@ -61,7 +73,10 @@ fn to_a_side(surface: Surface, peak: &Section, step: f64) -> Result<Option<Vec<S
             [only] => (only, Some(peak)),
             [.., before, last] => (last, Some(before)),
         };
-        let next = section(surface, scatter, &last.ahead(scatter, before), NODE)?;
+        // Where the bent line leads out of the region of density above 0, panels find another way.
+        let Ok(next) = section(surface, scatter, &last.ahead(scatter, before), NODE) else {
+            return Ok(None);
+        };
         let over = next.log_mass < peak.log_mass - END;
         nodes.push(next);
         if over {
@@ -72,8 +87,9 @@ fn to_a_side(surface: Surface, peak: &Section, step: f64) -> Result<Option<Vec<S
 }
 
 /// Whether evenly spaced nodes are close enough: whether every second of them would almost do. For a
-/// normal density these are 1.4 % off in the mass and 13 % in the variance, and the error falls with
-/// the fourth power or faster when nodes are twice as many: all of them are then right to 1e-6.
+/// normal density these are 1.4 % off in the mass and 14 % in the variance, and the error falls with
+/// the fourth power or faster when nodes are twice as many: mean and standard deviation are then right
+/// to a few millionths of the standard deviation.
 fn enough(sections: &[Section]) -> bool {
     let top = sections.iter().map(|s| s.log_mass).fold(f64::NEG_INFINITY, f64::max);
     let moments = |every: usize| {
@@ -144,4 +160,61 @@ fn closest<'a>(profile: &'a Profile, last: &'a Section, scatter: f64) -> &'a Sec
         last,
         |best, section| if far(section) < far(best) { section } else { best },
     )
+}
+
+#[cfg(test)]
+mod tests {
+    use super::super::profile::profile;
+    use super::super::watch::Unwatched;
+    use super::*;
+    use crate::design::Design;
+    use crate::model::{BaselinePrior, Model, NormalPrior, ScatterPrior};
+    use crate::numeric::{Purpose, Stream};
+
+    /// Mean and standard deviation of the scatter.
+    fn moments(nodes: &[(Section, f64)]) -> (f64, f64) {
+        let top = nodes.iter().map(|(s, _)| s.log_mass).fold(f64::NEG_INFINITY, f64::max);
+        let mass = || nodes.iter().map(|(s, w)| (s.scatter, w * exp(s.log_mass - top)));
+        let total: f64 = mass().map(|(_, m)| m).sum();
+        let mean = mass().map(|(c, m)| c * m).sum::<f64>() / total;
+        let variance = mass().map(|(c, m)| (c - mean) * (c - mean) * m).sum::<f64>() / total;
+        (mean, variance.sqrt())
+    }
+
+    #[test]
+    fn evenly_spaced_nodes_give_the_moments_that_panels_give() {
+        let mut taken = 0;
+        for seed in 0..40 {
+            let mut stream = Stream::new(seed, Purpose::Simulation, 5);
+            let rows = [60, 150, 400, 1_500][seed as usize % 4];
+            let scatter = [0.3, 0.6, 1.0, 2.0, 0.1][seed as usize % 5];
+            let square: f64 = scatter * scatter;
+            let column: Vec<f64> = (0..rows).map(|_| stream.normal()).collect();
+            let counts = column
+                .iter()
+                .map(|x| {
+                    let factor = square * stream.gamma(1.0 / square);
+                    stream.poisson(exp(1.5 + 0.3 * x) * factor)
+                })
+                .collect();
+            let design = Design::of_columns(vec![column], vec![1.0; rows], counts);
+            let baseline = BaselinePrior::Range(NormalPrior { mean: 1.5, sd: 1.5 });
+            let terms = vec![NormalPrior { mean: 0.0, sd: 1.0 }];
+            let model = Model::with_priors(&design, baseline, terms, Some(ScatterPrior { rate: 3.0 }));
+            let surface = Surface {
+                model: &model,
+                threads: 1,
+            };
+            let profile = profile(surface, &Unwatched).unwrap();
+            let panels = moments(&in_panels(surface, &profile, &Unwatched).unwrap());
+            let Some(nodes) = evenly_spaced(surface, &profile, &Unwatched).unwrap() else {
+                continue;
+            };
+            taken += 1;
+            let (mean, sd) = moments(&nodes);
+            let error = ((mean - panels.0) / panels.1).abs().max((sd / panels.1 - 1.0).abs());
+            assert!(error < 1e-5, "seed {seed}: {error:e}");
+        }
+        assert!(taken >= 15, "{taken}");
+    }
 }

@@ -36,7 +36,7 @@ pub struct Fit {
 pub struct Machine {
     /// Threads.
     pub threads: usize,
-    /// Chains moved in lockstep on one thread.
+    /// Points evaluated together on one thread, at most.
     pub lockstep: usize,
 }
 

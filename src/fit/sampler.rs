@@ -23,7 +23,7 @@ pub struct Plan {
     pub seed: u64,
     /// Warm-up iterations of each chain.
     pub warm_up: usize,
-    /// Chains moved in lockstep on one thread.
+    /// Points evaluated together on one thread, at most.
     pub width: usize,
     /// Threads.
     pub threads: usize,

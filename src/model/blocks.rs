@@ -104,7 +104,7 @@ impl Blocks {
         } = likelihood_rows;
         let rows = counts.len();
         let blocks = rows.div_ceil(BLOCK);
-        let split = split(columns);
+        let mut split = split(columns);
         let (order, deep) = match order {
             Order::AsGiven => ((0..rows).collect(), 0),
             Order::ByCount => deep_first(counts, weights),
@@ -137,6 +137,10 @@ impl Blocks {
             for (place, row) in rows_in_blocks() {
                 patterns[place / LANES * split.index.len() + column][place % LANES] = index.of_row[row];
             }
+        }
+        for index in &mut split.index {
+            // Laid out above.
+            index.of_row = Vec::new();
         }
         let (counts, weights) = (laid_once(counts), laid_once(weights));
         let key = |block: usize| (counts[block][0], weights[block][0]);

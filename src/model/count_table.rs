@@ -46,11 +46,12 @@ impl CountTable {
             .keys()
             .next_back()
             .map_or(0, |count| (*count as usize).min(TABLE));
+        // From the largest count down: rows above j are those of count j + 1 and those above it.
         let mut above = vec![Eight::ZERO; longest.div_ceil(LANES)];
-        for (count, times) in &occurrences {
-            for j in 0..(*count as usize).min(longest) {
-                above[j / LANES].0[j % LANES] += times;
-            }
+        let mut rows: f64 = occurrences.range(longest as u64 + 1..).map(|(_, times)| times).sum();
+        for j in (0..longest).rev() {
+            rows += occurrences.get(&(j as u64 + 1)).unwrap_or(&0.0);
+            above[j / LANES].0[j % LANES] = rows;
         }
         let large = occurrences
             .range(TABLE as u64 + 1..)

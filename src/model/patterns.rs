@@ -10,6 +10,11 @@
 /// Most patterns of one index column, so that an index is a byte and eight tables stay in the
 /// first-level cache.
 pub const MOST_PATTERNS: usize = 256;
+/// Yes/no columns that have nothing to do with one another double the patterns, each. They join while the
+/// patterns are few for the columns that they replace, at most this many or four times the columns: with
+/// 256 patterns for eight such columns, the tables of pairs of patterns that the second derivatives need took
+/// 25 times as long as the columns themselves, and hundreds of megabytes.
+const FEW_PATTERNS: usize = 64;
 /// Columns of more different values than this stay as they are.
 const MOST_VALUES: usize = 16;
 /// An index column takes the place of at least this many columns. A look-up costs as much as three
@@ -97,13 +102,14 @@ impl Joint {
     /// are too many.
     fn with(&self, term: usize, codes: &[u8], values: usize) -> Option<Joint> {
         const UNSEEN: u16 = u16::MAX;
+        let most = FEW_PATTERNS.max(4 * (self.terms.len() + 1)).min(MOST_PATTERNS);
         let mut joint_of = vec![UNSEEN; self.patterns * values];
         let mut patterns = 0;
         let mut of_row = Vec::with_capacity(codes.len());
         for (pattern, code) in self.of_row.iter().zip(codes) {
             let joint = &mut joint_of[usize::from(*pattern) * values + usize::from(*code)];
             if *joint == UNSEEN {
-                if patterns == MOST_PATTERNS {
+                if patterns == most {
                     return None;
                 }
                 *joint = patterns as u16;
@@ -200,6 +206,23 @@ mod tests {
         assert!(split.dense.is_empty());
         assert_eq!(split.index.len(), 2);
         assert!(split.index.iter().all(|index| index.patterns() <= MOST_PATTERNS));
+        assert_eq!(restored(&split, &columns), columns);
+    }
+
+    /// Patterns of unrelated columns multiply; the second derivatives keep a table for each pair of patterns.
+    #[test]
+    fn unrelated_columns_share_few_patterns() {
+        let bit = |row: usize, column: usize| {
+            f64::from(u8::from(
+                (row * (2 * column + 3) / 7 + row / (column + 2)).is_multiple_of(2),
+            ))
+        };
+        let columns: Vec<Vec<f64>> = (0..24)
+            .map(|column| (0..4_000).map(|row| bit(row, column)).collect())
+            .collect();
+        let split = split(&columns);
+        assert!(split.index.len() >= 3, "{}", split.index.len());
+        assert!(split.index.iter().all(|index| index.patterns() <= FEW_PATTERNS));
         assert_eq!(restored(&split, &columns), columns);
     }
 

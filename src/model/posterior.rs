@@ -226,7 +226,7 @@ impl Model {
         let (mut with_scatter, mut without) = (Vec::new(), Vec::new());
         for (place, point) in points.chunks_exact(d).enumerate() {
             out[place] = f64::NEG_INFINITY;
-            if self.within_limit(&prepared, place) {
+            if self.within_limit(point, &prepared, place) {
                 match self.dispersion(point) {
                     Some(a) => with_scatter.push((place, a)),
                     // The Poisson, or a chain at a scatter of exactly 0 among others.
@@ -288,14 +288,14 @@ impl Model {
         (a >= SMALLEST_DISPERSION).then_some(a)
     }
 
-    /// Whether every row's linear predictor is within [`PREDICTOR_LIMIT`] at one of the points. A bound
-    /// over all rows answers almost always; only where it does not are the rows looked at. A point
-    /// that is not finite has no finite bound, save for its scatter, which the sum shows.
-    fn within_limit(&self, points: &Points, place: usize) -> bool {
+    /// Whether a point is finite and every row's linear predictor within [`PREDICTOR_LIMIT`] there; it is the
+    /// one at `place` in `points`. A bound over all rows answers almost always; only where it does not are
+    /// the rows looked at.
+    fn within_limit(&self, point: &[f64], points: &Points, place: usize) -> bool {
         let bound = points.bound(place);
-        bound <= PREDICTOR_LIMIT
-            || (bound.is_finite()
-                && kernel::furthest(self.instructions, &self.blocks, points, place) <= PREDICTOR_LIMIT)
+        point.iter().all(|value| value.is_finite())
+            && (bound <= PREDICTOR_LIMIT
+                || kernel::furthest(self.instructions, &self.blocks, points, place) <= PREDICTOR_LIMIT)
     }
 
     /// Value, gradient and Hessian at a point; `None` where the density is 0. The scatter's
@@ -305,7 +305,7 @@ impl Model {
         let d = self.dimension();
         let size = self.blocks.terms() + 1;
         let prepared = Points::new(&self.blocks, point, d);
-        if !self.within_limit(&prepared, 0) {
+        if !self.within_limit(point, &prepared, 0) {
             return None;
         }
         let dispersion = self.dispersion(point);

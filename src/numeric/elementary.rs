@@ -45,7 +45,8 @@ pub(crate) fn exp_within(x: f64) -> f64 {
     // bits stand in those of `t`, where the shift below finds them.
     let t = x * std::f64::consts::LOG2_E + ROUNDER;
     let n = t - ROUNDER;
-    // n LN2_HIGH is exact, so the first difference is too: r is right to its last bit.
+    // n LN2_HIGH is exact, and so is the first difference, near as its two numbers are: only the small
+    // second part rounds.
     let r = (x - n * LN2_HIGH) - n * LN2_LOW;
     let r2 = r * r;
     let r4 = r2 * r2;

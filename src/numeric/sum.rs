@@ -30,7 +30,7 @@ pub fn sum_with(values: &[f64], add: impl Fn(f64, f64) -> f64) -> f64 {
     for (lane, value) in rest.iter().enumerate() {
         lanes[lane] = add(lanes[lane], *value);
     }
-    together(lanes)
+    add_up(&lanes)
 }
 
 /// Sum of the products of two slices, over the length of the shorter.
@@ -47,7 +47,7 @@ pub fn dot(left: &[f64], right: &[f64]) -> f64 {
     for (lane, (l, r)) in left_rest.iter().zip(right_rest).enumerate() {
         lanes[lane] += l * r;
     }
-    together(lanes)
+    add_up(&lanes)
 }
 
 /// Mean of the values; 0 for none.
@@ -59,7 +59,9 @@ pub fn mean(values: &[f64]) -> f64 {
     }
 }
 
-fn together(l: [f64; LANES]) -> f64 {
+/// The eight lanes of a sum, always in this order.
+#[inline(always)]
+pub(crate) fn add_up(l: &[f64; LANES]) -> f64 {
     ((l[0] + l[1]) + (l[2] + l[3])) + ((l[4] + l[5]) + (l[6] + l[7]))
 }
 

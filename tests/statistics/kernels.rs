@@ -42,7 +42,7 @@ fn model(design: &Design, scatter: bool) -> Model {
     Model::with_priors(design, baseline, terms, scatter.then_some(ScatterPrior { rate: 3.0 }))
 }
 
-/// Points about a sensible one, the last of `size` far out.
+/// Points about a sensible one, the last of `count` far out.
 fn points(model: &Model, count: usize) -> Vec<f64> {
     let mut stream = Stream::new(8, Purpose::Simulation, 0);
     (0..count)
@@ -182,10 +182,18 @@ fn a_product_that_would_overflow_is_not_formed() {
     );
     design.stands_for = vec![1.0; rows];
     let model = model(&design, true);
-    for baseline in [80.0, 84.0, 86.0, 95.0, 300.0, 680.0] {
+    // At 20 the product of eight factors is below the limit and that of sixteen is not; at 40 that of eight
+    // is between the two limits.
+    for baseline in [5.0, 20.0, 40.0, 80.0, 84.0, 86.0, 95.0, 300.0, 680.0] {
         let point = [baseline, 0.5, 1.0];
         let (value, ..) = row_by_row(&design, &point[..2], Some(1.0));
         let whole = model.log_density(&point) - model.log_prior(&point);
         approx::assert_relative_eq!(whole, value, max_relative = 1e-12);
+        let here = model.derivatives(&point, 1).unwrap();
+        let all_finite = |values: &[f64]| values.iter().all(|value| value.is_finite());
+        assert!(
+            all_finite(&here.gradient) && all_finite(&here.hessian),
+            "{baseline}: {here:?}"
+        );
     }
 }

@@ -15,7 +15,7 @@
 //! | a twice | W m^3 h'(x) + Y m^2/D^2 |
 //! | both | -(Y - W m) m/D^2 |
 //!
-//! The sums over rows of these, times columns, are taken in lanes, over shares of [`SHARE`] blocks
+//! The sums over rows of these, times columns, are taken in lanes, over [`SHARES`] shares of the rows
 //! whose sums are added in their order: threads may take shares in any order and change no bit.
 
 use super::LOCKSTEP;
@@ -26,8 +26,10 @@ use crate::model::blocks::{BLOCK, Block, Blocks, DEPTH, Eight, LANES};
 use crate::numeric::{exp_within, ln_1p};
 use std::ops::Range;
 
-/// Blocks whose sums are taken together: 4,096 rows. Part of every result: never change it.
-const SHARE: usize = 64;
+/// Shares whose sums are taken apart, at most, and blocks of a share, at least. Part of every result: never
+/// change them. Few shares, because with many index columns the sums of one take megabytes.
+const SHARES: usize = 16;
+const BLOCKS_OF_A_SHARE: usize = 64;
 /// A thread is started for each so many products of pairs of columns: a millisecond or two of work, some ten times as long
 /// as the start takes. With 10,000 rows of 20 columns a second thread made the mode take twice as long.
 const PRODUCTS_OF_A_THREAD: usize = 10_000_000;
@@ -45,10 +47,11 @@ pub fn derivatives(
     dispersion: Option<f64>,
     threads: usize,
 ) -> RowSums {
-    let shares = blocks.blocks.div_ceil(SHARE);
+    let size = blocks.blocks.div_ceil(SHARES).max(BLOCKS_OF_A_SHARE);
+    let shares = blocks.blocks.div_ceil(size);
     let of_share = |share: usize| -> Sums<f64> {
         let mut sums = Sums::zero(&blocks.split);
-        let range = share * SHARE..((share + 1) * SHARE).min(blocks.blocks);
+        let range = share * size..((share + 1) * size).min(blocks.blocks);
         add_rows(instructions, blocks, range, &point.part(0, 1), dispersion, &mut sums);
         sums.added_up()
     };
@@ -202,6 +205,8 @@ fn poisson_rows(block: &Block, means: &Values, rows: &mut RowDerivatives) {
 #[inline(always)]
 fn negative_binomial_rows(block: &Block, means: &Values, a: f64, rows: &mut RowDerivatives) {
     let (counts, weights) = (flat(block.counts), flat(block.weights));
+    // At a = 0 the value's limit is taken; 1/a would be infinite.
+    let size = if a > 0.0 { 1.0 / a } else { 0.0 };
     let mut logs = *means;
     for log in &mut logs {
         *log = ln_1p(a * *log);
@@ -211,34 +216,34 @@ fn negative_binomial_rows(block: &Block, means: &Values, a: f64, rows: &mut RowD
         let x = a * m;
         let d = 1.0 / (1.0 + x);
         let residual = (y - w * m) * d;
-        let (md, log) = (m * d, logs[row]);
-        let (h, slope) = log_remainder(x, d, log);
+        let md = m * d;
+        let (first, second) = log_remainder(m, size, x, x * d, logs[row]);
         rows.first[row] = residual;
         rows.second[row] = -md * (w + a * y) * d;
         rows.mixed[row] = -residual * md;
-        rows.by_a[row] = w * m * m * h - y * md;
-        rows.by_a_twice[row] = w * m * m * m * slope + y * md * md;
+        rows.by_a[row] = w * first - y * md;
+        rows.by_a_twice[row] = w * second + y * md * md;
     }
     if a > 0.0 {
-        let size = 1.0 / a;
         for row in 0..BLOCK {
             rows.value[row] = -(counts[row] + weights[row] * size) * logs[row];
         }
     } else {
-        // The limit; 1/a would be infinite.
         for row in 0..BLOCK {
             rows.value[row] = -weights[row] * means[row];
         }
     }
 }
 
-/// h(x) = (log(1+x) - x/(1+x)) / x^2 and its derivative, for x >= 0, from 1/(1+x) and log(1+x).
+/// m^2 h(x) and m^3 h'(x), where h(x) = (log(1+x) - x/(1+x)) / x^2 and x = a m >= 0, from 1/a = `size`,
+/// x/(1+x) = `share` and `log` = log(1+x).
 ///
-/// Below 0.03 the closed forms lose all digits (h is a difference of two numbers near x, divided by
-/// x^2), so the series h = sum (-1)^k (k+1)/(k+2) x^k is summed there; its first term left out is
-/// below 1e-17. Both are computed and one is taken: a branch would end the vector code.
+/// With m = x/a they are (log - share)/a^2 and (share^2 - 2 (log - share))/a^3, in which nothing overflows
+/// where m^3 would. Below x = 0.03 these differences lose all digits, so the series
+/// h = sum (-1)^k (k+1)/(k+2) x^k is summed there; its first term left out is below 1e-17. Both are
+/// computed and one is taken: a branch would end the vector code.
 #[inline(always)]
-fn log_remainder(x: f64, d: f64, log: f64) -> (f64, f64) {
+fn log_remainder(m: f64, size: f64, x: f64, share: f64, log: f64) -> (f64, f64) {
     let (mut series, mut series_slope) = (0.0, 0.0);
     for k in (0..12).rev() {
         let k = f64::from(k);
@@ -246,10 +251,14 @@ fn log_remainder(x: f64, d: f64, log: f64) -> (f64, f64) {
         series_slope = series - x * series_slope;
         series = (k + 1.0) / (k + 2.0) - x * series;
     }
-    let over = 1.0 / x;
-    let h = (log - x * d) * over * over;
-    let slope = (d * d - 2.0 * h) * over;
-    if x < 0.03 { (series, -series_slope) } else { (h, slope) }
+    let difference = log - share;
+    let first = difference * size * size;
+    let second = (share * share - 2.0 * difference) * size * size * size;
+    if x < 0.03 {
+        (m * m * series, -(m * m * m) * series_slope)
+    } else {
+        (first, second)
+    }
 }
 
 #[inline(always)]

@@ -15,7 +15,7 @@
 //!    few values share one table entry (`patterns`); the terms in the counts alone are a short table
 //!    (`count_table`). Each is the same sum, reordered.
 //!
-//! `exp` and `log(1 + x)` are our own, branchless and accurate to 2e-16 (`numeric::elementary`), so
+//! `exp` and `log(1 + x)` are our own, branchless and accurate to 5e-16 (`numeric::elementary`), so
 //! that they too become vector code with the same bits everywhere.
 
 mod derivatives;

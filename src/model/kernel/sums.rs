@@ -1,8 +1,8 @@
 //! Where the derivatives' sums gather: by column, and by pattern for index columns.
 
-use super::values::add_up;
 use crate::model::blocks::Eight;
 use crate::model::patterns::{IndexColumn, Split};
+use crate::numeric::add_up;
 
 /// Sums over rows; `T` is a lane register while rows are added, a number afterwards.
 #[derive(Debug, Clone)]

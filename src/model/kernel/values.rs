@@ -4,7 +4,7 @@ use super::LOCKSTEP;
 use super::instructions::{Instructions, fetch_ahead, for_each_set};
 use super::predictor::{BlockValues, Part, Points, predict};
 use crate::model::blocks::{BLOCK, Block, Blocks, DEPTH, Eight, LANES};
-use crate::numeric::{exp_within, ln_1p};
+use crate::numeric::{add_up, exp_within, ln_1p};
 
 /// A running product of factors 1 + a mu goes on below this: one more block's may then be as large as
 /// [`OVERFLOW`] before a double ends at 1.8e308.
@@ -224,10 +224,4 @@ fn count_logs_kernel<const TILE: usize>(above: &[Eight], a: f64, out: &mut f64) 
         }
     }
     *out = add_up(&sums);
-}
-
-/// The eight lanes of a sum, always in this order.
-#[inline(always)]
-pub fn add_up(l: &[f64; LANES]) -> f64 {
-    ((l[0] + l[1]) + (l[2] + l[3])) + ((l[4] + l[5]) + (l[6] + l[7]))
 }
