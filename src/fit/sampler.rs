@@ -79,9 +79,10 @@ pub fn sample(
 /// Fewest and most iterations of warm-up with mixed steps.
 const LEAST_WARM_UP: usize = 300;
 const MOST_WARM_UP: usize = 6_000;
-/// Products of a row and a parameter that each chain may take beyond the fewest iterations: they cost
-/// some tens of milliseconds.
-const WARM_UP_PRODUCTS: usize = 5_000_000;
+/// Iterations times squared parameters that each chain may take beyond the fewest iterations: some tens of
+/// milliseconds with ten parameters, a second with hundreds. (Where it was less, a category of a hundred
+/// levels with few rows each was warmed up for 300 iterations and drawn from 200,000 times in vain.)
+const WARM_UP_SQUARES: usize = 200_000_000;
 
 /// Iterations of warm-up. With few rows to a parameter the posterior is skewed, and it takes many draws
 /// to know how, but they cost next to nothing. The walk needs many more, since it forgets its start
@@ -91,7 +92,7 @@ pub fn warm_up_iterations(steps: Steps, rows: usize, dimension: usize) -> usize 
         Steps::Mixed => {
             let rows = rows.max(1);
             let asked = 150_000 * dimension * dimension / (rows * rows);
-            let affordable = WARM_UP_PRODUCTS / (rows * dimension.max(1));
+            let affordable = WARM_UP_SQUARES / (dimension * dimension).max(1);
             asked.min(affordable).clamp(LEAST_WARM_UP, MOST_WARM_UP)
         }
         Steps::Walk => 400 * (dimension + 4),
