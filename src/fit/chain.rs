@@ -42,8 +42,6 @@ impl Target for Model {
     }
 }
 
-/// Share of random-walk steps among the mixed steps.
-const WALK_SHARE: f64 = 0.05;
 /// Scale of the random walk: 2.38/sqrt(d) times the posterior's (Roberts, Gelman & Gilks 1997).
 const WALK_SCALE: f64 = 2.38;
 /// Chains start from a t with these degrees of freedom at this multiple of Laplace's scale.
@@ -57,13 +55,27 @@ pub struct Proposal {
     walk: Cholesky,
     /// Where independence steps are drawn from; absent when all steps are random-walk steps.
     reference: Option<Reference>,
+    /// Share of random-walk steps where there is a reference.
+    walk_share: f64,
 }
 
 impl Proposal {
-    /// A random walk with this factor of the posterior's covariance, mixed with independence steps
-    /// where a reference is given.
-    pub fn new(walk: Cholesky, reference: Option<Reference>) -> Self {
-        Proposal { walk, reference }
+    /// A random walk with this factor of the posterior's covariance.
+    pub fn walk(walk: Cholesky) -> Self {
+        Proposal {
+            walk,
+            reference: None,
+            walk_share: 1.0,
+        }
+    }
+
+    /// Independence steps from a reference, and among them this share of random-walk steps.
+    pub fn mixed(reference: Reference, walk: Cholesky, walk_share: f64) -> Self {
+        Proposal {
+            walk,
+            reference: Some(reference),
+            walk_share,
+        }
     }
 }
 
@@ -125,7 +137,7 @@ impl Chain {
         let d = self.point.len();
         let mut values = vec![0.0; d];
         let kind = match &proposal.reference {
-            Some(reference) if self.stream.uniform() >= WALK_SHARE => {
+            Some(reference) if self.stream.uniform() >= proposal.walk_share => {
                 reference.draw(&mut self.stream, &mut values);
                 StepKind::Independence
             }
