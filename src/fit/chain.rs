@@ -182,8 +182,8 @@ impl Chain {
     }
 
     /// Takes the oldest step that was drawn and accepts its point or stays (Metropolis et al. 1953;
-    /// Hastings 1970; Tierney 1994), and records where the chain is. An independence step is judged by the ratio of posterior/q, a
-    /// random-walk step by that of the posterior alone.
+    /// Hastings 1970; Tierney 1994), and records where the chain is. An independence step is judged by
+    /// the ratio of posterior/q, a random-walk step by that of the posterior alone.
     fn decide(&mut self, proposed: &[f64], log_density: f64, log_reference: f64) {
         let Some(step) = self.drawn.pop_front() else {
             return;

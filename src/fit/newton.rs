@@ -14,6 +14,7 @@ use argmin::core::{
 
 /// Far more steps than a concave problem needs; a limit all the same, since every loop has one.
 const MOST_STEPS: u64 = 200;
+
 /// A log density to climb, and how many threads evaluate it.
 #[derive(Clone, Copy)]
 pub struct Surface<'a> {

@@ -78,9 +78,10 @@ pub fn sample(
 
 /// Share of random-walk steps among mixed ones.
 const WALK_SHARE: f64 = 0.05;
-/// The same where rows are few to a parameter and warm-up is longer than the least. There the reference may miss
-/// a tail of the posterior, and a chain that gets into it leaves by a random-walk step or waits for hundreds. On
-/// 60 rows of 12 terms the worst of 20 seeds had 0.16 tail-effective draws a draw, and with a share of 0.05 0.07.
+/// The same where rows are few to a parameter and warm-up is longer than the least. There the reference
+/// may miss a tail of the posterior, and a chain that gets into it leaves by a random-walk step or waits
+/// for hundreds. On 60 rows of 12 terms the worst of 20 seeds had 0.15 tail-effective draws a draw, and
+/// with a share of 0.05 0.07.
 const WALK_SHARE_OF_FEW_ROWS: f64 = 0.12;
 
 /// Fewest and most iterations of warm-up with mixed steps.

@@ -30,16 +30,18 @@ use std::ops::Range;
 /// change them. Few shares, because with many index columns the sums of one take megabytes.
 const SHARES: usize = 16;
 const BLOCKS_OF_A_SHARE: usize = 64;
-/// A thread is started for each so many products of pairs of columns: a millisecond or two of work, some ten times as long
-/// as the start takes. With 10,000 rows of 20 columns a second thread made the mode take twice as long.
+/// A thread is started for each so many products: of pairs of columns, and what a row takes besides. That
+/// is a millisecond or two of work, some ten times as long as the start takes. With 10,000 rows of 20
+/// columns a second thread made the mode take twice as long.
 const PRODUCTS_OF_A_THREAD: usize = 10_000_000;
+/// What a row takes besides the pairs: its predictor, exponential and derivatives.
+const PRODUCTS_OF_A_ROW: usize = 60;
 /// Blocks whose second derivatives are summed together: two, so that each sum is fetched and stored
 /// half as often. (And with eight chunks at most, the compiler would write the innermost loop out
 /// eight times, run out of registers and be half as fast.)
 const STRIP: usize = 2;
 
-/// The derivatives at the one point of `point`, summed over all rows, on at most
-/// `threads` threads. The value leaves out `Y log mu`, which the model knows in closed form.
+/// The derivatives at the one point of `point`, summed over all rows, on at most `threads` threads. The value leaves out `Y log mu`, which the model knows in closed form.
 pub fn derivatives(
     instructions: Instructions,
     blocks: &Blocks,
@@ -56,7 +58,7 @@ pub fn derivatives(
         sums.added_up()
     };
     let columns = blocks.split.dense.len() + 1;
-    let worth = blocks.blocks * BLOCK * columns * columns / PRODUCTS_OF_A_THREAD;
+    let worth = blocks.blocks * BLOCK * (columns * columns + PRODUCTS_OF_A_ROW) / PRODUCTS_OF_A_THREAD;
     let threads = threads.min(worth).clamp(1, shares.max(1));
     let mut parts: Vec<(usize, Sums<f64>)> = std::thread::scope(|scope| {
         let of_share = &of_share;
