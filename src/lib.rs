@@ -32,3 +32,4 @@ pub mod output;
 mod regular_file;
 pub mod spec;
 pub mod table;
+mod threads;

@@ -14,6 +14,7 @@ use crate::design::Design;
 use crate::fit::Draws;
 use crate::numeric::{Purpose, Stream, exp, mean, sum};
 use crate::spec::Family;
+use crate::threads::in_order;
 use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 
@@ -98,35 +99,14 @@ pub fn units(design: &Design, family: &Family, draws: &Draws, interval: f64, see
         rows_of[*unit].push(row);
     }
 
-    // Every thread takes each n-th unit: neighbours in the file are often alike in size.
-    let threads = threads.clamp(1, design.units.len().max(1));
-    let check_from = |first: usize| -> Vec<(usize, Checked)> {
-        let mine = (first..design.units.len()).step_by(threads);
-        mine.map(|unit| {
-            let stream = Stream::new(seed, Purpose::UnitCheck, unit as u64);
-            (unit, check_unit(design, unit, &rows_of[unit], &used, interval, stream))
-        })
-        .collect()
-    };
-    let mut found: Vec<(usize, Checked)> = std::thread::scope(|scope| {
-        let check_from = &check_from;
-        let others: Vec<_> = (1..threads)
-            .map(|first| scope.spawn(move || check_from(first)))
-            .collect();
-        let mut found = check_from(0);
-        for other in others {
-            match other.join() {
-                Ok(part) => found.extend(part),
-                Err(panic) => std::panic::resume_unwind(panic),
-            }
-        }
-        found
+    let found = in_order(design.units.len(), threads, |unit| {
+        let stream = Stream::new(seed, Purpose::UnitCheck, unit as u64);
+        check_unit(design, unit, &rows_of[unit], &used, interval, stream)
     });
-    found.sort_unstable_by_key(|(unit, _)| *unit);
 
-    let chances: Vec<f64> = found.iter().map(|(_, checked)| checked.outside).collect();
-    let worst_error = found.iter().map(|(_, checked)| checked.error).fold(0.0, f64::max);
-    let units: Vec<UnitCheck> = found.into_iter().map(|(_, checked)| checked.check).collect();
+    let chances: Vec<f64> = found.iter().map(|checked| checked.outside).collect();
+    let worst_error = found.iter().map(|checked| checked.error).fold(0.0, f64::max);
+    let units: Vec<UnitCheck> = found.into_iter().map(|checked| checked.check).collect();
     UnitsCheck {
         outside: units.iter().filter(|unit| unit.state != UnitState::Inside).count(),
         outside_by_chance: sum(&chances),

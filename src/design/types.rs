@@ -119,10 +119,10 @@ pub struct Audit {
     pub units: usize,
 }
 
-#[cfg(test)]
 impl Design {
-    /// A design of these coded columns, exposures and counts, every row a unit of its own: for tests that
-    /// start behind the table.
+    /// A design of columns that are coded already, with exposures and counts: for a caller without a table, as
+    /// tests and benches are. Every row is a unit of its own; terms are called x0, x1, ... and have standard
+    /// normal priors.
     pub fn of_columns(columns: Vec<Vec<f64>>, exposure: Vec<f64>, counts: Vec<f64>) -> Design {
         let rows = counts.len();
         let names: Vec<String> = (0..columns.len()).map(|k| format!("x{k}")).collect();

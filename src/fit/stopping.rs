@@ -1,6 +1,7 @@
 //! When there are enough draws.
 
 use super::convergence::{Assessment, assess};
+use crate::threads::in_order;
 
 /// Draws between two looks, all chains together.
 const ROUND: usize = 1_000;
@@ -106,23 +107,7 @@ fn worse(a: f64, b: f64) -> f64 {
 
 /// One assessment for each parameter, on several threads; each is computed whole by one of them.
 fn assess_all(values: &[Vec<f64>], chains: usize, interval: f64, threads: usize) -> Vec<Assessment> {
-    let share = values.len().div_ceil(threads.max(1)).max(1);
-    std::thread::scope(|scope| {
-        let parts: Vec<_> = values
-            .chunks(share)
-            .map(|part| {
-                scope.spawn(move || {
-                    part.iter()
-                        .map(|values| assess(values, chains, interval))
-                        .collect::<Vec<_>>()
-                })
-            })
-            .collect();
-        parts
-            .into_iter()
-            .flat_map(|part| part.join().unwrap_or_else(|panic| std::panic::resume_unwind(panic)))
-            .collect()
-    })
+    in_order(values.len(), threads, |place| assess(&values[place], chains, interval))
 }
 
 #[cfg(test)]

@@ -13,8 +13,8 @@ use super::patterns::{Split, split};
 use crate::design::LikelihoodRows;
 use std::ops::Range;
 
-/// Rows side by side.
-pub const LANES: usize = 8;
+pub(crate) use crate::numeric::LANES;
+
 /// Chunks of a block: the rows of one lane.
 pub const DEPTH: usize = 8;
 /// Rows in a block.
@@ -44,9 +44,8 @@ pub enum Order {
 pub struct Blocks {
     /// Number of blocks.
     pub blocks: usize,
-    /// How many of them, the first ones, are deep.
-    pub deep: usize,
-    /// For each deep block, whether its lanes have the counts and weights of those of the block before.
+    /// For each deep block (they come first), whether its lanes have the counts and weights of those of
+    /// the block before.
     pub continues: Vec<bool>,
     /// Where the terms' columns are.
     pub split: Split,
@@ -104,7 +103,7 @@ impl Blocks {
         } = likelihood_rows;
         let rows = counts.len();
         let blocks = rows.div_ceil(BLOCK);
-        let mut split = split(columns);
+        let (split, patterns_of_rows) = split(columns);
         let (order, deep) = match order {
             Order::AsGiven => ((0..rows).collect(), 0),
             Order::ByCount => deep_first(counts, weights),
@@ -133,21 +132,16 @@ impl Blocks {
             }
         }
         let mut patterns = vec![[0; LANES]; blocks * DEPTH * split.index.len()];
-        for (column, index) in split.index.iter().enumerate() {
+        for (column, of_row) in patterns_of_rows.iter().enumerate() {
             for (place, row) in rows_in_blocks() {
-                patterns[place / LANES * split.index.len() + column][place % LANES] = index.of_row[row];
+                patterns[place / LANES * split.index.len() + column][place % LANES] = of_row[row];
             }
-        }
-        for index in &mut split.index {
-            // Laid out above.
-            index.of_row = Vec::new();
         }
         let (counts, weights) = (laid_once(counts), laid_once(weights));
         let key = |block: usize| (counts[block][0], weights[block][0]);
         let largest = |values: &[f64]| values.iter().fold(0.0_f64, |most, value| most.max(value.abs()));
         Blocks {
             blocks,
-            deep,
             dense,
             patterns,
             log_exposure: laid(log_exposure),
@@ -162,9 +156,10 @@ impl Blocks {
         }
     }
 
-    /// Number of terms, those in index columns too.
-    pub fn terms(&self) -> usize {
-        self.split.dense.len() + self.split.index.iter().map(|index| index.terms.len()).sum::<usize>()
+    /// How many of the blocks, the first ones, are deep.
+    #[inline(always)]
+    pub fn deep(&self) -> usize {
+        self.continues.len()
     }
 
     /// The columns that stay in a range of blocks: one value of each, chunk after chunk.
@@ -241,8 +236,12 @@ mod tests {
             weights: weights.clone().into(),
         };
         let blocks = Blocks::new(&likelihood_rows, Order::ByCount);
-        assert!(blocks.deep >= 13 && blocks.deep < blocks.blocks, "{}", blocks.deep);
-        for block in (0..blocks.deep).map(|block| blocks.block(block)) {
+        assert!(
+            blocks.deep() >= 13 && blocks.deep() < blocks.blocks,
+            "{}",
+            blocks.deep()
+        );
+        for block in (0..blocks.deep()).map(|block| blocks.block(block)) {
             assert!(block.counts.iter().all(|chunk| *chunk == block.counts[0]));
             assert!(block.weights.iter().all(|chunk| *chunk == block.weights[0]));
         }

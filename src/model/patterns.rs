@@ -30,8 +30,6 @@ pub struct IndexColumn {
     starts: Vec<usize>,
     /// The values of the patterns in turn that are not 0, each with the place of its term.
     entries: Vec<(usize, f64)>,
-    /// The pattern of each row.
-    pub of_row: Vec<u8>,
 }
 
 impl IndexColumn {
@@ -56,9 +54,17 @@ pub struct Split {
     pub index: Vec<IndexColumn>,
 }
 
-/// Splits columns into those that stay and those that become index columns. A pure function of the
+impl Split {
+    /// Number of terms, those in index columns too.
+    pub fn terms(&self) -> usize {
+        self.dense.len() + self.index.iter().map(|index| index.terms.len()).sum::<usize>()
+    }
+}
+
+/// Splits columns into those that stay and those that become index columns, and gives for each index
+/// column the pattern of each row. A pure function of the
 /// values: columns are tried in their order, each joins the last index column or opens the next.
-pub fn split(columns: &[Vec<f64>]) -> Split {
+pub fn split(columns: &[Vec<f64>]) -> (Split, Vec<Vec<u8>>) {
     let mut joined: Vec<Joint> = Vec::new();
     let mut dense = Vec::new();
     for (term, column) in columns.iter().enumerate() {
@@ -78,16 +84,17 @@ pub fn split(columns: &[Vec<f64>]) -> Split {
             of_row: codes,
         });
     }
-    let mut index = Vec::new();
+    let (mut index, mut of_rows) = (Vec::new(), Vec::new());
     for joint in joined {
         if joint.terms.len() < FEWEST_COLUMNS {
             dense.extend(joint.terms);
         } else {
             index.push(joint.filled_from(columns));
+            of_rows.push(joint.of_row);
         }
     }
     dense.sort_unstable();
-    Split { dense, index }
+    (Split { dense, index }, of_rows)
 }
 
 /// Columns that have been joined so far.
@@ -124,7 +131,7 @@ impl Joint {
         })
     }
 
-    fn filled_from(self, columns: &[Vec<f64>]) -> IndexColumn {
+    fn filled_from(&self, columns: &[Vec<f64>]) -> IndexColumn {
         let mut first_row = vec![None; self.patterns];
         for (row, pattern) in self.of_row.iter().enumerate() {
             first_row[usize::from(*pattern)].get_or_insert(row);
@@ -136,10 +143,9 @@ impl Joint {
             starts.push(entries.len());
         }
         IndexColumn {
-            terms: self.terms,
+            terms: self.terms.clone(),
             starts,
             entries,
-            of_row: self.of_row,
         }
     }
 }
@@ -174,13 +180,13 @@ mod tests {
             .collect()
     }
 
-    fn restored(split: &Split, columns: &[Vec<f64>]) -> Vec<Vec<f64>> {
+    fn restored((split, of_rows): &(Split, Vec<Vec<u8>>), columns: &[Vec<f64>]) -> Vec<Vec<f64>> {
         let mut out = columns.to_vec();
-        for index in &split.index {
+        for (index, of_row) in split.index.iter().zip(of_rows) {
             for term in &index.terms {
                 let value = |pattern: usize| index.pattern(pattern).iter().find(|(of, _)| of == term);
-                let of_row = index.of_row.iter().map(|pattern| value(usize::from(*pattern)));
-                out[*term] = of_row.map(|entry| entry.map_or(0.0, |(_, value)| *value)).collect();
+                let values = of_row.iter().map(|pattern| value(usize::from(*pattern)));
+                out[*term] = values.map(|entry| entry.map_or(0.0, |(_, value)| *value)).collect();
             }
         }
         out
@@ -192,21 +198,23 @@ mod tests {
         let mut columns = category(4, |row| row % 4, rows);
         columns.push((0..rows).map(|row| row as f64).collect());
         columns.extend(category(6, |row| row / 7 % 6, rows));
-        let split = split(&columns);
+        let found = split(&columns);
+        let split = &found.0;
         assert_eq!(split.dense, [3]);
         assert_eq!(split.index.len(), 1);
         assert_eq!(split.index[0].patterns(), 24);
-        assert_eq!(restored(&split, &columns), columns);
+        assert_eq!(restored(&found, &columns), columns);
     }
 
     #[test]
     fn a_long_category_takes_two() {
         let columns = category(300, |row| row % 300, 900);
-        let split = split(&columns);
+        let found = split(&columns);
+        let split = &found.0;
         assert!(split.dense.is_empty());
         assert_eq!(split.index.len(), 2);
         assert!(split.index.iter().all(|index| index.patterns() <= MOST_PATTERNS));
-        assert_eq!(restored(&split, &columns), columns);
+        assert_eq!(restored(&found, &columns), columns);
     }
 
     /// Patterns of unrelated columns multiply; the second derivatives keep a table for each pair of patterns.
@@ -220,25 +228,23 @@ mod tests {
         let columns: Vec<Vec<f64>> = (0..24)
             .map(|column| (0..4_000).map(|row| bit(row, column)).collect())
             .collect();
-        let split = split(&columns);
+        let found = split(&columns);
+        let split = &found.0;
         assert!(split.index.len() >= 3, "{}", split.index.len());
         assert!(split.index.iter().all(|index| index.patterns() <= FEW_PATTERNS));
-        assert_eq!(restored(&split, &columns), columns);
+        assert_eq!(restored(&found, &columns), columns);
     }
 
     #[test]
     fn two_columns_do_not_pay() {
         let columns = category(3, |row| row % 3, 90);
-        assert_eq!(split(&columns).dense, [0, 1]);
+        assert_eq!(split(&columns).0.dense, [0, 1]);
     }
 
     #[test]
     fn without_rows_or_columns_nothing_breaks() {
-        assert_eq!(split(&[]).dense, [0_usize; 0]);
-        let empty = split(&vec![Vec::new(); 8]);
-        assert_eq!(
-            empty.dense.len() + empty.index.iter().map(|i| i.terms.len()).sum::<usize>(),
-            8
-        );
+        assert_eq!(split(&[]).0.dense, [0_usize; 0]);
+        let (empty, _) = split(&vec![Vec::new(); 8]);
+        assert_eq!(empty.terms(), 8);
     }
 }

@@ -199,7 +199,7 @@ impl Model {
 
     /// Where a search for the mode may start: the crude rate, every rate ratio 1.
     pub fn start(&self) -> Vec<f64> {
-        let mut start = vec![0.0; self.blocks.terms() + 1];
+        let mut start = vec![0.0; self.blocks.split.terms() + 1];
         start[0] = self.start;
         start
     }
@@ -303,7 +303,7 @@ impl Model {
     /// `threads` threads; their number changes no bit.
     pub fn derivatives(&self, point: &[f64], threads: usize) -> Option<Derivatives> {
         let d = self.dimension();
-        let size = self.blocks.terms() + 1;
+        let size = self.blocks.split.terms() + 1;
         let prepared = Points::new(&self.blocks, point, d);
         if !self.within_limit(point, &prepared, 0) {
             return None;

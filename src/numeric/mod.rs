@@ -25,5 +25,5 @@ pub use normal::{normal_cdf, normal_quantile};
 pub use poisson::{PoissonCount, poisson_cdf, poisson_ln_pmf, poisson_pmf, poisson_sf};
 pub use random::{Purpose, Stream};
 pub use rising::{RisingSum, ln_rising};
-pub(crate) use sum::add_up;
+pub(crate) use sum::{LANES, add_up};
 pub use sum::{dot, mean, sum, sum_of, sum_with};

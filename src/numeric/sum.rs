@@ -4,7 +4,7 @@
 //! make the rounding error of a long sum an eighth of the plain loop's.
 
 /// Number of lanes. Part of every run's result: never change it.
-const LANES: usize = 8;
+pub(crate) const LANES: usize = 8;
 
 /// Sum of the values.
 pub fn sum(values: &[f64]) -> f64 {

@@ -24,6 +24,7 @@ use super::predictor::{BlockValues, Part, Points, predict};
 use super::sums::{RowSums, Sums, pair};
 use crate::model::blocks::{BLOCK, Block, Blocks, DEPTH, Eight, LANES};
 use crate::numeric::{exp_within, ln_1p};
+use crate::threads::in_order;
 use std::ops::Range;
 
 /// Shares whose sums are taken apart, at most, and blocks of a share, at least. Part of every result: never
@@ -41,7 +42,8 @@ const PRODUCTS_OF_A_ROW: usize = 60;
 /// eight times, run out of registers and be half as fast.)
 const STRIP: usize = 2;
 
-/// The derivatives at the one point of `point`, summed over all rows, on at most `threads` threads. The value leaves out `Y log mu`, which the model knows in closed form.
+/// The derivatives at the one point of `point`, summed over all rows, on at most `threads` threads. The
+/// value leaves out `Y log mu`, which the model knows in closed form.
 pub fn derivatives(
     instructions: Instructions,
     blocks: &Blocks,
@@ -59,25 +61,9 @@ pub fn derivatives(
     };
     let columns = blocks.split.dense.len() + 1;
     let worth = blocks.blocks * BLOCK * (columns * columns + PRODUCTS_OF_A_ROW) / PRODUCTS_OF_A_THREAD;
-    let threads = threads.min(worth).clamp(1, shares.max(1));
-    let mut parts: Vec<(usize, Sums<f64>)> = std::thread::scope(|scope| {
-        let of_share = &of_share;
-        let of_thread = move |thread: usize| -> Vec<(usize, Sums<f64>)> {
-            let mine = (thread..shares).step_by(threads);
-            mine.map(|share| (share, of_share(share))).collect()
-        };
-        let others: Vec<_> = (1..threads)
-            .map(|thread| scope.spawn(move || of_thread(thread)))
-            .collect();
-        let mut parts = of_thread(0);
-        for other in others {
-            parts.extend(other.join().unwrap_or_else(|panic| std::panic::resume_unwind(panic)));
-        }
-        parts
-    });
-    parts.sort_unstable_by_key(|(share, _)| *share);
+    let parts = in_order(shares, threads.min(worth), of_share);
     let mut total = Sums::zero(&blocks.split).added_up();
-    for (_, part) in &parts {
+    for part in &parts {
         total.add(part);
     }
     total.by_coefficient(&blocks.split)

@@ -111,8 +111,7 @@ impl Sums<f64> {
 
     /// The same by coefficient, each index column resolved into the terms that it stands for.
     pub fn by_coefficient(&self, split: &Split) -> RowSums {
-        let terms = split.dense.len() + split.index.iter().map(|index| index.terms.len()).sum::<usize>();
-        let size = terms + 1;
+        let size = split.terms() + 1;
         let mut out = RowSums {
             value: self.value,
             gradient: vec![0.0; size],

@@ -116,7 +116,7 @@ fn logs_kernel<const TILE: usize>(blocks: &Blocks, points: &Part, dispersions: &
                 *value = dispersions[p] * exp_within(*value);
             }
         }
-        if number >= blocks.deep {
+        if number >= blocks.deep() {
             for p in 0..points.count {
                 add_logs_of_rows(&block, 1.0 / dispersions[p], &mut values[p], &mut sums[p]);
             }
